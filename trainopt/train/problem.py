@@ -1,0 +1,131 @@
+"""A design problem in plain numbers: what `train/` builds from files and curves and `optimize/` decides on.
+
+Canonical units throughout: bar, L, m², h; flux in LMH (L/m²/h); loading in L/m²; demand in bar·h.
+A limit that is not given is infinite (or zero for a minimum), so that formulas need no special case.
+Entries are kept in sorted order (except stages, whose order is the flow), so that an answer
+cannot depend on the order in which a file lists them.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trainopt.curves.curve import LotCurve
+
+Floats = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class Options:
+    """The module counts a candidate can be bought in: arrays of shape (n,), `demand` of shape (lots, n).
+
+    `area` m²; `modules_cost`, `holders_cost`, `flush_cost`, `product_cost` per batch in the catalog's
+    currency; `weight` what the objective counts (area, or the sum of the four costs); `shortest_time` τ in h;
+    `loading` the design loading L (safety factor included) in L/m²; `demand` D in bar·h, per lot.
+    """
+
+    module: tuple[str, ...]
+    count: NDArray[np.int64]
+    holders: tuple[tuple[str, int] | None, ...]
+    area: Floats
+    modules_cost: Floats
+    holders_cost: Floats
+    flush_cost: Floats
+    product_cost: Floats
+    weight: Floats
+    shortest_time: Floats
+    loading: Floats
+    demand: Floats
+
+    def __len__(self) -> int:
+        return len(self.module)
+
+
+@dataclass(frozen=True)
+class Dropped:
+    """Options that were left out before the model was built: why, how many, and the cap that did it."""
+
+    code: str          # "loading-tested" | "loading-limit" | "turbidity" | "pole" | "dominated"
+    module: str        # "" where the reason holds for every module of the medium
+    options: int
+    limit_L_m2: float | None
+    text: str
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """One medium that may serve in one stage.
+
+    `after`: the media allowed in the nearest used stage upstream (None: any, or none at all).
+    Ratings in bar, `flux_limit` in LMH on the installed area, `loading_cap` the highest design loading L in L/m²
+    with `cap_reason` ("loading-tested", "loading-limit", "turbidity") saying which limit it comes from.
+    `curves`: the curve of each lot of the problem, in the problem's order of lots.
+    `options` are all those inside the caps, undominated ones only when the problem was pruned.
+    """
+
+    medium: str
+    after: frozenset[str] | None
+    differential_pressure: float
+    inlet_pressure: float
+    flux_limit: float
+    loading_cap: float
+    cap_reason: str
+    scale_up: float
+    curves: tuple[LotCurve, ...]
+    options: Options
+    dropped: tuple[Dropped, ...]
+
+
+@dataclass(frozen=True)
+class Stage:
+    """One place in a block, with the media that may serve there, sorted by name."""
+
+    name: str
+    optional: bool
+    candidates: tuple[Candidate, ...]
+
+
+@dataclass(frozen=True)
+class Block:
+    """Stages in series under one pump, no tank between.
+
+    `pressure` and `static` in bar, `line` in bar/(L/h), `setup` in h, flows in L/h (0 and infinity where not given).
+    """
+
+    name: str
+    operation: str     # "constant-flow" | "constant-pressure"
+    pressure: float
+    static: float
+    line: float
+    setup: float
+    min_flow: float
+    max_flow: float
+    stages: tuple[Stage, ...]
+
+    @property
+    def head(self) -> float:
+        """Pressure left for stages and line, bar."""
+        return self.pressure - self.static
+
+    def budget(self, time: float, volume: float) -> float:
+        """Pressure × time left for the stages in `time` h and `volume` L, bar·h (model.md, section 5)."""
+        return self.head * time - self.line * volume
+
+
+@dataclass(frozen=True)
+class DesignProblem:
+    """Everything a design is decided on: volume L, total time h, blocks in flow order, lots by name."""
+
+    title: str
+    volume: float
+    time: float
+    schedule: str      # "sequential" | "side-by-side"
+    objective: str     # "area" | "cost"
+    hour_rate: float   # currency per hour of process time and setup (counts in the objective for "cost" only)
+    safety_factor: float
+    lots: tuple[str, ...]
+    blocks: tuple[Block, ...]
+    currency: str
