@@ -1,0 +1,177 @@
+"""What a design says: frozen results, in canonical units (bar, L, m², h, LMH, L/m², bar·h).
+
+The JSON of these objects is made in one place, `trainopt.report`. A number that does not exist is None.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+
+@dataclass(frozen=True)
+class Notice:
+    """Something the engineer should know that does not stop the design."""
+
+    code: str
+    text: str
+
+
+@dataclass(frozen=True)
+class Pick:
+    """What is bought for one used stage."""
+
+    stage: str
+    medium: str
+    module: str
+    count: int
+
+
+@dataclass(frozen=True)
+class StageDesign:
+    """One used stage of a design.
+
+    `area` m²; `ideal_area` m², the stage's area in the ideal split of the picked route (None where there is none);
+    `loading` L/m² and `flux` LMH at the installed area; `demand` bar·h and `pressure` bar (end of batch) for the
+    block's worst lot at the derated area; `pressure_share` of what the block's stages use; `safety_factor` the largest
+    derating of this stage alone at the design's times; `limited_by` the binding limit
+    ("pressure", "differential-pressure", "inlet-pressure", "flux", "loading-tested", "loading-limit", "turbidity", "module-size").
+    """
+
+    stage: str
+    medium: str
+    module: str
+    count: int
+    holders: Mapping[str, int]
+    area: float
+    ideal_area: float | None
+    loading: float
+    flux: float
+    demand: float
+    pressure: float
+    pressure_share: float
+    safety_factor: float | None
+    limited_by: str
+
+
+@dataclass(frozen=True)
+class BlockPressure:
+    """Pressure of a block at the end of the batch, worst lot, derated area; all in bar."""
+
+    limit: float
+    static: float
+    line: float
+    stages: float
+    spare: float
+
+
+@dataclass(frozen=True)
+class BlockDesign:
+    """One block of a design: `time` and `setup` in h, `flow` in L/h, `budget` and `demand` in bar·h."""
+
+    block: str
+    operation: str
+    time: float
+    setup: float
+    flow: float
+    pressure: BlockPressure
+    budget: float
+    demand: float
+    worst_lot: str
+    stages: tuple[StageDesign, ...]
+
+
+@dataclass(frozen=True)
+class CostParts:
+    """Cost per batch by cause, in the catalog's currency."""
+
+    modules: float
+    holders: float
+    flush: float
+    product: float
+    hours: float
+
+    @property
+    def total(self) -> float:
+        """Sum of the parts."""
+        return self.modules + self.holders + self.flush + self.product + self.hours
+
+
+@dataclass(frozen=True)
+class Objective:
+    """Objective of the picked design with HiGHS's proof: `gap` is relative, 0 when proven optimal."""
+
+    kind: str          # "area" | "cost"
+    value: float
+    bound: float
+    gap: float
+
+
+@dataclass(frozen=True)
+class Reason:
+    """Why no design exists: a limit, and what single change to it alone would make one possible.
+
+    `needs` maps a field with its unit ("batch.time_h", "clarification.pressure_bar", …) to the value that works,
+    or to None where no value of it alone does.
+    """
+
+    text: str
+    needs: Mapping[str, float | None]
+
+
+@dataclass(frozen=True)
+class EvenSplit:
+    """The even split of pressure and time over stages and blocks, sized stage by stage (model.md, section 5).
+
+    `status` "feasible" or "infeasible" (then `text` says why and the numbers are None).
+    """
+
+    status: str
+    area: float | None
+    cost: float | None
+    cost_parts: CostParts | None
+    time: float | None
+    blocks: tuple[BlockDesign, ...]
+    text: str = ""
+
+
+@dataclass(frozen=True)
+class Saving:
+    """What the optimum saves against the even split; percentages are of the even split's figure."""
+
+    area: float
+    area_percent: float
+    cost: float
+    cost_percent: float | None
+
+
+@dataclass(frozen=True)
+class Design:
+    """A proven design, or the reasons why none exists.
+
+    `status` "optimal" (proven), "limit" (best found when a limit stopped the solver) or "infeasible" (then numbers are
+    None and `reasons` is filled). `area` m², `time` h (process time and setups), `cost` per batch.
+    `safety_factor`: the largest common derating at the design's times that still meets every limit.
+    `inputs` maps each file read to "sha256:…".
+    """
+
+    scenario: str
+    status: str
+    objective: Objective | None
+    area: float | None
+    cost: float | None
+    currency: str
+    time: float | None
+    cost_parts: CostParts | None
+    blocks: tuple[BlockDesign, ...]
+    safety_factor: float | None
+    even_split: EvenSplit | None
+    saving: Saving | None
+    warnings: tuple[Notice, ...]
+    reasons: tuple[Reason, ...] = ()
+    inputs: Mapping[str, str] = field(default_factory=dict)
+
+    @property
+    def picks(self) -> tuple[Pick, ...]:
+        """What is bought, in flow order."""
+        return tuple(Pick(s.stage, s.medium, s.module, s.count) for b in self.blocks for s in b.stages)
