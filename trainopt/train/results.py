@@ -123,7 +123,7 @@ class Reason:
 class EvenSplit:
     """The even split of pressure and time over stages and blocks, sized stage by stage (model.md, section 5).
 
-    `status` "feasible" or "infeasible" (then `text` says why and the numbers are None).
+    `status` "optimal" (sized) or "infeasible" (then `text` says why and the numbers are None).
     """
 
     status: str
