@@ -1,1 +1,1 @@
-"""."""
+"""Room of the package; see DEVELOPERS.md."""
