@@ -10,7 +10,8 @@ from dataclasses import dataclass
 from typing import overload
 
 from trainopt.bench.run import Flag
-from trainopt.curves.laws import LAWS, Floats
+from trainopt.curves.blocking import Floats
+from trainopt.curves.laws import LAWS
 
 
 @dataclass(frozen=True)
@@ -116,9 +117,9 @@ class Curve:
     """The resistance curve of a medium: shared shape, lots, what was tested.
 
     `tested_loading` L/m² and `tested_flux` LMH bound what the curve may be used for, `tested_temperature`
-    degC is the temperature the resistances hold at, `turbidity_loading` L/m² is where the filtrate first reached
-    the turbidity limit (None: no limit, or never reached). `covariance` is that of the parameters, in their
-    order. `source` "runs" or "parameters".
+    degC is the temperature the resistances hold at, `turbidity_loading` L/m² is where the filtrate first
+    reached the turbidity limit (None: no limit, or never reached). `covariance` is that of the parameters,
+    in their order. `source` "runs" or "parameters".
     """
 
     medium: str
