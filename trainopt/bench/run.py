@@ -25,8 +25,9 @@ class ReducedRun:
     """One run, reading by reading: arrays of shape (n,).
 
     `rows` line numbers in the file; `time` h; `volume` L of filtrate, hold-up subtracted; `loading` L/m²;
-    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `turbidity` NTU, NaN where it was not read.
-    `excluded` says per reading why a fit must leave it out (None: use it). `temperature` degC or None.
+    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `turbidity` NTU, NaN where it was not
+    read. `excluded` says per reading why a fit must leave it out (None: use it). `temperature` degC or
+    None.
     """
 
     name: str

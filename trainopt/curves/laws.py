@@ -56,7 +56,7 @@ class Law:
     def resistance(self, loading: Floats, *p: float) -> Floats: ...
     def resistance(self, loading: float | Floats, *p: float) -> float | Floats:
         """R(l) in bar/LMH for parameters in the order of `parameters`; infinite at and past the pole."""
-        return _guarded(self.shape, loading, self.pole(*p), *self._split(p))
+        return _guarded(self.shape, loading, self.pole(*p), *self.split(p))
 
     @overload
     def integral(self, loading: float, *p: float) -> float: ...
@@ -64,7 +64,7 @@ class Law:
     def integral(self, loading: Floats, *p: float) -> Floats: ...
     def integral(self, loading: float | Floats, *p: float) -> float | Floats:
         """S(l) = ∫₀ˡ R dl in bar·h, in closed form; infinite at and past the pole."""
-        return _guarded(self.area, loading, self.pole(*p), *self._split(p))
+        return _guarded(self.area, loading, self.pole(*p), *self.split(p))
 
     @overload
     def peak(self, loading: float, *p: float) -> float: ...
@@ -80,7 +80,8 @@ class Law:
             out = np.where(l >= top, np.maximum(out, self.resistance(top, *p)), out)
         return out.item() if np.ndim(loading) == 0 else out
 
-    def _split(self, p: tuple[float, ...]) -> tuple[float, tuple[float, ...]]:
+    def split(self, p: tuple[float, ...]) -> tuple[float, tuple[float, ...]]:
+        """The factor before the shape, and the shape's own parameters."""
         return (1.0, p) if self.polynomial else (p[0], p[1:])
 
 

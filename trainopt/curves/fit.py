@@ -1,0 +1,264 @@
+"""Fit of one law to all readings of a medium: one shared shape, each lot with its own ρ and κ (model.md,
+section 2).
+
+A reading says ln R at its loading (constant flow), or ln ∫ΔP dt up to its loading (any flow history): in
+logarithms, so that errors count relative to the value and a clean filter weighs as much as a fouled one.
+R_s(l) = ρ_s·R(κ_s·l), with the logarithms of ρ and of κ summing to zero over the lots: the shared curve is
+that of the geometric-mean lot.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trainopt.curves.blocking import Floats
+from trainopt.curves.forms import Form, forms
+from trainopt.curves.laws import LAWS, Law
+from trainopt.curves.solver import Solution, covariance, least_squares
+
+SMALLEST_ERROR = 1e-8
+"""Relative error below which a fit counts as exact; keeps AICc finite on noise-free data."""
+
+
+@dataclass(frozen=True, eq=False)
+class Readings:
+    """What a fit sees, arrays of shape (n,): `loading` L/m²; `log` ln(bar/LMH), or ln(bar·h) where
+    `integral`.
+
+    `lot` and `run` index the lots and runs; `weight` multiplies squared errors; `resistance` bar/LMH is the
+    local estimate, used for starting values only.
+    """
+
+    loading: Floats
+    log: Floats
+    integral: NDArray[np.bool_]
+    weight: Floats
+    lot: NDArray[np.intp]
+    run: NDArray[np.intp]
+    resistance: Floats
+    lots: tuple[str, ...]
+
+    def __len__(self) -> int:
+        return len(self.loading)
+
+    def part(self, keep: NDArray[np.bool_]) -> Readings:
+        """The readings where `keep` is true, lots unchanged."""
+        return Readings(
+            self.loading[keep],
+            self.log[keep],
+            self.integral[keep],
+            self.weight[keep],
+            self.lot[keep],
+            self.run[keep],
+            self.resistance[keep],
+            self.lots,
+        )
+
+
+@dataclass(frozen=True, eq=False)
+class Fit:
+    """One law fitted: natural `parameters`, ln ρ and ln κ per lot (S,), weighted residuals (n,), and what
+    they cost.
+
+    `covariance` (k + 2S)² is that of (parameters, ln ρ, ln κ); `error` the relative standard deviation of a
+    reading; `count` the number of fitted quantities, the error's own included.
+    """
+
+    law: str
+    parameters: tuple[float, ...]
+    log_rho: Floats
+    log_kappa: Floats
+    residuals: Floats
+    covariance: Floats
+    error: float
+    count: int
+    converged: bool
+
+    @property
+    def cost(self) -> float:
+        """Weighted sum of squared relative errors."""
+        return float(self.residuals @ self.residuals)
+
+    @property
+    def aicc(self) -> float:
+        """Akaike's criterion corrected for small samples (Hurvich & Tsai 1989); infinite with too few."""
+        n, k = len(self.residuals), self.count
+        if n <= k + 1:
+            return float("inf")
+        variance = max(self.cost / n, SMALLEST_ERROR**2)
+        return float(n * np.log(variance) + 2.0 * k + 2.0 * k * (k + 1.0) / (n - k - 1.0))
+
+
+def contrasts(lots: int) -> Floats:
+    """Orthonormal columns (lots, lots − 1) that sum to zero: the directions in which lots can differ."""
+    out = np.zeros((lots, max(lots - 1, 0)))
+    for column in range(lots - 1):
+        out[: column + 1, column] = 1.0
+        out[column + 1, column] = -(column + 1.0)
+        out[:, column] /= np.sqrt((column + 1.0) * (column + 2.0))
+    return out
+
+
+def fit_law(readings: Readings, law: Law) -> Fit:
+    """The law's parameters and the lots' ρ and κ that make the sum of squared relative errors least.
+
+    A polynomial comes out positive and non-decreasing over the loadings seen, κ·l included.
+    """
+    reach = float(np.max(readings.loading))
+    best = _fit_within(readings, law, reach)
+    for _ in range(4):
+        stretched = _reach(readings, best)
+        if not law.polynomial or stretched <= reach * (1.0 + 1e-6):
+            break
+        reach = stretched
+        best = _fit_within(readings, law, reach)
+    return best
+
+
+def _reach(readings: Readings, fit: Fit) -> float:
+    return float(np.max(readings.loading * np.exp(fit.log_kappa)[readings.lot]))
+
+
+def _fit_within(readings: Readings, law: Law, reach: float) -> Fit:
+    """Try the law's forms in turn; later ones only where an earlier answer is not allowed (see `forms`)."""
+    best: tuple[float, Form, Solution] | None = None
+    for form in forms(law, reach, readings.loading, readings.resistance):
+        model = _Model(readings, law, form)
+        solution = model.solve()
+        if form.allows(solution.x[: form.size]):
+            if best is None or solution.cost < best[0]:
+                best = (solution.cost, form, solution)
+            if form.final:
+                break
+    assert best is not None, "every law has a form whose answers are all allowed"
+    return _Model(readings, law, best[1]).result(best[2])
+
+
+class _Model:
+    """Residuals of one form of a law and of the lots: θ = (the form's, contrasts of ln ρ, of ln κ)."""
+
+    def __init__(self, readings: Readings, law: Law, form: Form) -> None:
+        self.readings, self.law, self.form = readings, law, form
+        self.basis = contrasts(len(readings.lots))
+        self.rows = self.basis[readings.lot]
+        self.root = np.sqrt(readings.weight)
+        self.mixed = bool(readings.integral.any())
+
+    def solve(self) -> Solution:
+        """Search from the first start, and from the others only where the answer sits on a bound.
+
+        On a bound a law of two mechanisms has lost one, which can be a local minimum.
+        """
+        free = 2 * self.basis.shape[1]
+        lower = np.concatenate([self.form.lower, np.full(free, -5.0)])
+        upper = np.concatenate([self.form.upper, np.full(free, 5.0)])
+        best: Solution | None = None
+        with np.errstate(all="ignore"):
+            for start in self.form.starts:
+                found = least_squares(self.residuals, np.concatenate([start, np.zeros(free)]), lower, upper)
+                if best is None or found.cost < best.cost:
+                    best = found
+                if not np.any((best.x <= lower + 1e-6) | (best.x >= upper - 1e-6)):
+                    break
+        assert best is not None, "a form has a start"
+        return best
+
+    def residuals(self, theta: Floats) -> tuple[Floats, Floats]:
+        form, size = self.form, self.form.size
+        parameters = form.natural(theta[:size])
+        log_rho, log_kappa = self._lots(theta)
+        x = self.readings.loading * np.exp(log_kappa)
+        if not form.law.polynomial and not np.max(x) < form.law.pole(*parameters):
+            return np.full(len(x), np.inf), np.zeros((len(x), len(theta)))
+        value, by_parameter, by_log_kappa = self._logs(x, parameters)
+        value = value + log_rho - np.where(self.readings.integral, log_kappa, 0.0)
+        jacobian = np.concatenate(
+            [by_parameter @ form.slopes(theta[:size]), self.rows, by_log_kappa[:, None] * self.rows], axis=1
+        )
+        return self.root * (value - self.readings.log), self.root[:, None] * jacobian
+
+    def _lots(self, theta: Floats) -> tuple[Floats, Floats]:
+        size, lots = self.form.size, self.basis.shape[1]
+        return self.rows @ theta[size : size + lots], self.rows @ theta[size + lots :]
+
+    def _logs(self, x: Floats, parameters: tuple[float, ...]) -> tuple[Floats, Floats, Floats]:
+        """ln R or ln S at κ·l, its derivatives by the natural parameters (n, k) and by ln κ (n,)."""
+        if not self.mixed:
+            return _log_resistance(self.law, x, parameters)
+        inside = self.readings.integral
+        if inside.all():
+            return _log_area(self.law, x, parameters)
+        value, by_kappa = np.empty(len(x)), np.empty(len(x))
+        by_parameter = np.empty((len(x), len(parameters)))
+        for part, function in ((inside, _log_area), (~inside, _log_resistance)):
+            value[part], by_parameter[part], by_kappa[part] = function(self.law, x[part], parameters)
+        return value, by_parameter, by_kappa
+
+    def result(self, solution: Solution) -> Fit:
+        size, lots = self.form.size, self.basis.shape[1]
+        theta = solution.x
+        parameters = self.form.natural(theta[:size])
+        count = len(parameters) + 2 * lots + 1
+        n = len(self.readings)
+        freedom = max(n - count + 1, 1)
+        error = float(np.sqrt(solution.cost / freedom))
+        with np.errstate(all="ignore"):
+            x = self.readings.loading * np.exp(self._lots(theta)[1])
+            _, by_parameter, by_log_kappa = self._logs(x, parameters)
+        jacobian = np.concatenate([by_parameter, self.rows, by_log_kappa[:, None] * self.rows], axis=1)
+        spread = covariance(self.root[:, None] * jacobian, error**2)
+        widen = np.zeros((len(parameters) + 2 * len(self.readings.lots), len(spread)))
+        k = len(parameters)
+        widen[:k, :k] = np.eye(k)
+        widen[k : k + len(self.basis), k : k + lots] = self.basis
+        widen[k + len(self.basis) :, k + lots :] = self.basis
+        return Fit(
+            self.law.name,
+            parameters,
+            self.basis @ theta[size : size + lots],
+            self.basis @ theta[size + lots :],
+            solution.residuals,
+            _spread(widen, spread),
+            error,
+            count,
+            solution.converged,
+        )
+
+
+def _spread(widen: Floats, spread: Floats) -> Floats:
+    """widen·spread·widenᵀ where some variances may be infinite."""
+    unknown = np.isinf(np.diag(spread))
+    finite = np.where(np.isfinite(spread), spread, 0.0)
+    out = widen @ finite @ widen.T
+    touched = np.abs(widen[:, unknown]).sum(axis=1) > 0.0
+    out[touched, touched] = np.inf
+    return np.asarray(out)
+
+
+def _log_resistance(law: Law, x: Floats, parameters: tuple[float, ...]) -> tuple[Floats, Floats, Floats]:
+    factor, k = law.split(parameters)
+    value = np.log(factor * law.shape(x, *k))
+    *by_k, by_l = law.slopes(x, *k)
+    return value, _columns(law, factor, by_k, len(x)), x * by_l
+
+
+def _log_area(law: Law, x: Floats, parameters: tuple[float, ...]) -> tuple[Floats, Floats, Floats]:
+    factor, k = law.split(parameters)
+    area = law.area(x, *k)
+    by_k = [slope / area for slope in law.area_slopes(x, *k)]
+    return np.log(factor * area), _columns(law, factor, by_k, len(x)), x * law.shape(x, *k) / area - 1.0
+
+
+def _columns(law: Law, factor: float, by_k: list[Floats], n: int) -> Floats:
+    """Derivatives by the natural parameters (n, k): R0 first for the mechanistic laws."""
+    columns = by_k if law.polynomial else [np.full(n, 1.0 / factor), *by_k]
+    return np.stack(columns, axis=1)
+
+
+def fit_laws(readings: Readings, names: tuple[str, ...] = tuple(LAWS)) -> tuple[Fit, ...]:
+    """The laws of `names` that the readings suffice for, lowest AICc first; ties by name."""
+    fits = [fit_law(readings, LAWS[name]) for name in names]
+    return tuple(sorted((fit for fit in fits if np.isfinite(fit.aicc)), key=lambda fit: (fit.aicc, fit.law)))
