@@ -25,9 +25,9 @@ class ReducedRun:
     """One run, reading by reading: arrays of shape (n,).
 
     `rows` line numbers in the file; `time` h; `volume` L of filtrate, hold-up subtracted; `loading` L/m²;
-    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `turbidity` NTU, NaN where it was not
-    read. `excluded` says per reading why a fit must leave it out (None: use it). `temperature` degC or
-    None.
+    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `turbidity` NTU, NaN where not read;
+    `volume_step` L and `pressure_step` bar the resolutions that the readings show (0: none); `excluded` why a
+    fit must leave a reading out (None: use it). `temperature` degC or None.
     """
 
     name: str
@@ -43,6 +43,8 @@ class ReducedRun:
     pressure: Floats
     resistance: Floats
     turbidity: Floats
+    volume_step: float
+    pressure_step: float
     excluded: tuple[str | None, ...]
     flags: tuple[Flag, ...]
 

@@ -1,1 +1,1 @@
-"""."""
+"""Resistance laws, their fits and uncertainty."""

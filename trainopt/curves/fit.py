@@ -22,6 +22,12 @@ from trainopt.curves.solver import Solution, covariance, least_squares
 SMALLEST_ERROR = 1e-8
 """Relative error below which a fit counts as exact; keeps AICc finite on noise-free data."""
 
+FINE, COARSE = 1e-10, 1e-4
+"""Steps relative to the parameters at which a search ends: for an answer, and for comparing laws.
+
+The sum of squares is off by the square of that, far less than any evidence.
+"""
+
 
 @dataclass(frozen=True, eq=False)
 class Readings:
@@ -102,19 +108,19 @@ def contrasts(lots: int) -> Floats:
     return out
 
 
-def fit_law(readings: Readings, law: Law) -> Fit:
+def fit_law(readings: Readings, law: Law, tolerance: float = FINE) -> Fit:
     """The law's parameters and the lots' ρ and κ that make the sum of squared relative errors least.
 
     A polynomial comes out positive and non-decreasing over the loadings seen, κ·l included.
     """
     reach = float(np.max(readings.loading))
-    best = _fit_within(readings, law, reach)
+    best = _fit_within(readings, law, reach, tolerance)
     for _ in range(4):
         stretched = _reach(readings, best)
         if not law.polynomial or stretched <= reach * (1.0 + 1e-6):
             break
         reach = stretched
-        best = _fit_within(readings, law, reach)
+        best = _fit_within(readings, law, reach, tolerance)
     return best
 
 
@@ -122,12 +128,12 @@ def _reach(readings: Readings, fit: Fit) -> float:
     return float(np.max(readings.loading * np.exp(fit.log_kappa)[readings.lot]))
 
 
-def _fit_within(readings: Readings, law: Law, reach: float) -> Fit:
+def _fit_within(readings: Readings, law: Law, reach: float, tolerance: float) -> Fit:
     """Try the law's forms in turn; later ones only where an earlier answer is not allowed (see `forms`)."""
     best: tuple[float, Form, Solution] | None = None
     for form in forms(law, reach, readings.loading, readings.resistance):
         model = _Model(readings, law, form)
-        solution = model.solve()
+        solution = model.solve(tolerance)
         if form.allows(solution.x[: form.size]):
             if best is None or solution.cost < best[0]:
                 best = (solution.cost, form, solution)
@@ -147,7 +153,7 @@ class _Model:
         self.root = np.sqrt(readings.weight)
         self.mixed = bool(readings.integral.any())
 
-    def solve(self) -> Solution:
+    def solve(self, tolerance: float) -> Solution:
         """Search from the first start, and from the others only where the answer sits on a bound.
 
         On a bound a law of two mechanisms has lost one, which can be a local minimum.
@@ -158,7 +164,8 @@ class _Model:
         best: Solution | None = None
         with np.errstate(all="ignore"):
             for start in self.form.starts:
-                found = least_squares(self.residuals, np.concatenate([start, np.zeros(free)]), lower, upper)
+                theta = np.concatenate([start, np.zeros(free)])
+                found = least_squares(self.residuals, theta, lower, upper, tolerance=tolerance)
                 if best is None or found.cost < best.cost:
                     best = found
                 if not np.any((best.x <= lower + 1e-6) | (best.x >= upper - 1e-6)):
@@ -260,5 +267,5 @@ def _columns(law: Law, factor: float, by_k: list[Floats], n: int) -> Floats:
 
 def fit_laws(readings: Readings, names: tuple[str, ...] = tuple(LAWS)) -> tuple[Fit, ...]:
     """The laws of `names` that the readings suffice for, lowest AICc first; ties by name."""
-    fits = [fit_law(readings, LAWS[name]) for name in names]
+    fits = [fit_law(readings, LAWS[name], COARSE if len(names) > 1 else FINE) for name in names]
     return tuple(sorted((fit for fit in fits if np.isfinite(fit.aicc)), key=lambda fit: (fit.aicc, fit.law)))

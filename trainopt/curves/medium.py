@@ -1,0 +1,214 @@
+"""The curve of a medium file: from its bench runs, or from the parameters it gives."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from trainopt.bench.reduce import reduce_run
+from trainopt.bench.run import Floats, ReducedRun
+from trainopt.curves.curve import Alternative, Curve, Estimate, LotEffect, Point
+from trainopt.curves.fit import Fit, Readings, fit_law, fit_laws
+from trainopt.curves.laws import LAWS
+from trainopt.errors import InputError, Problem
+
+if TYPE_CHECKING:
+    from trainopt.files import Medium
+
+INDISTINGUISHABLE = 2.0
+"""AICc units within which the law with fewer parameters is taken (Burnham & Anderson 2002, memory)."""
+
+
+def fit_curve(medium: Medium) -> Curve:
+    """The resistance curve of a medium; raises `InputError` with every problem in its runs."""
+    if not medium.curve.runs:
+        return _given(medium)
+    runs, problems = _reduced_runs(medium)
+    if problems:
+        raise InputError(problems)
+    readings = _readings(runs)
+    fits = fit_laws(readings, _names(medium.curve.law))
+    if not fits:
+        total = sum(int(run.used.sum()) for run in runs)
+        text = f"{total} usable readings are too few for law '{medium.curve.law}'; expected a longer run"
+        raise InputError([medium.source.problem(("curve", "runs"), text)])
+    return _fitted(medium, runs, fit_law(readings, LAWS[_chosen(fits).law]), fits)
+
+
+def _reduced_runs(medium: Medium) -> tuple[list[ReducedRun], list[Problem]]:
+    runs: list[ReducedRun] = []
+    problems: list[Problem] = []
+    for index, run in enumerate(medium.curve.runs):
+
+        def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
+            return medium.source.problem(("curve", "runs", index, *loc), text)
+
+        try:
+            reduced = reduce_run(run, medium.medium, where)
+        except InputError as error:
+            problems.extend(error.problems)
+            continue
+        if not reduced.used.any():
+            problems.append(where(("file",), f"run '{reduced.name}' holds no usable reading"))
+        runs.append(reduced)
+    return runs, problems
+
+
+def _names(law: str) -> tuple[str, ...]:
+    return tuple(LAWS) if law == "auto" else (law,)
+
+
+def _readings(runs: Sequence[ReducedRun]) -> Readings:
+    """The kept readings of all runs, sorted so that the order of entries cannot matter."""
+    lots = tuple(sorted({run.lot for run in runs}))
+    ordered = sorted(enumerate(runs), key=lambda pair: (pair[1].lot, pair[1].name, pair[0]))
+    sizes = [int(run.used.sum()) for _, run in ordered]
+    resistance = np.concatenate([run.resistance[run.used] for _, run in ordered])
+    loading = np.concatenate([run.loading[run.used] for _, run in ordered])
+    return Readings(
+        loading=loading,
+        log=np.log(resistance),
+        integral=np.zeros(len(loading), dtype=bool),
+        weight=np.ones(len(loading)),
+        lot=np.repeat([lots.index(run.lot) for _, run in ordered], sizes),
+        run=np.repeat(np.arange(len(ordered)), sizes),
+        resistance=resistance,
+        lots=lots,
+    )
+
+
+def _chosen(fits: tuple[Fit, ...]) -> Fit:
+    """The law with the fewest parameters among those the data cannot tell from the best."""
+    close = [fit for fit in fits if fit.aicc <= fits[0].aicc + INDISTINGUISHABLE]
+    return min(close, key=lambda fit: (fit.count, fit.aicc, fit.law))
+
+
+def _fitted(medium: Medium, runs: Sequence[ReducedRun], fit: Fit, fits: tuple[Fit, ...]) -> Curve:
+    law = LAWS[fit.law]
+    k = len(fit.parameters)
+    errors = np.sqrt(np.diag(fit.covariance))
+    lots = tuple(sorted({run.lot for run in runs}))
+    crossed = [_crossing(run, medium.limits.turbidity) for run in runs]
+    return Curve(
+        medium=medium.medium,
+        law=fit.law,
+        parameters={
+            name: Estimate(value, _known(error), unit)
+            for name, value, error, unit in zip(
+                law.parameters, fit.parameters, errors, law.units, strict=False
+            )
+        },
+        covariance=tuple(tuple(float(value) for value in row) for row in fit.covariance[:k, :k]),
+        tested_loading=_tested_loading(runs, lots, np.exp(fit.log_kappa)),
+        tested_flux=max(float(np.median(run.flux[run.used])) for run in runs),
+        tested_temperature=None,
+        turbidity_loading=min((loading for loading in crossed if loading is not None), default=None),
+        lots=_lot_effects(lots, fit, errors[k:]),
+        alternatives=_alternatives(fits),
+        points=tuple(_points(runs)),
+        flags=tuple(flag for run in runs for flag in run.flags),
+        source="runs",
+    )
+
+
+def _known(error: float) -> float | None:
+    return float(error) if np.isfinite(error) else None
+
+
+def _lot_effects(lots: tuple[str, ...], fit: Fit, errors: Floats) -> dict[str, LotEffect]:
+    rho, kappa, n = np.exp(fit.log_rho), np.exp(fit.log_kappa), len(lots)
+    return {
+        lot: LotEffect(
+            float(rho[i]), _known(rho[i] * errors[i]), float(kappa[i]), _known(kappa[i] * errors[n + i])
+        )
+        for i, lot in enumerate(lots)
+    }
+
+
+def _alternatives(fits: tuple[Fit, ...]) -> tuple[Alternative, ...]:
+    """All laws tried, best first, with Akaike weights."""
+    evidence = np.exp(-0.5 * (np.array([fit.aicc for fit in fits]) - fits[0].aicc))
+    weights = evidence / evidence.sum()
+    return tuple(
+        Alternative(fit.law, fit.aicc, float(weight), fit.error)
+        for fit, weight in zip(fits, weights, strict=True)
+    )
+
+
+def _tested_loading(runs: Sequence[ReducedRun], lots: tuple[str, ...], kappa: Floats) -> float:
+    """Never beyond what was run, nor beyond where the shared shape was seen (κ·l)."""
+    reached = [(float(run.loading[run.used].max()), kappa[lots.index(run.lot)]) for run in runs]
+    return min(
+        max(loading for loading, _ in reached), max(float(factor) * loading for loading, factor in reached)
+    )
+
+
+def _crossing(run: ReducedRun, limit: float | None) -> float | None:
+    """Loading at which the run's turbidity first reaches the limit, interpolated between readings."""
+    if limit is None:
+        return None
+    read = np.flatnonzero(np.isfinite(run.turbidity) & (run.loading >= 0.0))
+    over = read[run.turbidity[read] >= limit]
+    if not len(over):
+        return None
+    first = int(over[0])
+    before = read[read < first]
+    if not len(before):
+        return float(run.loading[first])
+    last = int(before[-1])
+    share = (limit - run.turbidity[last]) / (run.turbidity[first] - run.turbidity[last])
+    return float(run.loading[last] + share * (run.loading[first] - run.loading[last]))
+
+
+def _points(runs: Iterable[ReducedRun]) -> Iterable[Point]:
+    for run in runs:
+        columns = (run.rows, run.loading, run.flux, run.resistance, run.turbidity)
+        for (row, loading, flux, resistance, turbidity), excluded in zip(
+            zip(*(column.tolist() for column in columns), strict=True), run.excluded, strict=True
+        ):
+            seen = turbidity if turbidity == turbidity else None
+            yield Point(run.name, row, run.lot, loading, flux, resistance, seen, excluded)
+
+
+def _given(medium: Medium) -> Curve:
+    """A curve by its parameters, checked to be a resistance on its tested range."""
+    spec = medium.curve
+    law = LAWS[spec.law]
+    values = (
+        spec.coefficients
+        if spec.coefficients is not None
+        else tuple((spec.parameters or {})[name] for name in law.parameters)
+    )
+    assert spec.tested is not None, "the file's schema asks for the tested range"
+    lots = {
+        name: LotEffect(lot.resistance, None, lot.fouling, None)
+        for name, lot in sorted((spec.lots or {}).items())
+    }
+    tested = spec.tested
+    pole = law.pole(*values)
+    if values[0] <= 0.0 or tested.loading >= pole:
+        text = f"law '{spec.law}' with these parameters has no finite positive resistance up to the tested loading"
+        field = "coefficients" if law.polynomial else "parameters"
+        if values[0] > 0.0:
+            text += f"; expected `tested: loading` below {pole:.4g} L/m2"
+        raise InputError([medium.source.problem(("curve", field), text)])
+    return Curve(
+        medium=medium.medium,
+        law=spec.law,
+        parameters={
+            name: Estimate(value, None, unit)
+            for name, value, unit in zip(law.parameters, values, law.units, strict=True)
+        },
+        covariance=None,
+        tested_loading=tested.loading,
+        tested_flux=tested.flux,
+        tested_temperature=tested.temperature,
+        turbidity_loading=None,
+        lots=lots,
+        alternatives=(),
+        points=(),
+        flags=(),
+        source="parameters",
+    )
