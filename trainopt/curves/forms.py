@@ -5,7 +5,7 @@ k·L, …) with k ≥ 0 and the order n from 0 to 2. Polynomials must be positiv
 The derivative of a quadratic is a straight line: both its ends are kept non-negative. The derivative of a
 cubic is q(z) = b0·(1−z)² + 2·b1·z·(1−z) + b2·z², z = l/L, and is non-negative on [0, 1] exactly when b0 ≥
 0, b2 ≥ 0 and b1 ≥ −√(b0·b2) (the quadratic case of the Markov–Lukács theorem). Where the free minimum is
-outside, the constrained one is on that set's edge: either with all b ≥ 0, or with q = (u·(1−z) − w·z)².
+outside, the constrained one is on that set's edge: either with all b ≥ 0, or with q = g·(z − z0)².
 """
 
 from __future__ import annotations
@@ -136,20 +136,22 @@ def _non_decreasing(theta: Floats) -> bool:
 
 
 def _touching_form(law: Law, matrix: Floats, rise: float) -> Form:
-    """Cubics whose slope is zero once inside the range: b = (u², −u·w, w²)."""
+    """Cubics whose slope is zero once inside the range: q = g·(z − z0)², b = g·(z0², −z0·(1−z0), (1−z0)²)."""
 
     def natural(theta: Floats) -> tuple[float, ...]:
-        c0, u, w = theta
-        return tuple(float(value) for value in matrix @ np.array([c0, u * u, -u * w, w * w]))
+        c0, g, z = theta
+        ends = np.array([c0, g * z * z, -g * z * (1.0 - z), g * (1.0 - z) ** 2])
+        return tuple(float(value) for value in matrix @ ends)
 
     def slopes(theta: Floats) -> Floats:
-        _, u, w = theta
-        inner = np.array([[1.0, 0.0, 0.0], [0.0, 2.0 * u, 0.0], [0.0, -w, -u], [0.0, 0.0, 2.0 * w]])
-        return np.asarray(matrix @ inner)
+        _, g, z = theta
+        by_g = [0.0, z * z, -z * (1.0 - z), (1.0 - z) ** 2]
+        by_z = [0.0, 2.0 * g * z, g * (2.0 * z - 1.0), -2.0 * g * (1.0 - z)]
+        return np.asarray(matrix @ np.array([[1.0, 0.0, 0.0, 0.0], by_g, by_z]).T)
 
-    size = float(np.sqrt(3.0 * rise))
-    starts = tuple(np.array([1.0, size * one, size * other]) for one, other in ((1, 1), (1, 0.3), (0.3, 1)))
-    return Form(law, np.array([1e-6, 0.0, 0.0]), np.full(3, np.inf), starts, natural, slopes, _always, True)
+    starts = tuple(np.array([1.0, 3.0 * rise, place]) for place in (0.5, 0.2, 0.8))
+    upper = np.array([np.inf, np.inf, 1.0])
+    return Form(law, np.array([1e-6, 0.0, 0.0]), upper, starts, natural, slopes, _always, True)
 
 
 def _from_ends(degree: int, reach: float) -> Floats:

@@ -189,7 +189,7 @@ def _given(medium: Medium) -> Curve:
     tested = spec.tested
     pole = law.pole(*values)
     if values[0] <= 0.0 or tested.loading >= pole:
-        text = f"law '{spec.law}' with these parameters has no finite positive resistance up to the tested loading"
+        text = f"law '{spec.law}' with these parameters is not finite and positive up to the tested loading"
         field = "coefficients" if law.polynomial else "parameters"
         if values[0] > 0.0:
             text += f"; expected `tested: loading` below {pole:.4g} L/m2"

@@ -5,6 +5,8 @@ Loadings l in L/m², coefficients in bar/LMH per (L/m²) to the power of their p
 
 from __future__ import annotations
 
+from functools import lru_cache
+
 import numpy as np
 
 from trainopt.curves.blocking import Floats
@@ -35,13 +37,22 @@ def polynomial_area_slopes(l: Floats, *c: float) -> tuple[Floats, ...]:
     return tuple(l ** (power + 1) / (power + 1) for power in range(len(c)))
 
 
+@lru_cache(maxsize=1024)
 def first_root(*c: float) -> float:
     """First loading above zero where the polynomial is no longer positive: it means nothing from there on."""
     if all(coefficient >= 0.0 for coefficient in c):
         return float("inf")
-    roots = np.roots(np.trim_zeros(np.array(c[::-1]), "f"))
+    with np.errstate(over="ignore", invalid="ignore"):
+        roots = _roots(np.array(c[::-1]))
     real = [float(root.real) for root in roots if abs(root.imag) <= 1e-12 * abs(root) and root.real > 0.0]
     return min(real, default=float("inf"))
+
+
+def _roots(descending: Floats) -> np.ndarray[tuple[int], np.dtype[np.complex128]]:
+    """Roots of a polynomial; a leading coefficient too small to matter is dropped."""
+    while len(descending) > 1 and abs(descending[0]) < 1e-200 * np.max(np.abs(descending)):
+        descending = descending[1:]
+    return np.roots(descending).astype(complex)
 
 
 def maxima(coefficients: tuple[float, ...]) -> list[float]:
