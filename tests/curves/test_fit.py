@@ -151,7 +151,8 @@ def test_constrained_cubic_is_the_best_allowed_one(data: Readings) -> None:
     grid = np.linspace(0.0, 1.0, 401)[:, None]
     rows = np.hstack([np.zeros_like(grid), np.ones_like(grid), 2.0 * grid, 3.0 * grid**2])
     found = minimize(
-        cost, [1.0, 0.5, 0.2, 0.1], jac=slope, method="SLSQP", constraints=[LinearConstraint(rows, 0.0, np.inf)],
+        cost, [1.0, 0.5, 0.2, 0.1], jac=slope, method="SLSQP",
+        constraints=[LinearConstraint(rows, 0.0, np.inf)],
         options={"maxiter": 500, "ftol": 1e-14},
     )  # fmt: skip
     fit = fit_law(data, LAWS["cubic"])

@@ -64,7 +64,7 @@ def test_integral_is_the_area_under_the_curve(law: Law) -> None:
     ("name", "n"), [*HERMIA_ORDER.items(), *(("hermia", n) for n in (0, 0.4, 1, 1.2, 1.5, 2))]
 )
 def test_differential_equation(name: str, n: float) -> None:
-    """dR/dl = k·R0·(R/R0)ⁿ, Hermia, Trans. IChemE 60 (1982) 183 (memory): by differences and by integration."""
+    """dR/dl = k·R0·(R/R0)ⁿ, Hermia, Trans. IChemE 60 (1982) 183 (memory), both ways."""
     p = (1e-3, 0.005, n) if name == "hermia" else PARAMETERS[name]
     law, r0, k = LAWS[name], p[0], p[1]
     l = np.linspace(1.0, 120.0, 25)
@@ -104,7 +104,7 @@ def test_general_law_is_smooth_at_its_special_orders(n: float) -> None:
 
 
 COMBINED = {
-    # dR/dl written from the two mechanisms side by side; the closed forms are Bolton and others 2006 (memory).
+    # The closed forms as published, Bolton and others 2006 (memory).
     "cake-complete": lambda l, kc, kb: (1.0 - kc / kb * np.log(1.0 - kb * l)) / (1.0 - kb * l),
     "cake-intermediate": lambda l, kc, ki: np.exp(ki * l) * (1.0 + kc / ki * (np.exp(ki * l) - 1.0)),
     "cake-standard": lambda l, kc, ks: (1.0 - ks * l / 2.0) ** -2 + kc * l,

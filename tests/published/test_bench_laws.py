@@ -10,8 +10,8 @@ from trainopt.curves.fit import Readings, fit_law
 from trainopt.curves.laws import LAWS
 from trainopt.curves.solver import covariance, least_squares
 
-# NIST Statistical Reference Datasets, nonlinear regression, Misra1a to Misra1d: volume adsorbed against pressure
-# (D. Misra, 1978). Data and certified values retyped from the files as a general fitting library distributes them.
+# NIST Statistical Reference Datasets, nonlinear regression, Misra1a to Misra1d: volume adsorbed against
+# pressure (D. Misra, 1978). Data and certified values retyped from the files of a general fitting library.
 Y = np.array(
     [10.07, 14.73, 17.94, 23.93, 29.61, 35.18, 40.02, 44.82, 50.76, 55.05, 61.01, 66.40, 75.47, 81.78]
 )
@@ -45,7 +45,7 @@ def volume_at(time: float, p: tuple[float, ...]) -> float:
 def test_certified_regressions_are_the_general_law_at_constant_pressure(
     name: str, start: tuple[float, float]
 ) -> None:
-    """Least squares on the volumes, with the law's own integral, slopes and our solver: ten certified digits."""
+    """Least squares on the volumes, with the law's integral, its slopes and our solver: ten digits."""
     n, (b1, b1_error), (b2, b2_error), rss = CERTIFIED[name]
     law = LAWS["hermia"]
 
@@ -75,7 +75,8 @@ def exact(loading: np.ndarray, value: np.ndarray, integral: bool) -> Readings:
 
 
 def test_constant_flow_on_an_incompressible_cake() -> None:
-    """Brasch & Whyman, Problems in Fluid Flow, Ex. 8.1: 3.23 kPa at 120 s, 6.53 kPa at 300 s, 34.03 kPa at 1800 s.
+    """Brasch & Whyman, Problems in Fluid Flow, Ex. 8.1: 3.23 kPa at 120 s, 6.53 kPa at 300 s, 34.03 kPa at
+    1800 s.
 
     At constant flow the loading is proportional to time and the pressure to the resistance.
     """
@@ -84,8 +85,8 @@ def test_constant_flow_on_an_incompressible_cake() -> None:
     assert LAWS["cake"].resistance(1800.0, *fit.parameters) == pytest.approx(34.03, abs=0.005)
 
 
-# Constant-pressure forms of the four laws: volume per area V(t) with initial flux J0 (Hermia 1982; Bolton, LaCasse &
-# Kuriyel 2006; both from memory). Constants per loading are those of model.md, k.
+# Constant-pressure forms of the four laws: volume per area V(t) with initial flux J0 (Hermia 1982; Bolton, LaCasse
+# & Kuriyel 2006; both from memory). Constants per loading are those of model.md, k.
 CONSTANT_PRESSURE = {
     "cake": lambda t, j0, k: (np.sqrt(1.0 + 2.0 * k * j0 * t) - 1.0) / k,
     "intermediate": lambda t, j0, k: np.log(1.0 + k * j0 * t) / k,
@@ -111,6 +112,7 @@ def test_one_curve_serves_both_kinds_of_run(name: str) -> None:
 
 
 def test_auto_offers_polynomials_and_the_combined_cake_law() -> None:
-    """A study of depth filtration of harvested cell culture (BioPharm International 22(3), March 2009, abstract) found
-    polynomials of 2nd and 3rd order best and the cake-complete law best of the mechanistic ones."""
+    """A study of depth filtration of harvested cell culture (BioPharm International 22(3), March 2009,
+    abstract) found polynomials of 2nd and 3rd order best and the cake-complete law best of the mechanistic
+    ones."""
     assert {"quadratic", "cubic", "cake-complete"} <= set(LAWS)

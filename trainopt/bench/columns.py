@@ -82,26 +82,79 @@ _POOLED = {"pool", "pooled"}
 _TURBIDITY_WORDS = {"turbidity", "turb", "ntu", "fnu"}
 
 
-def find_columns(
-    table: Table, given: Mapping[str, str] | None
-) -> tuple[dict[str, Column], list[Problem], list[str]]:
-    """Columns by role, every problem with them, and what was assumed."""
-    problems: list[Problem] = []
-    assumed: list[str] = []
+@dataclass
+class _Search:
+    """Columns found so far, what is wrong with them, and what was taken for granted."""
+
+    table: Table
+    left: list[_Header]
+    given: set[str]
+    found: dict[str, Column]
+    problems: list[Problem]
+    assumed: list[str]
+
+    def wrong(self, text: str) -> None:
+        self.problems.append(self.table.problem(self.table.header_line, text))
+
+    def take(self, role: str, candidates: list[_Header]) -> None:
+        """Give the role to its only candidate; several are a problem, none is none."""
+        if len(candidates) > 1:
+            names = " and ".join(f"'{header.text}'" for header in candidates)
+            example = f'columns: {{{role}: "{candidates[0].text}"}}'
+            what = role.replace("_", " ")
+            self.wrong(f"{names} could each be the {what}; expected the run to say which, as in {example}")
+        elif candidates:
+            column = self.checked(role, candidates[0], candidates[0].unit)
+            if column is not None:
+                self.found[role] = column
+
+    def checked(self, role: str, header: _Header, unit: HeaderUnit | None) -> Column | None:
+        """The column with its unit checked against its role."""
+        dimension, example = DIMENSIONS[role], EXAMPLES[role]
+        if unit is None and role == "turbidity" and not header.unit_text:
+            return Column(role, header.index, header.text, HeaderUnit("NTU", "turbidity", 1.0))
+        if unit is None and role == "time" and _is_clock(self.table, header.index):
+            return Column(role, header.index, header.text, None)
+        if unit is None:
+            unknown = (
+                f"has the unit '{header.unit_text}', which is not known"
+                if header.unit_text
+                else "has no unit"
+            )
+            self.wrong(f"column '{header.text}' ({role}) {unknown}; expected for example '{example}'")
+            return None
+        if unit.dimension != dimension:
+            what = f"column '{header.text}' is a {unit.dimension}, not a {dimension}"
+            self.wrong(f"{what}; expected for example '{example}'")
+            return None
+        return Column(role, header.index, header.text, unit)
+
+
+@dataclass(frozen=True)
+class Columns:
+    """Columns by role; every problem with them; what was assumed; whether a pressure was there to be read."""
+
+    found: Mapping[str, Column]
+    problems: tuple[Problem, ...]
+    assumed: tuple[str, ...]
+    pressure_seen: bool
+
+
+def find_columns(table: Table, given: Mapping[str, str] | None) -> Columns:
+    """Which column has which role, by `given` (role → header) where it says so, else by units and names."""
     headers = [_header(table, index) for index in range(len(table.header))]
-    found: dict[str, Column] = {}
+    search = _Search(table, [], set(given or {}), {}, [], [])
     for role, text in (given or {}).items():
-        column = _given_column(table, headers, role, text, problems)
-        if column is not None:
-            found[role] = column
-    taken = {column.index for column in found.values()}
-    left = [header for header in headers if header.index not in taken and header.text]
-    refused = set(given or {})
-    _find_time(table, left, found, refused, problems)
-    _find_amount(table, left, found, refused, problems, assumed)
-    _find_pressures(table, left, found, refused, problems, assumed)
-    _find_turbidity(table, left, found, refused, problems)
-    return found, problems, assumed
+        _take_given(search, headers, role, text)
+    taken = {column.index for column in search.found.values()}
+    search.left = [header for header in headers if header.index not in taken and header.text]
+    _find_time(search)
+    _find_amount(search)
+    _find_pressures(search)
+    _find_turbidity(search)
+    seen = any(DIMENSIONS.get(role) == "pressure" for role in (*search.found, *search.given))
+    seen = seen or any(_is_pressure(header) for header in search.left)
+    return Columns(search.found, tuple(search.problems), tuple(search.assumed), seen)
 
 
 def _header(table: Table, index: int) -> _Header:
@@ -112,14 +165,11 @@ def _header(table: Table, index: int) -> _Header:
     return _Header(index, text, name, unit_text, unit_of(unit_text) if unit_text else None)
 
 
-def _given_column(
-    table: Table, headers: list[_Header], role: str, text: str, problems: list[Problem]
-) -> Column | None:
-    line = table.header_line
+def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -> None:
+    """The column that the run names for a role; the name may add the unit that the header lacks."""
     if role not in DIMENSIONS:
-        known = ", ".join(DIMENSIONS)
-        problems.append(table.problem(line, f"`columns:` names the role '{role}'; expected one of {known}"))
-        return None
+        search.wrong(f"`columns:` names the role '{role}'; expected one of {', '.join(DIMENSIONS)}")
+        return
     matches = [header for header in headers if header.text == text.strip()]
     unit_text = ""
     if not matches:
@@ -128,34 +178,11 @@ def _given_column(
     if len(matches) != 1:
         have = ", ".join(f"'{header.text}'" for header in headers if header.text)
         what = "two columns are" if matches else "no column is"
-        problems.append(
-            table.problem(line, f"{what} headed '{text}' ({role} by `columns:`); expected one of {have}")
-        )
-        return None
-    header = matches[0]
-    unit = unit_of(unit_text) if unit_text else header.unit
-    return _column(table, role, header, unit, problems)
-
-
-def _column(
-    table: Table, role: str, header: _Header, unit: HeaderUnit | None, problems: list[Problem]
-) -> Column | None:
-    """The column with its unit checked against its role."""
-    dimension, example = DIMENSIONS[role], EXAMPLES[role]
-    if unit is None and role == "turbidity" and not header.unit_text:
-        return Column(role, header.index, header.text, HeaderUnit("NTU", "turbidity", 1.0))
-    if unit is None and role == "time" and _is_clock(table, header.index):
-        return Column(role, header.index, header.text, None)
-    if unit is None:
-        said = f"has the unit '{header.unit_text}', which is not known" if header.unit_text else "has no unit"
-        text = f"column '{header.text}' ({role}) {said}; expected for example '{example}'"
-        problems.append(table.problem(table.header_line, text))
-        return None
-    if unit.dimension != dimension:
-        text = f"column '{header.text}' is a {unit.dimension}; expected '{example}'"
-        problems.append(table.problem(table.header_line, text))
-        return None
-    return Column(role, header.index, header.text, unit)
+        search.wrong(f"{what} headed '{text}' ({role} by `columns:`); expected one of {have}")
+        return
+    column = search.checked(role, matches[0], unit_of(unit_text) if unit_text else matches[0].unit)
+    if column is not None:
+        search.found[role] = column
 
 
 def _is_clock(table: Table, index: int) -> bool:
@@ -163,68 +190,32 @@ def _is_clock(table: Table, index: int) -> bool:
     return bool(cells) and sum(CLOCK.fullmatch(cell) is not None for cell in cells) * 2 > len(cells)
 
 
-def _ambiguous(table: Table, role: str, headers: list[_Header], problems: list[Problem]) -> None:
-    names = " and ".join(f"'{header.text}'" for header in headers)
-    example = f'columns: {{{role}: "{headers[0].text}"}}'
-    text = (
-        f"{names} could each be the {role.replace('_', ' ')}; expected the run to say which, as in {example}"
-    )
-    problems.append(table.problem(table.header_line, text))
-
-
-def _missing(table: Table, role: str, problems: list[Problem]) -> None:
-    text = f"no {role.replace('_', ' ')} column found; expected for example '{EXAMPLES[role]}'"
-    problems.append(table.problem(table.header_line, text))
-
-
-def _find_time(
-    table: Table, left: list[_Header], found: dict[str, Column], refused: set[str], problems: list[Problem]
-) -> None:
-    if "time" in refused:
+def _find_time(search: _Search) -> None:
+    if "time" in search.given:
         return
-    named = [h for h in left if h.words & _TIME_WORDS and (h.unit is None or h.unit.dimension == "time")]
-    by_unit = [h for h in left if h.unit is not None and h.unit.dimension == "time"]
+    by_unit = [h for h in search.left if h.unit is not None and h.unit.dimension == "time"]
+    named = [h for h in search.left if h.words & _TIME_WORDS and (h.unit is None or h in by_unit)]
     candidates = [h for h in by_unit if h in named] or by_unit or named
-    if len(candidates) > 1:
-        _ambiguous(table, "time", candidates, problems)
-    elif not candidates:
-        _missing(table, "time", problems)
-    else:
-        column = _column(table, "time", candidates[0], candidates[0].unit, problems)
-        if column is not None:
-            found["time"] = column
+    if not candidates:
+        search.wrong(f"no time column found; expected for example '{EXAMPLES['time']}'")
+    search.take("time", candidates)
 
 
 _VOLUME_WORDS = {"volume", "vol", "v", "throughput"}
 _MASS_WORDS = {"mass", "weight", "balance", "scale", "m"}
 
 
-def _find_amount(
-    table: Table,
-    left: list[_Header],
-    found: dict[str, Column],
-    refused: set[str],
-    problems: list[Problem],
-    assumed: list[str],
-) -> None:
+def _find_amount(search: _Search) -> None:
     """Volume, or mass where there is no volume."""
-    if refused & {"volume", "mass"}:
+    if search.given & {"volume", "mass"}:
         return
-    volumes = _amounts(left, "volume", _VOLUME_WORDS)
-    masses = _amounts(left, "mass", _MASS_WORDS)
-    role, candidates = ("volume", volumes) if volumes else ("mass", masses)
-    if not candidates:
-        text = "no volume or mass column found; expected for example 'volume (mL)' or 'mass (g)'"
-        problems.append(table.problem(table.header_line, text))
-        return
-    if len(candidates) > 1:
-        _ambiguous(table, role, candidates, problems)
-        return
-    if volumes and masses:
-        assumed.append(f"volume from column '{volumes[0].text}'; column '{masses[0].text}' not used")
-    column = _column(table, role, candidates[0], candidates[0].unit, problems)
-    if column is not None:
-        found[role] = column
+    volumes = _amounts(search.left, "volume", _VOLUME_WORDS)
+    masses = _amounts(search.left, "mass", _MASS_WORDS)
+    if not volumes and not masses:
+        search.wrong("no volume or mass column found; expected for example 'volume (mL)' or 'mass (g)'")
+    if len(volumes) == 1 and masses:
+        search.assumed.append(f"volume from column '{volumes[0].text}'; column '{masses[0].text}' not used")
+    search.take("volume" if volumes else "mass", volumes or masses)
 
 
 def _amounts(left: list[_Header], dimension: str, words: set[str]) -> list[_Header]:
@@ -238,60 +229,39 @@ def _amounts(left: list[_Header], dimension: str, words: set[str]) -> list[_Head
     return filtrate or not_feed or by_name
 
 
-_PRESSURES = ("pressure", "outlet_pressure", "differential_pressure")
-
-
-def _find_pressures(
-    table: Table,
-    left: list[_Header],
-    found: dict[str, Column],
-    refused: set[str],
-    problems: list[Problem],
-    assumed: list[str],
-) -> None:
+def _find_pressures(search: _Search) -> None:
     """Inlet and outlet, or the differential pressure itself."""
-    headers = [h for h in left if _is_pressure(h)]
+    if "differential_pressure" in search.given:
+        return
     kinds: dict[str, list[_Header]] = {
         "differential_pressure": [],
         "outlet_pressure": [],
         "pressure": [],
-        "plain": [],
+        "": [],
     }
-    for header in headers:
-        kinds[_pressure_kind(header)].append(header)
-    if kinds["plain"] and not kinds["pressure"] and "pressure" not in refused:
-        kinds["pressure"] = kinds["plain"]
+    for header in search.left:
+        if _is_pressure(header):
+            kinds[_pressure_kind(header)].append(header)
+    inlets = kinds["pressure"] or kinds[""]
     difference = kinds["differential_pressure"]
-    if (
-        "differential_pressure" not in refused
-        and not refused & {"pressure", "outlet_pressure"}
-        and difference
-    ):
-        inlets = [*kinds["pressure"], *kinds["outlet_pressure"]]
-        if inlets:
-            names = ", ".join(f"'{header.text}'" for header in inlets)
-            assumed.append(f"differential pressure from column '{difference[0].text}'; {names} not used")
-        roles = ["differential_pressure"]
-    else:
-        roles = [
-            role for role in ("pressure", "outlet_pressure") if role not in refused and role not in found
-        ]
-        if "differential_pressure" in refused:
-            roles = []
-    for role in roles:
-        candidates = kinds[role]
-        if len(candidates) > 1:
-            _ambiguous(table, role, candidates, problems)
-        elif candidates:
-            column = _column(table, role, candidates[0], candidates[0].unit, problems)
-            if column is not None:
-                found[role] = column
+    if difference and not search.given & {"pressure", "outlet_pressure"}:
+        unused = ", ".join(f"'{header.text}'" for header in (*inlets, *kinds["outlet_pressure"]))
+        if unused:
+            search.assumed.append(
+                f"differential pressure from column '{difference[0].text}'; {unused} not used"
+            )
+        search.take("differential_pressure", difference)
+        return
+    if "pressure" not in search.given:
+        search.take("pressure", inlets)
+    if "outlet_pressure" not in search.given:
+        search.take("outlet_pressure", kinds["outlet_pressure"])
 
 
 def _is_pressure(header: _Header) -> bool:
     if header.unit is not None:
         return header.unit.dimension == "pressure" and not header.words & _IGNORED
-    named = header.words & ({"pressure", "p", "dp", "pin", "pout"} | {f"p{n}" for n in range(1, 6)})
+    named = header.words & {"pressure", "p", "dp", "pin", "pout", *(f"p{n}" for n in range(1, 6))}
     return bool(named) and not header.words & _IGNORED
 
 
@@ -301,24 +271,19 @@ def _pressure_kind(header: _Header) -> str:
         return "differential_pressure"
     if words & _INLET:
         return "pressure"
-    return "outlet_pressure" if words & _OUTLET else "plain"
+    return "outlet_pressure" if words & _OUTLET else ""
 
 
-def _find_turbidity(
-    table: Table, left: list[_Header], found: dict[str, Column], refused: set[str], problems: list[Problem]
-) -> None:
-    if "turbidity" in refused:
+def _find_turbidity(search: _Search) -> None:
+    if "turbidity" in search.given:
         return
-    candidates = [
-        h
-        for h in left
-        if (h.unit.dimension == "turbidity" if h.unit is not None else bool(h.words & _TURBIDITY_WORDS))
-        and not h.words & (_IGNORED | _FEED | _POOLED)
-    ]
-    candidates = [h for h in candidates if h.words & _FILTRATE] or candidates
-    if len(candidates) > 1:
-        _ambiguous(table, "turbidity", candidates, problems)
-    elif candidates:
-        column = _column(table, "turbidity", candidates[0], candidates[0].unit, problems)
-        if column is not None:
-            found["turbidity"] = column
+    candidates = [h for h in search.left if _is_turbidity(h)]
+    search.take("turbidity", [h for h in candidates if h.words & _FILTRATE] or candidates)
+
+
+def _is_turbidity(header: _Header) -> bool:
+    if header.words & (_IGNORED | _FEED | _POOLED):
+        return False
+    if header.unit is not None:
+        return header.unit.dimension == "turbidity"
+    return bool(header.words & _TURBIDITY_WORDS)

@@ -2,13 +2,13 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
-from trainopt.bench.columns import Column, find_columns
+from trainopt.bench.columns import Column, Columns, find_columns
 from trainopt.bench.flux import local_flow, resolution
 from trainopt.bench.quality import quality_flags
 from trainopt.bench.run import Flag, Floats, ReducedRun
@@ -35,10 +35,11 @@ def reduce_run(run: Run, medium: str, where: Where) -> ReducedRun:
     their ratio.
     """
     table = read_table(run.file, getattr(run, "sheet", None))
-    columns, problems, assumed = find_columns(table, run.columns)
-    problems.extend(_missing_settings(run, medium, columns, where))
+    found = find_columns(table, run.columns)
+    problems = [*found.problems, *_missing_settings(run, medium, found, where)]
     if problems:
         raise InputError(problems)
+    columns = found.found
     values = {role: _numbers(table, column, problems) for role, column in columns.items()}
     keep = _complete(table, columns, values, problems)
     if problems:
@@ -53,16 +54,16 @@ def reduce_run(run: Run, medium: str, where: Where) -> ReducedRun:
         raise InputError(_capped(problems))
     left_out = [line for line, kept in zip(table.lines, keep, strict=True) if not kept]
     steps = {role: _step(values[role], column) for role, column in columns.items()}
-    return _reduced(run, table, values, steps, lines, assumed, left_out)
+    return _reduced(run, table, values, steps, lines, found.assumed, left_out)
 
 
-def _missing_settings(run: Run, medium: str, columns: dict[str, Column], where: Where) -> list[Problem]:
+def _missing_settings(run: Run, medium: str, found: Columns, where: Where) -> list[Problem]:
     """What the table cannot say and the run must."""
     out = []
+    columns = found.found
     if "mass" in columns and "volume" not in columns and run.density is None:
         out.append(where((), f"run of '{medium}' records mass; expected `density:`, for example '1.01 kg/L'"))
-    has_pressure = "pressure" in columns or "differential_pressure" in columns
-    if not has_pressure and not (run.operation == "constant-pressure" and run.pressure is not None):
+    if not found.pressure_seen and not (run.operation == "constant-pressure" and run.pressure is not None):
         text = f"run of '{medium}': its file has no pressure column; expected one such as 'pressure (psi)'"
         if run.operation == "constant-pressure":
             text += ", or `pressure:` for a run at constant pressure"
@@ -111,7 +112,7 @@ def _clock_times(table: Table, column: Column, cells: list[str], problems: list[
 
 
 def _complete(
-    table: Table, columns: dict[str, Column], values: dict[str, Floats], problems: list[Problem]
+    table: Table, columns: Mapping[str, Column], values: dict[str, Floats], problems: list[Problem]
 ) -> NDArray[np.bool_]:
     """Rows that hold every reading but turbidity; a row without its time is a problem."""
     keep = np.ones(len(table.lines), dtype=bool)
@@ -129,7 +130,7 @@ def _complete(
 
 
 def _order_problems(
-    table: Table, columns: dict[str, Column], values: dict[str, Floats], lines: NDArray[np.int64]
+    table: Table, columns: Mapping[str, Column], values: dict[str, Floats], lines: NDArray[np.int64]
 ) -> list[Problem]:
     """Times must increase; the amount of filtrate must not shrink by more than a reading's noise."""
     out = []
@@ -160,7 +161,7 @@ def _reduced(
     values: dict[str, Floats],
     steps: dict[str, float],
     lines: NDArray[np.int64],
-    assumed: list[str],
+    assumed: tuple[str, ...],
     left_out: list[int],
 ) -> ReducedRun:
     name = run.file.name
