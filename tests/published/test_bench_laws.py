@@ -85,7 +85,8 @@ def test_constant_flow_on_an_incompressible_cake() -> None:
     assert LAWS["cake"].resistance(1800.0, *fit.parameters) == pytest.approx(34.03, abs=0.005)
 
 
-# Constant-pressure forms of the four laws: volume per area V(t) with initial flux J0 (Hermia 1982; Bolton, LaCasse
+# Constant-pressure forms of the four laws: volume per area V(t) with initial flux J0 (Hermia 1982; Bolton,
+# LaCasse
 # & Kuriyel 2006; both from memory). Constants per loading are those of model.md, k.
 CONSTANT_PRESSURE = {
     "cake": lambda t, j0, k: (np.sqrt(1.0 + 2.0 * k * j0 * t) - 1.0) / k,

@@ -22,6 +22,8 @@ DIMENSIONS: Mapping[str, str] = {
     "outlet_pressure": "pressure",
     "differential_pressure": "pressure",
     "turbidity": "turbidity",
+    "feed_volume": "volume",
+    "feed_mass": "mass",
 }
 """The roles a column can have (keys of `columns:`) and the dimension each is read in."""
 
@@ -33,6 +35,8 @@ EXAMPLES = {
     "outlet_pressure": "outlet pressure (psi)",
     "differential_pressure": "differential pressure (psi)",
     "turbidity": "turbidity (NTU)",
+    "feed_volume": "feed volume (mL)",
+    "feed_mass": "feed mass (g)",
 }
 
 
@@ -152,6 +156,7 @@ def find_columns(table: Table, given: Mapping[str, str] | None) -> Columns:
     _find_amount(search)
     _find_pressures(search)
     _find_turbidity(search)
+    _find_feed(search)
     seen = any(DIMENSIONS.get(role) == "pressure" for role in (*search.found, *search.given))
     seen = seen or any(_is_pressure(header) for header in search.left)
     return Columns(search.found, tuple(search.problems), tuple(search.assumed), seen)
@@ -279,6 +284,21 @@ def _find_turbidity(search: _Search) -> None:
         return
     candidates = [h for h in search.left if _is_turbidity(h)]
     search.take("turbidity", [h for h in candidates if h.words & _FILTRATE] or candidates)
+
+
+def _find_feed(search: _Search) -> None:
+    """Feed taken so far, for the mass balance; nothing is lost where it is not to be told."""
+    for role in ("feed_volume", "feed_mass"):
+        candidates = [
+            h
+            for h in search.left
+            if h.unit is not None
+            and h.unit.dimension == DIMENSIONS[role]
+            and h.words & (_FEED | {"fed"})
+            and not h.words & (_IGNORED | _FILTRATE)
+        ]
+        if role not in search.given and len(candidates) == 1:
+            search.take(role, candidates)
 
 
 def _is_turbidity(header: _Header) -> bool:

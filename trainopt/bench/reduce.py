@@ -3,16 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
+from trainopt.bench import filtrate
+from trainopt.bench.cells import column_step, column_values, complete_rows
 from trainopt.bench.columns import Column, Columns, find_columns
-from trainopt.bench.flux import local_flow, resolution
-from trainopt.bench.quality import quality_flags
+from trainopt.bench.flux import local_flow
+from trainopt.bench.quality import checked
 from trainopt.bench.run import Flag, Floats, ReducedRun
-from trainopt.bench.table import CLOCK, Table, is_number, read_table
+from trainopt.bench.table import Table, read_table
 from trainopt.errors import InputError, Problem
 
 if TYPE_CHECKING:
@@ -23,8 +26,6 @@ Where = Callable[[tuple[str, ...], str], Problem]
 
 FEWEST_READINGS = 5
 MOST_PROBLEMS = 100
-_NOT_READ = {"", "-", "--", "n/a", "na", "nd"}
-_DAY = 24.0
 
 
 def reduce_run(run: Run, medium: str, where: Where) -> ReducedRun:
@@ -39,22 +40,21 @@ def reduce_run(run: Run, medium: str, where: Where) -> ReducedRun:
     problems = [*found.problems, *_missing_settings(run, medium, found, where)]
     if problems:
         raise InputError(problems)
-    columns = found.found
-    values = {role: _numbers(table, column, problems) for role, column in columns.items()}
-    keep = _complete(table, columns, values, problems)
+    readings = _readings(table, found, problems)
     if problems:
         raise InputError(_capped(problems))
-    lines = np.array(table.lines)[keep]
-    values = {role: column[keep] for role, column in values.items()}
-    problems.extend(_order_problems(table, columns, values, lines))
-    if not problems and len(lines) < FEWEST_READINGS:
-        text = f"holds {len(lines)} complete readings; expected at least {FEWEST_READINGS}"
-        problems.append(table.problem(table.header_line, text))
-    if problems:
-        raise InputError(_capped(problems))
-    left_out = [line for line, kept in zip(table.lines, keep, strict=True) if not kept]
-    steps = {role: _step(values[role], column) for role, column in columns.items()}
-    return _reduced(run, table, values, steps, lines, found.assumed, left_out)
+    return _reduced(run, readings)
+
+
+@dataclass(frozen=True, eq=False)
+class _Readings:
+    """Complete rows in canonical units: values (n,) and resolution by role, line numbers, remarks so far."""
+
+    values: Mapping[str, Floats]
+    steps: Mapping[str, float]
+    swaps: NDArray[np.bool_]
+    rows: NDArray[np.int64]
+    remarks: tuple[tuple[str, tuple[int, int] | None, str], ...]
 
 
 def _missing_settings(run: Run, medium: str, found: Columns, where: Where) -> list[Problem]:
@@ -69,83 +69,45 @@ def _missing_settings(run: Run, medium: str, found: Columns, where: Where) -> li
             text += ", or `pressure:` for a run at constant pressure"
         out.append(where(("file",), text))
     inlet, outlet = columns.get("pressure"), columns.get("outlet_pressure")
-    for column in (inlet, outlet, columns.get("differential_pressure")):
-        if column is not None and column.unit is not None and column.unit.absolute:
-            other = outlet if column is inlet else inlet
-            if other is None or other.unit is None or not other.unit.absolute:
-                text = f"run of '{medium}': column '{column.header}' is absolute; expected gauge pressure"
-                out.append(where(("file",), text + ", or inlet and outlet both absolute"))
+    for column, other in ((inlet, outlet), (outlet, inlet)):
+        if _absolute(column) and not _absolute(other):
+            assert column is not None
+            text = f"run of '{medium}': column '{column.header}' is absolute; expected gauge pressure"
+            out.append(where(("file",), text + ", or inlet and outlet both absolute"))
     return out
 
 
-def _numbers(table: Table, column: Column, problems: list[Problem]) -> Floats:
-    """A column in canonical units, NaN where a cell is empty; each cell that is no number is a problem."""
-    cells = table.column(column.index)
-    out = np.full(len(cells), np.nan)
-    if column.unit is None:
-        return _clock_times(table, column, cells, problems)
-    for index, cell in enumerate(cells):
-        text = cell.lstrip("<>≤≥ ") if column.role == "turbidity" else cell
-        if is_number(text):
-            out[index] = float(text) * column.unit.factor
-        elif cell.casefold() not in (_NOT_READ if column.role == "turbidity" else {""}):
-            text = f"column '{column.header}': '{cell}' is not a number"
-            problems.append(table.problem(table.lines[index], text + "; expected a plain number"))
-    out[np.isinf(out)] = np.nan
-    return out
+def _absolute(column: Column | None) -> bool:
+    return column is not None and column.unit is not None and column.unit.absolute
 
 
-def _clock_times(table: Table, column: Column, cells: list[str], problems: list[Problem]) -> Floats:
-    """`h:mm:ss` (or `h:mm`) as hours; a clock that passes midnight goes on counting."""
-    out = np.full(len(cells), np.nan)
-    for index, cell in enumerate(cells):
-        if CLOCK.fullmatch(cell):
-            parts = [float(part) for part in cell.split(":")]
-            out[index] = sum(part / 60.0**power for power, part in enumerate(parts))
-        elif cell:
-            text = f"column '{column.header}': '{cell}' is not a time; expected h:mm:ss throughout"
-            problems.append(table.problem(table.lines[index], text))
-    finite = np.flatnonzero(np.isfinite(out))
-    jumps = np.diff(out[finite]) < -0.5 * _DAY
-    out[finite[1:]] += _DAY * np.cumsum(jumps)
-    return out - out[finite[0]] if len(finite) else out
-
-
-def _complete(
-    table: Table, columns: Mapping[str, Column], values: dict[str, Floats], problems: list[Problem]
-) -> NDArray[np.bool_]:
-    """Rows that hold every reading but turbidity; a row without its time is a problem."""
-    keep = np.ones(len(table.lines), dtype=bool)
-    for role, column in values.items():
-        if role != "turbidity":
-            keep &= np.isfinite(column)
-    bad = {problem.line for problem in problems}
-    for index in np.flatnonzero(np.isnan(values["time"])):
-        line = table.lines[index]
-        if line not in bad:
-            problems.append(
-                table.problem(line, f"column '{columns['time'].header}' is empty; expected a time")
-            )
-    return keep
-
-
-def _order_problems(
-    table: Table, columns: Mapping[str, Column], values: dict[str, Floats], lines: NDArray[np.int64]
-) -> list[Problem]:
-    """Times must increase; the amount of filtrate must not shrink by more than a reading's noise."""
-    out = []
-    time = values["time"]
-    for index in np.flatnonzero(np.diff(time) <= 0.0):
-        how = "repeats" if time[index + 1] == time[index] else "goes back behind"
-        text = f"time {how} that of line {lines[index]}; expected times that increase"
-        out.append(table.problem(int(lines[index + 1]), text))
-    role = "volume" if "volume" in values else "mass"
-    amount = values[role]
-    noise = 0.02 * max(float(np.ptp(amount)), 1e-12)
-    for index in np.flatnonzero(np.diff(amount) < -noise):
-        text = f"{role} falls below that of line {lines[index]}; expected a cumulative {role}"
-        out.append(table.problem(int(lines[index + 1]), f"column '{columns[role].header}': {text}"))
-    return out
+def _readings(table: Table, found: Columns, problems: list[Problem]) -> _Readings:
+    """The table's complete rows; problems are added to the list."""
+    columns = found.found
+    values = {role: column_values(table, column, problems) for role, column in columns.items()}
+    keep = complete_rows(table, columns, values, problems)
+    rows = np.array(table.lines)[keep]
+    values = {role: column[keep] for role, column in values.items()}
+    swaps = np.zeros(len(rows), dtype=bool)
+    if not problems:
+        role = "volume" if "volume" in values else "mass"
+        swaps = filtrate.swapped(values[role])
+        faults = filtrate.time_faults(values["time"], swaps, rows)
+        falls = filtrate.fall_faults(values[role], swaps, rows, role)
+        faults.extend((line, f"column '{columns[role].header}': {text}") for line, text in falls)
+        problems.extend(table.problem(line, text) for line, text in faults)
+    if not problems and len(rows) < FEWEST_READINGS:
+        text = f"holds {len(rows)} complete readings; expected at least {FEWEST_READINGS}"
+        problems.append(table.problem(table.header_line, text))
+    remarks: list[tuple[str, tuple[int, int] | None, str]] = [
+        ("assumed", None, text) for text in (*table.assumed, *found.assumed)
+    ]
+    left_out = [line for line, kept in zip(table.lines, keep, strict=True) if not kept]
+    if left_out:
+        text = f"{len(left_out)} row(s) without a volume or pressure left out"
+        remarks.append(("no-reading", (min(left_out), max(left_out)), text))
+    steps = {role: column_step(values[role], column) for role, column in columns.items()}
+    return _Readings(values, steps, swaps, rows, tuple(remarks))
 
 
 def _capped(problems: list[Problem]) -> list[Problem]:
@@ -155,93 +117,95 @@ def _capped(problems: list[Problem]) -> list[Problem]:
     return [*problems[:MOST_PROBLEMS], rest]
 
 
-def _reduced(
-    run: Run,
-    table: Table,
-    values: dict[str, Floats],
-    steps: dict[str, float],
-    lines: NDArray[np.int64],
-    assumed: tuple[str, ...],
-    left_out: list[int],
-) -> ReducedRun:
-    name = run.file.name
-    time = values["time"]
-    if "volume" in values:
-        volume, volume_step = values["volume"], steps["volume"]
-    else:
-        density = run.density or 1.0
-        volume, volume_step = values["mass"] / density, steps["mass"] / density
-    flux = local_flow(time, volume, volume_step) / run.area
+def _reduced(run: Run, readings: _Readings) -> ReducedRun:
+    name, rows, time = run.file.name, readings.rows, readings.values["time"]
+    flags = [Flag(code, name, place, text) for code, place, text in readings.remarks]
+    volume, volume_step, more = _filtrate(run, readings)
+    flags.extend(more)
+    pressure, assumed = _differential(run, readings.values, len(time))
+    flags.extend(Flag("assumed", name, None, text) for text in assumed)
+    flux = _flux(time, volume, volume_step) / run.area
     volume = volume - run.hold_up
-    pressure = _differential(run, values, len(time))
     with np.errstate(divide="ignore", invalid="ignore"):
         resistance = pressure / flux
-    excluded = _excluded(volume, pressure, flux)
-    if run.operation == "constant-flow":
-        excluded = _without_flow_steps(excluded, flux)
-    flags = [Flag("assumed", name, None, text) for text in (*table.assumed, *assumed)]
-    if left_out:
-        text = f"{len(left_out)} row(s) without a volume or pressure left out"
-        flags.append(Flag("no-reading", name, (min(left_out), max(left_out)), text))
     reduced = ReducedRun(
         name=name,
         lot=run.lot,
         operation=run.operation,
         area=run.area,
         temperature=run.temperature,
-        rows=lines,
+        rows=rows,
         time=time,
         volume=volume,
         loading=volume / run.area,
         flux=flux,
         pressure=pressure,
         resistance=resistance,
-        turbidity=values.get("turbidity", np.full(len(time), np.nan)),
+        pressure_time=filtrate.pressure_time(time, volume, pressure),
+        turbidity=readings.values.get("turbidity", np.full(len(time), np.nan)),
+        feed_loading=getattr(run, "feed_loading", None),
+        feed=_feed(run, readings.values),
         volume_step=volume_step,
-        pressure_step=max((steps[role] for role in steps if "pressure" in role), default=0.0),
-        excluded=excluded,
+        pressure_step=max((step for role, step in readings.steps.items() if "pressure" in role), default=0.0),
+        excluded=(None,) * len(time),
         flags=tuple(flags),
     )
-    return quality_flags(reduced)
+    return checked(reduced, keep=bool(getattr(run, "keep", False)))
 
 
-def _step(values: Floats, column: Column) -> float:
-    """Resolution of a column in canonical units, found in the units of the file."""
-    factor = column.unit.factor if column.unit is not None else 1.0
-    return resolution(values / factor) * factor
+def _filtrate(run: Run, readings: _Readings) -> tuple[Floats, float, list[Flag]]:
+    """Cumulative filtrate in L with its resolution, and what had to be done to it."""
+    values, name = readings.values, run.file.name
+    role = "volume" if "volume" in values else "mass"
+    density = 1.0 if role == "volume" else run.density or 1.0
+    start, assumed = filtrate.tare(values["time"], values[role], getattr(run, "tare", None), role)
+    flags = [Flag("assumed", name, None, assumed)] if assumed else []
+    volume = (values[role] - start) / density
+    if readings.swaps.any():
+        # A fresh cylinder stands without what the first one held at the start.
+        later = np.cumsum(readings.swaps) > 0
+        volume = np.where(later, values[role] / density, volume)
+        volume, more = filtrate.joined(values["time"], volume, readings.swaps, name, readings.rows)
+        flags.extend(more)
+    return volume, readings.steps[role] / density, flags
 
 
-def _differential(run: Run, values: dict[str, Floats], n: int) -> Floats:
-    """Differential pressure in bar."""
+def _flux(time: Floats, volume: Floats, step: float) -> Floats:
+    """Flow at each reading in L/h; readings at the same time (a swapped cylinder) share one."""
+    distinct = np.concatenate([[True], np.diff(time) > 0.0])
+    if distinct.all():
+        return local_flow(time, volume, step)
+    flow = local_flow(time[distinct], volume[distinct], step)
+    return np.asarray(flow[np.cumsum(distinct) - 1])
+
+
+def _differential(run: Run, values: Mapping[str, Floats], n: int) -> tuple[Floats, list[str]]:
+    """Differential pressure in bar, and what was assumed."""
     if "differential_pressure" in values:
-        return values["differential_pressure"]
-    if "pressure" in values:
-        return values["pressure"] - values.get("outlet_pressure", np.zeros(n))
-    return np.full(n, float(run.pressure or 0.0))
+        pressure = values["differential_pressure"]
+    elif "pressure" in values:
+        pressure = values["pressure"] - values.get("outlet_pressure", np.zeros(n))
+    else:
+        return np.full(n, float(run.pressure or 0.0)), []
+    if run.operation == "constant-pressure" and n > 1 and pressure[0] < 0.2 * float(np.median(pressure)):
+        settled = pressure.copy()
+        settled[0] = pressure[1]
+        text = (
+            f"pressure of the first reading ({pressure[0]:.3g} bar) taken as that of the second: not yet "
+            f"applied"
+        )
+        return settled, [text]
+    return pressure, []
 
 
-def _excluded(volume: Floats, pressure: Floats, flux: Floats) -> tuple[str | None, ...]:
-    """Why a reading cannot be used at all: no resistance can be told from it."""
-    reasons: list[str | None] = []
-    for v, p, j in zip(volume, pressure, flux, strict=True):
-        if v < 0.0:
-            reasons.append("the hold-up is still being displaced")
-        elif not p > 0.0:
-            reasons.append("no differential pressure")
-        else:
-            reasons.append(None if j > 0.0 else "no flow")
-    return tuple(reasons)
-
-
-FLOW_STEP = 0.15
-
-
-def _without_flow_steps(excluded: tuple[str | None, ...], flux: Floats) -> tuple[str | None, ...]:
-    """Leave out readings at which the flow is just changing: pressure and flux may not belong together."""
-    change = np.zeros(len(flux))
-    change[1:-1] = np.abs(flux[2:] - flux[:-2])
-    stepping = change > FLOW_STEP * np.median(flux)
-    return tuple(
-        reason if reason is not None or not step else "the flow is changing at this reading"
-        for reason, step in zip(excluded, stepping, strict=True)
-    )
+def _feed(run: Run, values: Mapping[str, Floats]) -> Floats:
+    """Feed taken so far in L, NaN where it was not read; a reservoir that empties counts down."""
+    if "feed_volume" in values:
+        feed = values["feed_volume"]
+    elif "feed_mass" in values and run.density:
+        feed = values["feed_mass"] / run.density
+    else:
+        return np.full(len(values["time"]), np.nan)
+    read = feed[np.isfinite(feed)]
+    falling = len(read) > 1 and read[-1] < read[0]
+    return np.asarray(read[0] - feed if falling else feed)

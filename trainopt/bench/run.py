@@ -25,9 +25,10 @@ class ReducedRun:
     """One run, reading by reading: arrays of shape (n,).
 
     `rows` line numbers in the file; `time` h; `volume` L of filtrate, hold-up subtracted; `loading` L/m²;
-    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `turbidity` NTU, NaN where not read;
-    `volume_step` L and `pressure_step` bar the resolutions that the readings show (0: none); `excluded` why a
-    fit must leave a reading out (None: use it). `temperature` degC or None.
+    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `pressure_time` ∫ΔP dt in bar·h since the
+    first filtrate; `turbidity` NTU and `feed` L taken so far, NaN where not read; `volume_step` L and
+    `pressure_step` bar the resolutions that the readings show (0: none); `excluded` why a fit must leave a
+    reading out (None: use it). `temperature` degC, `feed_loading` L/m² of the filter upstream, or None.
     """
 
     name: str
@@ -42,9 +43,12 @@ class ReducedRun:
     flux: Floats
     pressure: Floats
     resistance: Floats
+    pressure_time: Floats
     turbidity: Floats
+    feed: Floats
     volume_step: float
     pressure_step: float
+    feed_loading: float | None
     excluded: tuple[str | None, ...]
     flags: tuple[Flag, ...]
 
@@ -52,3 +56,16 @@ class ReducedRun:
     def used(self) -> NDArray[np.bool_]:
         """Which readings a fit may use, shape (n,)."""
         return np.array([reason is None for reason in self.excluded], dtype=bool)
+
+    @property
+    def pool_turbidity(self) -> Floats:
+        """Turbidity of the pooled filtrate so far (volume-weighted, by trapezoids), NaN where it was not
+        read.
+        """
+        out = np.full(len(self.time), np.nan)
+        read = np.flatnonzero(np.isfinite(self.turbidity) & (self.volume > 0.0))
+        if len(read):
+            v, t = self.volume[read], self.turbidity[read]
+            steps = np.concatenate([[t[0] * v[0]], 0.5 * (t[1:] + t[:-1]) * np.diff(v)])
+            out[read] = np.cumsum(steps) / v
+        return out

@@ -1,0 +1,77 @@
+"""Cells of a bench table to numbers in canonical units, each cell that is none named with its line."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trainopt.bench.columns import Column
+from trainopt.bench.flux import resolution
+from trainopt.bench.run import Floats
+from trainopt.bench.table import CLOCK, Table, is_number
+from trainopt.errors import Problem
+
+_NOT_READ = {"", "-", "--", "n/a", "na", "nd"}
+_DAY = 24.0
+
+
+def column_values(table: Table, column: Column, problems: list[Problem]) -> Floats:
+    """A column in canonical units, NaN where a cell is empty; each cell that is no number is a problem."""
+    cells = table.column(column.index)
+    if column.unit is None:
+        return _clock_times(table, column, cells, problems)
+    out = np.full(len(cells), np.nan)
+    turbidity = column.role == "turbidity"
+    for index, cell in enumerate(cells):
+        text = cell.lstrip("<>≤≥ ") if turbidity else cell
+        if is_number(text):
+            out[index] = float(text) * column.unit.factor
+        elif cell.casefold() not in (_NOT_READ if turbidity else {""}):
+            said = f"column '{column.header}': '{cell}' is not a number; expected a plain number"
+            problems.append(table.problem(table.lines[index], said))
+    out[np.isinf(out)] = np.nan
+    return out
+
+
+def _clock_times(table: Table, column: Column, cells: list[str], problems: list[Problem]) -> Floats:
+    """`h:mm:ss` (or `h:mm`) as hours since the first reading; a clock that passes midnight goes on
+    counting.
+    """
+    out = np.full(len(cells), np.nan)
+    for index, cell in enumerate(cells):
+        if CLOCK.fullmatch(cell):
+            parts = [float(part) for part in cell.split(":")]
+            out[index] = sum(part / 60.0**power for power, part in enumerate(parts))
+        elif cell:
+            text = f"column '{column.header}': '{cell}' is not a time; expected h:mm:ss throughout"
+            problems.append(table.problem(table.lines[index], text))
+    read = np.flatnonzero(np.isfinite(out))
+    passed = np.diff(out[read]) < -0.5 * _DAY
+    out[read[1:]] += _DAY * np.cumsum(passed)
+    return np.asarray(out - out[read[0]]) if len(read) else out
+
+
+def column_step(values: Floats, column: Column) -> float:
+    """Resolution of a column in canonical units, found in the units of the file."""
+    factor = column.unit.factor if column.unit is not None else 1.0
+    return resolution(values / factor) * factor
+
+
+def complete_rows(
+    table: Table, columns: Mapping[str, Column], values: Mapping[str, Floats], problems: list[Problem]
+) -> NDArray[np.bool_]:
+    """Rows that hold every reading but turbidity and feed; a row without its time is a problem."""
+    keep = np.ones(len(table.lines), dtype=bool)
+    for role, column in values.items():
+        if role not in {"turbidity", "feed_volume", "feed_mass"}:
+            keep &= np.isfinite(column)
+    bad = {problem.line for problem in problems}
+    for index in np.flatnonzero(np.isnan(values["time"])):
+        line = table.lines[index]
+        if line not in bad:
+            problems.append(
+                table.problem(line, f"column '{columns['time'].header}' is empty; expected a time")
+            )
+    return keep
