@@ -55,7 +55,7 @@ def _clock_times(table: Table, column: Column, cells: list[str], problems: list[
 
 def column_step(values: Floats, column: Column) -> float:
     """Resolution of a column in canonical units, found in the units of the file."""
-    factor = column.unit.factor if column.unit is not None else 1.0
+    factor = column.unit.factor if column.unit is not None else 1.0 / 3600.0
     return resolution(values / factor) * factor
 
 

@@ -145,6 +145,7 @@ def _reduced(run: Run, readings: _Readings) -> ReducedRun:
         turbidity=readings.values.get("turbidity", np.full(len(time), np.nan)),
         feed_loading=getattr(run, "feed_loading", None),
         feed=_feed(run, readings.values),
+        time_step=readings.steps["time"],
         volume_step=volume_step,
         pressure_step=max((step for role, step in readings.steps.items() if "pressure" in role), default=0.0),
         excluded=(None,) * len(time),

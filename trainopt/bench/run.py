@@ -25,10 +25,11 @@ class ReducedRun:
     """One run, reading by reading: arrays of shape (n,).
 
     `rows` line numbers in the file; `time` h; `volume` L of filtrate, hold-up subtracted; `loading` L/m²;
-    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `pressure_time` ∫ΔP dt in bar·h since the
-    first filtrate; `turbidity` NTU and `feed` L taken so far, NaN where not read; `volume_step` L and
-    `pressure_step` bar the resolutions that the readings show (0: none); `excluded` why a fit must leave a
-    reading out (None: use it). `temperature` degC, `feed_loading` L/m² of the filter upstream, or None.
+    `flux` LMH; `pressure` differential, bar; `resistance` bar/LMH; `pressure_time` ∫ΔP dt in bar·h since
+    the first filtrate; `turbidity` NTU and `feed` L taken so far, NaN where not read; `time_step` h,
+    `volume_step` L and `pressure_step` bar the resolutions that the readings show (0: none); `excluded` why
+    a fit must leave a reading out (None: use it). `temperature` degC, `feed_loading` L/m² of the filter
+    upstream, or None.
     """
 
     name: str
@@ -46,6 +47,7 @@ class ReducedRun:
     pressure_time: Floats
     turbidity: Floats
     feed: Floats
+    time_step: float
     volume_step: float
     pressure_step: float
     feed_loading: float | None

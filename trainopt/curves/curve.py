@@ -6,12 +6,15 @@ Loading l in L/m², resistance R in bar/LMH, demand in bar·h (model.md, section
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
-from typing import overload
+from dataclasses import dataclass, field
+from typing import TYPE_CHECKING, overload
 
 from trainopt.bench.run import Flag
 from trainopt.curves.blocking import Floats
 from trainopt.curves.laws import LAWS
+
+if TYPE_CHECKING:
+    from trainopt.curves.evidence import Evidence
 
 
 @dataclass(frozen=True)
@@ -135,6 +138,7 @@ class Curve:
     points: tuple[Point, ...]
     flags: tuple[Flag, ...]
     source: str
+    evidence: Evidence | None = field(default=None, compare=False, repr=False)
 
     def lot_curve(self, lot: str | None = None, viscosity_ratio: float = 1.0) -> LotCurve:
         """The curve as `lot` sees it, resistances times `viscosity_ratio`; None is the pooled curve (1, 1).

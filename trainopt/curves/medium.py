@@ -10,15 +10,14 @@ import numpy as np
 from trainopt.bench.reduce import reduce_run
 from trainopt.bench.run import Floats, ReducedRun
 from trainopt.curves.curve import Alternative, Curve, Estimate, LotEffect, Point
-from trainopt.curves.fit import Fit, Readings, fit_law, fit_laws
+from trainopt.curves.evidence import Evidence, weigh
+from trainopt.curves.fit import Fit
 from trainopt.curves.laws import LAWS
+from trainopt.curves.readings import fit_readings
 from trainopt.errors import InputError, Problem
 
 if TYPE_CHECKING:
     from trainopt.files import Medium
-
-INDISTINGUISHABLE = 2.0
-"""AICc units within which the law with fewer parameters is taken (Burnham & Anderson 2002, memory)."""
 
 
 def fit_curve(medium: Medium) -> Curve:
@@ -28,13 +27,26 @@ def fit_curve(medium: Medium) -> Curve:
     runs, problems = _reduced_runs(medium)
     if problems:
         raise InputError(problems)
-    readings = _readings(runs)
-    fits = fit_laws(readings, _names(medium.curve.law))
-    if not fits:
+    evidence = weigh(fit_readings(runs), _names(medium.curve.law))
+    if evidence is None:
         total = sum(int(run.used.sum()) for run in runs)
         text = f"{total} usable readings are too few for law '{medium.curve.law}'; expected a longer run"
         raise InputError([medium.source.problem(("curve", "runs"), text)])
-    return _fitted(medium, runs, fit_law(readings, LAWS[_chosen(fits).law]), fits)
+    if not evidence.decided:
+        raise InputError([medium.source.problem(("curve", "law"), _undecided(evidence))])
+    return _fitted(medium, runs, evidence)
+
+
+def _undecided(evidence: Evidence) -> str:
+    """Why `auto` refuses to pick, and what would let it."""
+    names = ", ".join(sorted({evidence.chosen.law, *(rival.law for rival in evidence.rivals)}))
+    return (
+        f"auto cannot tell between {names}: they fit the runs equally well (within 2 AICc units) but "
+        f"differ by up to "
+        f"{evidence.spread:.0%} in resistance inside the tested range; expected a longer run, more "
+        f"readings or a second "
+        "lot, or one of these laws by name"
+    )
 
 
 def _reduced_runs(medium: Medium) -> tuple[list[ReducedRun], list[Problem]]:
@@ -60,32 +72,8 @@ def _names(law: str) -> tuple[str, ...]:
     return tuple(LAWS) if law == "auto" else (law,)
 
 
-def _readings(runs: Sequence[ReducedRun]) -> Readings:
-    """The kept readings of all runs, sorted so that the order of entries cannot matter."""
-    lots = tuple(sorted({run.lot for run in runs}))
-    ordered = sorted(enumerate(runs), key=lambda pair: (pair[1].lot, pair[1].name, pair[0]))
-    sizes = [int(run.used.sum()) for _, run in ordered]
-    resistance = np.concatenate([run.resistance[run.used] for _, run in ordered])
-    loading = np.concatenate([run.loading[run.used] for _, run in ordered])
-    return Readings(
-        loading=loading,
-        log=np.log(resistance),
-        integral=np.zeros(len(loading), dtype=bool),
-        weight=np.ones(len(loading)),
-        lot=np.repeat([lots.index(run.lot) for _, run in ordered], sizes),
-        run=np.repeat(np.arange(len(ordered)), sizes),
-        resistance=resistance,
-        lots=lots,
-    )
-
-
-def _chosen(fits: tuple[Fit, ...]) -> Fit:
-    """The law with the fewest parameters among those the data cannot tell from the best."""
-    close = [fit for fit in fits if fit.aicc <= fits[0].aicc + INDISTINGUISHABLE]
-    return min(close, key=lambda fit: (fit.count, fit.aicc, fit.law))
-
-
-def _fitted(medium: Medium, runs: Sequence[ReducedRun], fit: Fit, fits: tuple[Fit, ...]) -> Curve:
+def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence) -> Curve:
+    fit = evidence.chosen
     law = LAWS[fit.law]
     k = len(fit.parameters)
     errors = np.sqrt(np.diag(fit.covariance))
@@ -106,10 +94,11 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], fit: Fit, fits: tuple[Fi
         tested_temperature=None,
         turbidity_loading=min((loading for loading in crossed if loading is not None), default=None),
         lots=_lot_effects(lots, fit, errors[k:]),
-        alternatives=_alternatives(fits),
+        alternatives=_alternatives(evidence.fits),
         points=tuple(_points(runs)),
         flags=tuple(flag for run in runs for flag in run.flags),
         source="runs",
+        evidence=evidence,
     )
 
 

@@ -1,0 +1,107 @@
+"""Which law the readings speak for, and how strongly.
+
+The loss is Huber's (Ann. Math. Stat. 35 (1964) 73, memory): errors count squared up to four robust standard
+deviations and linearly beyond, so that a misread gauge bends no curve and no reading has to be dropped.
+Laws are compared by AICc on the same weights; within two units the one with fewer parameters is taken
+(Burnham & Anderson 2002, memory).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from trainopt.bench.run import Floats
+from trainopt.curves.fit import SMALLEST_ERROR, Fit, Readings, fit_law, fit_laws
+from trainopt.curves.laws import LAWS
+
+INDISTINGUISHABLE = 2.0
+"""AICc units within which two laws cannot be told apart."""
+
+DIFFERENT = 0.1
+"""Laws that cannot be told apart matter where their resistances inside the tested range differ by this
+part.
+"""
+
+BOUND = 4.0
+"""Robust standard deviations beyond which an error counts linearly."""
+
+ROUNDS = 20
+
+
+@dataclass(frozen=True, eq=False)
+class Evidence:
+    """Readings with their final weights, every law's fit (best first), the chosen one, and laws that rival
+    it.
+
+    `spread` is the largest relative difference between the chosen law's resistance and a rival's on the
+    tested range.
+    """
+
+    readings: Readings
+    fits: tuple[Fit, ...]
+    chosen: Fit
+    rivals: tuple[Fit, ...]
+    spread: float
+
+    @property
+    def decided(self) -> bool:
+        """False where laws that fit equally well differ by more than 10 % inside the tested range."""
+        return self.spread <= DIFFERENT
+
+
+def weigh(readings: Readings, names: tuple[str, ...]) -> Evidence | None:
+    """Fit the laws of `names` and choose; None where the readings are too few for any."""
+    fits = fit_laws(readings, names)
+    if not fits:
+        return None
+    weight = _weights(readings, fits[0], readings)
+    if not np.array_equal(weight, readings.weight):
+        fits = fit_laws(replace(readings, weight=weight), names)
+    close = [fit for fit in fits if fit.aicc <= fits[0].aicc + INDISTINGUISHABLE]
+    best = min(close, key=lambda fit: (fit.count, fit.aicc, fit.law))
+    final, chosen = settle(readings, best.law)
+    rivals = tuple(fit for fit in close if fit.count == best.count and fit.law != best.law)
+    spread = max((_difference(readings, chosen, rival) for rival in rivals), default=0.0)
+    return Evidence(final, fits, chosen, rivals, spread)
+
+
+def settle(readings: Readings, law: str) -> tuple[Readings, Fit]:
+    """One law fitted with Huber's loss, by reweighting until no weight moves; the weights are returned
+    with it.
+    """
+    current, fit = readings, fit_law(readings, LAWS[law])
+    for _ in range(ROUNDS):
+        weight = _weights(readings, fit, current)
+        if np.max(np.abs(weight - current.weight)) < 1e-6:
+            break
+        current = replace(readings, weight=weight)
+        fit = fit_law(current, LAWS[law])
+    return current, fit
+
+
+def _weights(base: Readings, fit: Fit, fitted: Readings) -> Floats:
+    """The base weights times Huber's, each kind of run scaled by its own spread about `fit` (made on
+    `fitted`).
+    """
+    errors = np.sqrt(base.weight) * fit.residuals / np.sqrt(fitted.weight)
+    weight, reference = base.weight.copy(), 0.0
+    for kind in (base.integral, ~base.integral):
+        if not kind.any():
+            continue
+        scale = 1.4826 * float(np.median(np.abs(errors[kind])))
+        if scale <= SMALLEST_ERROR:
+            continue
+        with np.errstate(divide="ignore"):
+            weight[kind] *= np.minimum(1.0, BOUND * scale / np.abs(errors[kind]))
+        reference = reference or scale
+        weight[kind] *= (reference / scale) ** 2
+    return weight
+
+
+def _difference(readings: Readings, chosen: Fit, rival: Fit) -> float:
+    """Largest relative difference of two pooled resistances up to the highest loading seen."""
+    loading = np.linspace(0.0, float(readings.loading.max()), 101)
+    one, other = (LAWS[fit.law].resistance(loading, *fit.parameters) for fit in (chosen, rival))
+    return float(np.max(np.abs(one - other) / np.minimum(one, other)))
