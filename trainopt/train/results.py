@@ -36,6 +36,7 @@ class StageDesign:
     block's worst lot at the derated area; `pressure_share` of what the block's stages use; `safety_factor` the largest
     derating of this stage alone at the design's times; `limited_by` the binding limit
     ("pressure", "differential-pressure", "inlet-pressure", "flux", "loading-tested", "loading-limit", "turbidity", "module-size").
+    `modules_cost` and `holders_cost` per batch, in the catalog's currency.
     """
 
     stage: str
@@ -52,6 +53,8 @@ class StageDesign:
     pressure_share: float
     safety_factor: float | None
     limited_by: str
+    modules_cost: float | None = None
+    holders_cost: float | None = None
 
 
 @dataclass(frozen=True)
