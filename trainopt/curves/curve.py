@@ -122,7 +122,9 @@ class Curve:
     `tested_loading` L/m² and `tested_flux` LMH bound what the curve may be used for, `tested_temperature`
     degC is the temperature the resistances hold at, `turbidity_loading` L/m² is where the filtrate first
     reached the turbidity limit (None: no limit, or never reached). `covariance` is that of the parameters,
-    in their order. `source` "runs" or "parameters".
+    in their order. `feed_loading` L/m² is how far the filter upstream had been loaded when the feed of the
+    runs was collected (None: not said). `source` "runs" or "parameters". `evidence` is what the fit was
+    made on.
     """
 
     medium: str
@@ -133,6 +135,7 @@ class Curve:
     tested_flux: float
     tested_temperature: float | None
     turbidity_loading: float | None
+    feed_loading: float | None
     lots: Mapping[str, LotEffect]
     alternatives: tuple[Alternative, ...]
     points: tuple[Point, ...]

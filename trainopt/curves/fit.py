@@ -9,7 +9,7 @@ that of the geometric-mean lot.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -50,18 +50,10 @@ class Readings:
     def __len__(self) -> int:
         return len(self.loading)
 
-    def part(self, keep: NDArray[np.bool_]) -> Readings:
-        """The readings where `keep` is true, lots unchanged."""
-        return Readings(
-            self.loading[keep],
-            self.log[keep],
-            self.integral[keep],
-            self.weight[keep],
-            self.lot[keep],
-            self.run[keep],
-            self.resistance[keep],
-            self.lots,
-        )
+    def at(self, index: NDArray[np.intp]) -> Readings:
+        """The readings at these places, which may repeat; lots unchanged."""
+        columns = ("loading", "log", "integral", "weight", "lot", "run", "resistance")
+        return replace(self, **{name: getattr(self, name)[index] for name in columns})
 
 
 @dataclass(frozen=True, eq=False)
@@ -82,6 +74,7 @@ class Fit:
     error: float
     count: int
     converged: bool
+    coordinates: Floats
 
     @property
     def cost(self) -> float:
@@ -108,19 +101,20 @@ def contrasts(lots: int) -> Floats:
     return out
 
 
-def fit_law(readings: Readings, law: Law, tolerance: float = FINE) -> Fit:
+def fit_law(readings: Readings, law: Law, tolerance: float = FINE, near: Fit | None = None) -> Fit:
     """The law's parameters and the lots' ρ and κ that make the sum of squared relative errors least.
 
-    A polynomial comes out positive and non-decreasing over the loadings seen, κ·l included.
+    A polynomial comes out positive and non-decreasing over the loadings seen, κ·l included. `near` is a fit
+    of the same law to much the same readings, to start from.
     """
     reach = float(np.max(readings.loading))
-    best = _fit_within(readings, law, reach, tolerance)
+    best = _fit_within(readings, law, reach, tolerance, near)
     for _ in range(4):
         stretched = _reach(readings, best)
         if not law.polynomial or stretched <= reach * (1.0 + 1e-6):
             break
         reach = stretched
-        best = _fit_within(readings, law, reach, tolerance)
+        best = _fit_within(readings, law, reach, tolerance, near)
     return best
 
 
@@ -128,12 +122,12 @@ def _reach(readings: Readings, fit: Fit) -> float:
     return float(np.max(readings.loading * np.exp(fit.log_kappa)[readings.lot]))
 
 
-def _fit_within(readings: Readings, law: Law, reach: float, tolerance: float) -> Fit:
+def _fit_within(readings: Readings, law: Law, reach: float, tolerance: float, near: Fit | None) -> Fit:
     """Try the law's forms in turn; later ones only where an earlier answer is not allowed (see `forms`)."""
     best: tuple[float, Form, Solution] | None = None
     for form in forms(law, reach, readings.loading, readings.resistance):
         model = _Model(readings, law, form)
-        solution = model.solve(tolerance)
+        solution = model.solve(tolerance, None if near is None or law.polynomial else near.coordinates)
         if form.allows(solution.x[: form.size]):
             if best is None or solution.cost < best[0]:
                 best = (solution.cost, form, solution)
@@ -153,7 +147,7 @@ class _Model:
         self.root = np.sqrt(readings.weight)
         self.mixed = bool(readings.integral.any())
 
-    def solve(self, tolerance: float) -> Solution:
+    def solve(self, tolerance: float, near: Floats | None) -> Solution:
         """Search from the first start, and from the others only where the answer sits on a bound.
 
         On a bound a law of two mechanisms has lost one, which can be a local minimum.
@@ -163,6 +157,8 @@ class _Model:
         upper = np.concatenate([self.form.upper, np.full(free, 5.0)])
         best: Solution | None = None
         with np.errstate(all="ignore"):
+            if near is not None:
+                return least_squares(self.residuals, near, lower, upper, tolerance=tolerance)
             for start in self.form.starts:
                 theta = np.concatenate([start, np.zeros(free)])
                 found = least_squares(self.residuals, theta, lower, upper, tolerance=tolerance)
@@ -232,6 +228,7 @@ class _Model:
             error,
             count,
             solution.converged,
+            theta,
         )
 
 

@@ -10,9 +10,11 @@ import numpy as np
 from trainopt.bench.reduce import reduce_run
 from trainopt.bench.run import Floats, ReducedRun
 from trainopt.curves.curve import Alternative, Curve, Estimate, LotEffect, Point
+from trainopt.curves.endpoint import turbidity_loading
 from trainopt.curves.evidence import Evidence, weigh
 from trainopt.curves.fit import Fit
 from trainopt.curves.laws import LAWS
+from trainopt.curves.notes import curve_flags
 from trainopt.curves.readings import fit_readings
 from trainopt.errors import InputError, Problem
 
@@ -78,7 +80,7 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence) -> C
     k = len(fit.parameters)
     errors = np.sqrt(np.diag(fit.covariance))
     lots = tuple(sorted({run.lot for run in runs}))
-    crossed = [_crossing(run, medium.limits.turbidity) for run in runs]
+    limits = medium.limits
     return Curve(
         medium=medium.medium,
         law=fit.law,
@@ -92,11 +94,15 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence) -> C
         tested_loading=_tested_loading(runs, lots, np.exp(fit.log_kappa)),
         tested_flux=max(float(np.median(run.flux[run.used])) for run in runs),
         tested_temperature=None,
-        turbidity_loading=min((loading for loading in crossed if loading is not None), default=None),
+        turbidity_loading=turbidity_loading(runs, limits.turbidity, getattr(limits, "pool_turbidity", None)),
+        feed_loading=_feed_loading(runs),
         lots=_lot_effects(lots, fit, errors[k:]),
         alternatives=_alternatives(evidence.fits),
         points=tuple(_points(runs)),
-        flags=tuple(flag for run in runs for flag in run.flags),
+        flags=(
+            *(flag for run in runs for flag in run.flags),
+            *curve_flags(medium.medium, runs, evidence, limits.differential_pressure, limits.turbidity),
+        ),
         source="runs",
         evidence=evidence,
     )
@@ -134,21 +140,13 @@ def _tested_loading(runs: Sequence[ReducedRun], lots: tuple[str, ...], kappa: Fl
     )
 
 
-def _crossing(run: ReducedRun, limit: float | None) -> float | None:
-    """Loading at which the run's turbidity first reaches the limit, interpolated between readings."""
-    if limit is None:
-        return None
-    read = np.flatnonzero(np.isfinite(run.turbidity) & (run.loading >= 0.0))
-    over = read[run.turbidity[read] >= limit]
-    if not len(over):
-        return None
-    first = int(over[0])
-    before = read[read < first]
-    if not len(before):
-        return float(run.loading[first])
-    last = int(before[-1])
-    share = (limit - run.turbidity[last]) / (run.turbidity[first] - run.turbidity[last])
-    return float(run.loading[last] + share * (run.loading[first] - run.loading[last]))
+def _feed_loading(runs: Sequence[ReducedRun]) -> float | None:
+    """How far the filter upstream was loaded for every lot's feed: least over lots, farthest within each."""
+    said: dict[str, float] = {}
+    for run in runs:
+        if run.feed_loading is not None:
+            said[run.lot] = max(run.feed_loading, said.get(run.lot, 0.0))
+    return min(said.values(), default=None)
 
 
 def _points(runs: Iterable[ReducedRun]) -> Iterable[Point]:
@@ -195,6 +193,7 @@ def _given(medium: Medium) -> Curve:
         tested_flux=tested.flux,
         tested_temperature=tested.temperature,
         turbidity_loading=None,
+        feed_loading=None,
         lots=lots,
         alternatives=(),
         points=(),

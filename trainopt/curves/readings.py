@@ -89,4 +89,4 @@ def _smooth_slope(loading: Floats, value: Floats) -> Floats:
     powers = z[:, None] ** np.arange(1, 4)
     c = np.linalg.lstsq(powers, value, rcond=None)[0]
     slope = (c[0] + 2.0 * c[1] * z + 3.0 * c[2] * z**2) / loading.max()
-    return np.maximum(slope, 0.2 * value / loading)
+    return np.asarray(np.maximum(slope, 0.2 * value / loading))
