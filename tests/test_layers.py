@@ -11,7 +11,7 @@ import pytest
 
 PACKAGE = Path(__file__).parent.parent / "trainopt"
 ROOMS = ["files", "bench", "curves", "train", "optimize", "study", "report", "app"]
-SHARED = {"errors", "units"}  # open to every room
+SHARED = {"errors", "units", "version"}  # open to every room
 SOURCES = sorted(PACKAGE.rglob("*.py"))
 
 

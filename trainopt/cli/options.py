@@ -1,0 +1,55 @@
+"""Options that several commands share."""
+
+from __future__ import annotations
+
+from enum import StrEnum
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from collections.abc import Iterable
+
+    from trainopt.errors import Problem
+
+
+class Units(StrEnum):
+    """Units of pressure in tables and pictures."""
+
+    bar = "bar"
+    psi = "psi"
+    kPa = "kPa"  # noqa: N815  (the unit's own spelling)
+
+
+class ObjectiveKind(StrEnum):
+    """What a design makes least."""
+
+    area = "area"
+    cost = "cost"
+
+
+def warn(problems: Iterable[Problem]) -> None:
+    """Print what the user should know about the files, one line each, on stderr."""
+    from trainopt.cli.status import say
+
+    for problem in problems:
+        say(f"warning: {problem}")
+
+
+def output_file(path: Path, suffixes: tuple[str, ...], force: bool) -> Path:
+    """The path of a file to write, refused at once where its kind is unknown or it would overwrite."""
+    from trainopt.errors import InputError, Problem
+
+    kinds = ", ".join(suffixes)
+    if path.suffix.lower() not in suffixes:
+        raise InputError(
+            [Problem(str(path), 0, f"cannot be written as '{path.suffix}'; expected one of {kinds}")]
+        )
+    if not path.parent.is_dir():
+        raise InputError(
+            [Problem(str(path.parent), 0, f"no such folder; expected one to write {path.name} into")]
+        )
+    if path.is_dir():
+        raise InputError([Problem(str(path), 0, "is a folder; expected a file to write")])
+    if path.exists() and not force:
+        raise InputError([Problem(str(path), 0, "exists already; use --force to replace it")])
+    return path
