@@ -26,6 +26,8 @@ Where = Callable[[tuple[str, ...], str], Problem]
 
 FEWEST_READINGS = 5
 MOST_PROBLEMS = 100
+MOST_POINTS = 2000
+"""A logger's run is averaged down to this many readings: a curve needs no more, and averages are quieter."""
 
 
 def reduce_run(run: Run, medium: str, where: Where) -> ReducedRun:
@@ -86,7 +88,7 @@ def _readings(table: Table, found: Columns, problems: list[Problem]) -> _Reading
     columns = found.found
     values = {role: column_values(table, column, problems) for role, column in columns.items()}
     keep = complete_rows(table, columns, values, problems)
-    rows = np.array(table.lines)[keep]
+    rows = table.lines[keep]
     values = {role: column[keep] for role, column in values.items()}
     swaps = np.zeros(len(rows), dtype=bool)
     if not problems:
@@ -102,10 +104,10 @@ def _readings(table: Table, found: Columns, problems: list[Problem]) -> _Reading
     remarks: list[tuple[str, tuple[int, int] | None, str]] = [
         ("assumed", None, text) for text in (*table.assumed, *found.assumed)
     ]
-    left_out = [line for line, kept in zip(table.lines, keep, strict=True) if not kept]
-    if left_out:
+    left_out = table.lines[~keep]
+    if len(left_out):
         text = f"{len(left_out)} row(s) without a volume or pressure left out"
-        remarks.append(("no-reading", (min(left_out), max(left_out)), text))
+        remarks.append(("no-reading", (int(left_out[0]), int(left_out[-1])), text))
     steps = {role: column_step(values[role], column) for role, column in columns.items()}
     return _Readings(values, steps, swaps, rows, tuple(remarks))
 
@@ -124,10 +126,23 @@ def _reduced(run: Run, readings: _Readings) -> ReducedRun:
     flags.extend(more)
     pressure, assumed = _differential(run, readings.values, len(time))
     flags.extend(Flag("assumed", name, None, text) for text in assumed)
-    flux = _flux(time, volume, volume_step) / run.area
     volume = volume - run.hold_up
+    columns = {
+        "time": time,
+        "volume": volume,
+        "pressure": pressure,
+        "pressure_time": filtrate.pressure_time(time, volume, pressure),
+        "turbidity": readings.values.get("turbidity", np.full(len(time), np.nan)),
+        "feed": _feed(run, readings.values),
+    }
+    block = -(-len(time) // MOST_POINTS)
+    if block > 1:
+        columns, rows, volume_step = _averaged(columns, block), rows[::block], volume_step / np.sqrt(block)
+        text = f"{len(time)} readings averaged in blocks of {block} before anything else is done"
+        flags.append(Flag("averaged", name, None, text))
+    flux = _flux(columns["time"], columns["volume"], volume_step) / run.area
     with np.errstate(divide="ignore", invalid="ignore"):
-        resistance = pressure / flux
+        resistance = columns["pressure"] / flux
     reduced = ReducedRun(
         name=name,
         lot=run.lot,
@@ -135,23 +150,30 @@ def _reduced(run: Run, readings: _Readings) -> ReducedRun:
         area=run.area,
         temperature=run.temperature,
         rows=rows,
-        time=time,
-        volume=volume,
-        loading=volume / run.area,
+        loading=columns["volume"] / run.area,
         flux=flux,
-        pressure=pressure,
         resistance=resistance,
-        pressure_time=filtrate.pressure_time(time, volume, pressure),
-        turbidity=readings.values.get("turbidity", np.full(len(time), np.nan)),
         feed_loading=getattr(run, "feed_loading", None),
-        feed=_feed(run, readings.values),
         time_step=readings.steps["time"],
         volume_step=volume_step,
         pressure_step=max((step for role, step in readings.steps.items() if "pressure" in role), default=0.0),
-        excluded=(None,) * len(time),
+        excluded=(None,) * len(rows),
         flags=tuple(flags),
+        **columns,
     )
     return checked(reduced, keep=bool(getattr(run, "keep", False)))
+
+
+def _averaged(columns: Mapping[str, Floats], block: int) -> dict[str, Floats]:
+    """Means over blocks of consecutive readings (the last may be shorter), of those that were read."""
+    out = {}
+    for name, values in columns.items():
+        starts = np.arange(0, len(values), block)
+        read = np.isfinite(values)
+        count = np.add.reduceat(read.astype(float), starts)
+        total = np.add.reduceat(np.where(read, values, 0.0), starts)
+        out[name] = np.where(count > 0.0, total / np.maximum(count, 1.0), np.nan)
+    return out
 
 
 def _filtrate(run: Run, readings: _Readings) -> tuple[Floats, float, list[Flag]]:

@@ -15,12 +15,18 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+from numpy.typing import NDArray
+
 from trainopt.bench.units import unit_of
 from trainopt.errors import InputError, Problem
 
 Row = tuple[int, list[str]]
 
 COMMENTS = ("#", "%", "//")
+LARGE, HEAD = 4 << 20, 1 << 16
+"""Bytes above which a CSV is read by pandas, and how much of it is looked at first."""
+
 DELIMITERS = (",", ";", "\t", "|")
 NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?")
 CLOCK = re.compile(r"\d{1,4}:[0-5]?\d(:[0-5]?\d(\.\d+)?)?")
@@ -32,16 +38,18 @@ _THOUSANDS = re.compile(r"[+-]?\d{1,3}(,\d{3})+(\.\d*)?")
 class Table:
     """A header, perhaps a units row, and data rows of equal width, cells stripped of blanks.
 
-    `file` is the path as the user sees it, `assumed` what the reader took for granted, in words.
+    `file` is the path as the user sees it, `assumed` what the reader took for granted, in words. A large
+    file has its cells as `numbers` (rows, columns), NaN where empty, in place of text.
     """
 
     file: str
     header_line: int
     header: tuple[str, ...]
     units: tuple[str, ...]
-    lines: tuple[int, ...]
+    lines: NDArray[np.int64]
     cells: tuple[tuple[str, ...], ...]
     assumed: tuple[str, ...]
+    numbers: NDArray[np.float64] | None = None
 
     def column(self, index: int) -> list[str]:
         """The cells of one column."""
@@ -49,7 +57,7 @@ class Table:
 
     def problem(self, line: int, text: str) -> Problem:
         """A problem at a line of this file."""
-        return Problem(self.file, line, text)
+        return Problem(self.file, int(line), text)
 
 
 def shown_path(path: Path) -> str:
@@ -70,13 +78,54 @@ def read_table(path: Path, sheet: str | None = None) -> Table:
         rows = list(_spreadsheet_rows(path, file, sheet))
     elif sheet is not None:
         raise InputError([Problem(file, 0, f"has no sheets, but sheet '{sheet}' is asked for")])
+    elif path.stat().st_size > LARGE:
+        return _large_table(path, file) or _table(
+            file, _text_rows(path.read_bytes(), file, assumed)[0], assumed
+        )
     else:
-        rows = _text_rows(path, file, assumed)
+        rows = _text_rows(path.read_bytes(), file, assumed)[0]
     return _table(file, rows, assumed)
 
 
-def _text_rows(path: Path, file: str, assumed: list[str]) -> list[Row]:
-    text = _decoded(path.read_bytes(), file, assumed)
+def _large_table(path: Path, file: str) -> Table | None:
+    """A large CSV of plain numbers by pandas' reader; None where it holds anything else, for the careful
+    reader.
+
+    Header, delimiter and decimal mark are found in the first lines, as for a small file.
+    """
+    import pandas as pd
+
+    with path.open("rb") as stream:
+        head = stream.read(HEAD)
+        count = head.count(b"\n") + sum(
+            chunk.count(b"\n") for chunk in iter(lambda: stream.read(1 << 20), b"")
+        )
+    assumed: list[str] = []
+    try:
+        rows, delimiter = _text_rows(head[: head.rfind(b"\n") + 1], file, assumed)
+        table = _table(file, rows, assumed)
+    except InputError:
+        return None
+    first, width = int(table.lines[0]), len(table.header)
+    try:
+        frame = pd.read_csv(
+            path, sep=delimiter, skiprows=first - 1, header=None,
+            names=list(range(width)), usecols=list(range(width)),
+            decimal="," if "decimal comma" in assumed else ".", dtype=np.float64, na_values=[""],
+            keep_default_na=False, skip_blank_lines=True, encoding="utf-8-sig", index_col=False,
+        )  # fmt: skip
+    except (ValueError, pd.errors.ParserError, UnicodeError):
+        return None
+    numbers = frame.to_numpy()
+    lines = np.arange(first, first + len(numbers))
+    if np.isinf(numbers).any() or not 0 <= count - (first - 1) - len(numbers) + 1 <= 1:
+        return None
+    return Table(file, table.header_line, table.header, table.units, lines, (), table.assumed, numbers)
+
+
+def _text_rows(raw: bytes, file: str, assumed: list[str]) -> tuple[list[Row], str]:
+    """Rows of a CSV with their line numbers, numbers with decimal points, and the delimiter."""
+    text = _decoded(raw, file, assumed)
     lines = text.splitlines()
     delimiter = _delimiter(lines)
     rows: list[Row] = []
@@ -85,7 +134,7 @@ def _text_rows(path: Path, file: str, assumed: list[str]) -> list[Row]:
         rows.extend((reader.line_num, [_tidy(cell) for cell in cells]) for cells in reader)
     except csv.Error as error:
         raise InputError([Problem(file, reader.line_num, f"cannot be read as CSV: {error}")]) from None
-    return _decimal_points(rows, file, assumed)
+    return _decimal_points(rows, file, assumed), delimiter
 
 
 def _decoded(raw: bytes, file: str, assumed: list[str]) -> str:
@@ -247,7 +296,7 @@ def _table(file: str, rows: list[Row], assumed: list[str]) -> Table:
         raise InputError([Problem(file, line, text) for line in wide])
     units = tuple(_cell(units_row[1], i) for i in range(width)) if units_row else ("",) * width
     cells = tuple(tuple(_cell(row, i) for i in range(width)) for _, row in data)
-    lines = tuple(line for line, _ in data)
+    lines = np.array([line for line, _ in data], dtype=np.int64)
     return Table(file, header_line, tuple(header[:width]), units, lines, cells, tuple(assumed))
 
 

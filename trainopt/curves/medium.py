@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -16,6 +17,7 @@ from trainopt.curves.fit import Fit
 from trainopt.curves.laws import LAWS
 from trainopt.curves.notes import curve_flags
 from trainopt.curves.readings import fit_readings
+from trainopt.curves.viscosity import viscosity_ratio
 from trainopt.errors import InputError, Problem
 
 if TYPE_CHECKING:
@@ -29,6 +31,8 @@ def fit_curve(medium: Medium) -> Curve:
     runs, problems = _reduced_runs(medium)
     if problems:
         raise InputError(problems)
+    reference = _reference_temperature(runs)
+    runs = [_at_temperature(run, reference) for run in runs]
     evidence = weigh(fit_readings(runs), _names(medium.curve.law))
     if evidence is None:
         total = sum(int(run.used.sum()) for run in runs)
@@ -36,7 +40,21 @@ def fit_curve(medium: Medium) -> Curve:
         raise InputError([medium.source.problem(("curve", "runs"), text)])
     if not evidence.decided:
         raise InputError([medium.source.problem(("curve", "law"), _undecided(evidence))])
-    return _fitted(medium, runs, evidence)
+    return _fitted(medium, runs, evidence, reference)
+
+
+def _reference_temperature(runs: Sequence[ReducedRun]) -> float | None:
+    """The median of the runs' temperatures, degC; None where none is given."""
+    known = [run.temperature for run in runs if run.temperature is not None]
+    return float(np.median(known)) if known else None
+
+
+def _at_temperature(run: ReducedRun, reference: float | None) -> ReducedRun:
+    """The run as it would have resisted at the reference temperature, by the viscosity of water."""
+    ratio = viscosity_ratio(reference, run.temperature)
+    if ratio == 1.0:
+        return run
+    return replace(run, resistance=run.resistance * ratio, pressure_time=run.pressure_time * ratio)
 
 
 def _undecided(evidence: Evidence) -> str:
@@ -74,7 +92,7 @@ def _names(law: str) -> tuple[str, ...]:
     return tuple(LAWS) if law == "auto" else (law,)
 
 
-def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence) -> Curve:
+def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence, reference: float | None) -> Curve:
     fit = evidence.chosen
     law = LAWS[fit.law]
     k = len(fit.parameters)
@@ -93,7 +111,7 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence) -> C
         covariance=tuple(tuple(float(value) for value in row) for row in fit.covariance[:k, :k]),
         tested_loading=_tested_loading(runs, lots, np.exp(fit.log_kappa)),
         tested_flux=max(float(np.median(run.flux[run.used])) for run in runs),
-        tested_temperature=None,
+        tested_temperature=reference,
         turbidity_loading=turbidity_loading(runs, limits.turbidity, getattr(limits, "pool_turbidity", None)),
         feed_loading=_feed_loading(runs),
         lots=_lot_effects(lots, fit, errors[k:]),
