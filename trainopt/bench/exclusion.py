@@ -17,7 +17,7 @@ side.
 START_SHARE = 0.1
 """Air is purged and the pump settles within this part of the run's loading."""
 
-START_EXCESS, START_LACK = 1.15, 0.7
+START_EXCESS, START_LACK = 1.15, 0.5
 """A start-up reading resists this much more than the least after it, or less than this part of what
 follows.
 """

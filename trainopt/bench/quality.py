@@ -43,13 +43,12 @@ def checked(run: ReducedRun, keep: bool) -> ReducedRun:
         for mask, reason in ((stepping, "the flow is changing at this reading"), (starting, "start-up")):
             for index in np.flatnonzero(mask):
                 reasons[index] = None if keep else reasons[index] or reason
+        slipping = _slipping(run, usable)
         flags.extend(_start_up(run, starting, keep))
-        flags.extend(_flow_steps(run, stepping, keep))
+        flags.extend(_flow_steps(run, stepping, slipping, keep))
+        flags.extend(_pump_slip(run, slipping, stepping, keep))
+        flags.extend(_off_set_point(run, usable & ~starting & ~stepping & ~slipping))
     marked = replace(run, excluded=tuple(reasons))
-    if run.operation == "constant-flow":
-        slipping = _slipping(marked)
-        flags.extend(_pump_slip(marked, slipping))
-        flags.extend(_off_set_point(marked, slipping))
     flags.extend(_outliers(marked))
     flags.extend(_shrinking(marked))
     flags.extend(_breakthrough(marked))
@@ -78,53 +77,60 @@ def _start_up(run: ReducedRun, starting: NDArray[np.bool_], keep: bool) -> Itera
         yield Flag("start-up", run.name, _place(run, int(at[0]), int(at[-1])), text)
 
 
-def _flow_steps(run: ReducedRun, stepping: NDArray[np.bool_], keep: bool) -> Iterator[Flag]:
+def _flow_steps(
+    run: ReducedRun, stepping: NDArray[np.bool_], slipping: NDArray[np.bool_], keep: bool
+) -> Iterator[Flag]:
+    """Steps of the flow that are not the edge of a pump slip, which says so itself."""
     for first, last in _stretches(stepping, shortest=1):
+        if slipping[max(first - 1, 0) : last + 2].any():
+            continue
         around = run.flux[[max(first - 1, 0), min(last + 1, len(run.flux) - 1)]]
         text = (
-            f"the flow steps from {around[0]:.0f} to {around[1]:.0f} LMH; {last - first + 1} reading(s) "
-            f"{_left_out(keep)}"
+            f"the flow steps from {around[0]:.0f} to {around[1]:.0f} LMH; "
+            f"{last - first + 1} reading(s) {_left_out(keep)}"
         )
         yield Flag("flow-step", run.name, _place(run, first, last), text)
 
 
-def _slipping(run: ReducedRun) -> NDArray[np.bool_]:
+def _slipping(run: ReducedRun, usable: NDArray[np.bool_]) -> NDArray[np.bool_]:
     """Flux down by a tenth or more while the pressure is below its highest so far."""
-    used = run.used
-    if used.sum() < 5:
-        return np.zeros(len(used), dtype=bool)
-    peak = np.maximum.accumulate(np.where(used, run.pressure, -np.inf))
-    return np.asarray(used & (run.flux < SLIP * np.median(run.flux[used])) & (run.pressure < 0.98 * peak))
+    if usable.sum() < 5:
+        return np.zeros(len(usable), dtype=bool)
+    peak = np.maximum.accumulate(np.where(usable, run.pressure, -np.inf))
+    low = run.flux < SLIP * np.median(run.flux[usable])
+    return np.asarray(usable & low & (run.pressure < 0.98 * peak))
 
 
-def _pump_slip(run: ReducedRun, slipping: NDArray[np.bool_]) -> Iterator[Flag]:
+def _pump_slip(
+    run: ReducedRun, slipping: NDArray[np.bool_], stepping: NDArray[np.bool_], keep: bool
+) -> Iterator[Flag]:
     """The resistance is still right, because flux is measured; but a slipping pump was starved or worn."""
     for first, last in _stretches(slipping, shortest=2):
-        set_point = float(np.median(run.flux[run.used]))
+        set_point = float(np.median(run.flux))
         lowest = float(np.min(run.flux[first : last + 1]))
         highest = float(np.max(run.pressure[: first + 1]))
+        edges = int(stepping[max(first - 1, 0) : last + 2].sum())
         text = (
             f"pump slip: flux falls to {lowest:.0f} LMH ({lowest / set_point:.0%} of {set_point:.0f}) as "
-            f"pressure backs "
-            f"off from {highest:.2f} to {run.pressure[first : last + 1].min():.2f} bar; resistances there "
-            f"use the "
-            "measured flux and stay in the fit; check the pump head and tubing"
+            f"pressure "
+            f"backs off from {highest:.2f} to {run.pressure[first : last + 1].min():.2f} bar; resistances "
+            f"there use "
+            f"the measured flux; {edges} reading(s) where the flow changes {_left_out(keep)}; check the "
+            f"pump head and tubing"
         )
         yield Flag("pump-slip", run.name, _place(run, first, last), text)
 
 
-def _off_set_point(run: ReducedRun, slipping: NDArray[np.bool_]) -> Iterator[Flag]:
-    used = run.used
-    if used.sum() < 5:
+def _off_set_point(run: ReducedRun, steady: NDArray[np.bool_]) -> Iterator[Flag]:
+    if steady.sum() < 5:
         return
-    set_point = float(np.median(run.flux[used]))
-    off = used & ~slipping & (np.abs(run.flux / set_point - 1.0) > OFF_SET_POINT)
+    set_point = float(np.median(run.flux[steady]))
+    off = steady & (np.abs(run.flux / set_point - 1.0) > OFF_SET_POINT)
     for first, last in _stretches(off, shortest=3):
         mean = float(np.mean(run.flux[first : last + 1]))
         text = (
             f"flow off its set point: {mean:.0f} LMH on average against {set_point:.0f} for the run; "
-            f"resistances use the "
-            "measured flux and stay in the fit"
+            "resistances use the measured flux and stay in the fit"
         )
         yield Flag("off-set-point", run.name, _place(run, first, last), text)
 

@@ -42,7 +42,7 @@ def _ended_early(runs: Sequence[ReducedRun], endpoint: float, turbidity: float |
         stopped_by_turbidity = breakthrough(run) is not None or (
             turbidity is not None and len(seen) > 0 and float(seen.max()) >= turbidity
         )
-        if run.operation == "constant-flow" and highest < endpoint and not stopped_by_turbidity:
+        if run.operation == "constant-flow" and highest < 0.9 * endpoint and not stopped_by_turbidity:
             text = (
                 f"ended at {highest:.2f} bar and {run.loading[run.used].max():.0f} L/m2, below the "
                 f"pressure endpoint of "
