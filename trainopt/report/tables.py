@@ -59,7 +59,7 @@ class Page:
         for index, name in enumerate(columns):
             words = index < left
             table.add_column(
-                Text(name),
+                Text("\n".join(plain(line) for line in name.split("\n"))),
                 justify="left" if words else "right",
                 overflow="fold",
                 no_wrap=not words,

@@ -1,0 +1,127 @@
+"""The JSON documents have exactly the keys that they promise, and any JSON reader takes them."""
+
+from __future__ import annotations
+
+import json
+import math
+from typing import Any
+
+import numpy as np
+import pytest
+
+from tests.report import results
+from trainopt.report.json import curve_document, design_document, dumps, finite
+
+NUMBER, TEXT = "number", "text"
+MAYBE = "number or null"
+
+STAGE = {
+    "stage": TEXT, "medium": TEXT, "module": TEXT, "count": "whole", "holders": {"*": "whole"},
+    "area_m2": NUMBER, "ideal_area_m2": MAYBE, "loading_L_m2": NUMBER, "flux_LMH": NUMBER,
+    "demand_bar_h": NUMBER, "pressure_bar": NUMBER, "pressure_share": NUMBER,
+    "safety_factor": MAYBE, "limited_by": TEXT,
+}  # fmt: skip
+BLOCK = {
+    "block": TEXT, "operation": TEXT, "time_h": NUMBER, "setup_h": NUMBER, "flow_L_per_h": NUMBER,
+    "pressure_bar": dict.fromkeys(("limit", "static", "line", "stages", "spare"), NUMBER),
+    "budget_bar_h": NUMBER, "demand_bar_h": NUMBER, "stages": [STAGE],
+}  # fmt: skip
+COST_PARTS = dict.fromkeys(("modules", "holders", "flush", "product", "hours"), NUMBER)
+DESIGN = {
+    "schema": TEXT, "scenario": TEXT, "status": TEXT,
+    "objective": {"kind": TEXT, "value": NUMBER, "bound": NUMBER, "gap": NUMBER},
+    "area_m2": NUMBER, "cost": NUMBER, "currency": TEXT, "time_h": NUMBER,
+    "cost_parts": COST_PARTS, "blocks": [BLOCK], "safety_factor": MAYBE,
+    "even_split": {"status": TEXT, "area_m2": MAYBE, "cost": MAYBE, "blocks": [BLOCK]},
+    "saving": {"area_m2": NUMBER, "area_percent": NUMBER, "cost": NUMBER, "cost_percent": MAYBE},
+    "warnings": [{"code": TEXT, "text": TEXT}], "trainopt": TEXT, "inputs": {"*": TEXT},
+}  # fmt: skip
+CURVE = {
+    "schema": TEXT, "medium": TEXT, "law": TEXT,
+    "parameters": {"*": {"value": NUMBER, "se": MAYBE, "unit": TEXT}},
+    "tested": {"loading_L_m2": NUMBER, "flux_LMH": NUMBER}, "turbidity_loading_L_m2": MAYBE,
+    "lots": {"*": {"resistance": NUMBER, "resistance_se": MAYBE, "fouling": NUMBER, "fouling_se": MAYBE}},
+    "alternatives": [{"law": TEXT, "aicc": MAYBE, "weight": NUMBER}],
+    "points": [{"run": TEXT, "row": "whole", "loading_L_m2": NUMBER, "flux_LMH": NUMBER,
+                "resistance_bar_per_LMH": MAYBE, "excluded": "text or null"}],
+    "flags": [{"code": TEXT, "run": TEXT, "rows": "rows", "text": TEXT}],
+}  # fmt: skip
+
+KINDS = {
+    TEXT: lambda v: isinstance(v, str),
+    "text or null": lambda v: v is None or isinstance(v, str),
+    NUMBER: lambda v: isinstance(v, int | float) and not isinstance(v, bool) and math.isfinite(v),
+    MAYBE: lambda v: v is None or (isinstance(v, int | float) and math.isfinite(v)),
+    "whole": lambda v: isinstance(v, int) and not isinstance(v, bool),
+    "rows": lambda v: v is None or (len(v) == 2 and all(isinstance(row, int) for row in v)),
+}
+
+
+def assert_shape(value: Any, shape: Any, place: str = "$") -> None:
+    """`value` has exactly the keys and kinds of `shape` ("*": any key; a list: any number of entries)."""
+    if isinstance(shape, str):
+        assert KINDS[shape](value), f"{place}: {value!r} is no {shape}"
+    elif isinstance(shape, list):
+        for index, entry in enumerate(value):
+            assert_shape(entry, shape[0], f"{place}[{index}]")
+    elif "*" in shape:
+        for key, entry in value.items():
+            assert_shape(entry, shape["*"], f"{place}.{key}")
+    else:
+        assert list(value) == list(shape), f"{place}: keys {list(value)}"
+        for key, entry in value.items():
+            assert_shape(entry, shape[key], f"{place}.{key}")
+
+
+def read(text: str) -> Any:
+    """JSON without the constants that are no JSON."""
+
+    def refuse(name: str) -> None:
+        raise AssertionError(f"{name} is no JSON")
+
+    return json.loads(text, parse_constant=refuse)
+
+
+def test_design_has_exactly_the_promised_keys() -> None:
+    document = read(dumps(design_document(results.design())))
+    assert_shape(document, DESIGN)
+    assert document["schema"] == "trainopt.design/1"
+
+
+def test_infeasible_design_adds_reasons_and_has_nulls_for_numbers() -> None:
+    document = read(dumps(design_document(results.infeasible())))
+    reasons = document.pop("reasons")
+    assert list(document) == list(DESIGN)
+    assert_shape(reasons, [{"text": TEXT, "needs": {"*": MAYBE}}])
+    assert reasons[0]["needs"] == {"clarification.pressure_bar": 2.31, "batch.time_h": None}
+    numbers = ("objective", "area_m2", "cost", "time_h", "cost_parts", "safety_factor", "saving")
+    assert [document[key] for key in numbers] == [None] * len(numbers)
+    assert document["blocks"] == []
+
+
+def test_curve_has_exactly_the_promised_keys() -> None:
+    document = read(dumps(curve_document(results.curve())))
+    assert_shape(document, CURVE)
+    assert document["schema"] == "trainopt.curve/1"
+    assert document["flags"][0]["rows"] == [12, 15]
+
+
+@pytest.mark.parametrize("number", [math.nan, math.inf, -math.inf, np.float64("nan"), np.float64("inf")])
+def test_non_finite_numbers_become_null(number: float) -> None:
+    document = read(dumps(design_document(results.design(area=number))))
+    assert document["area_m2"] is None
+
+
+def test_numbers_keep_every_digit() -> None:
+    assert read(dumps({"x": 0.1 + 0.2}))["x"] == 0.1 + 0.2
+
+
+def test_numpy_scalars_are_plain_numbers() -> None:
+    data = finite({"a": np.float64(1.5), "b": np.int64(3), "c": np.bool_(True), "d": (1, [np.float64(2)])})
+    assert data == {"a": 1.5, "b": 3, "c": True, "d": [1, [2.0]]}
+    assert [type(data[key]) for key in "abc"] == [float, int, bool]
+
+
+def test_what_has_no_place_in_json_is_refused() -> None:
+    with pytest.raises(TypeError, match="object"):
+        finite({"x": object()})
