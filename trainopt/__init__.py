@@ -1,0 +1,64 @@
+"""Sizes a filtration train from bench runs: the public Python API.
+
+    import trainopt
+    case = trainopt.load_case("scenarios/harvest.yaml")
+    design = trainopt.design(case)
+
+Names are imported when they are first used, so that `import trainopt` costs next to nothing.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING
+
+from trainopt.version import __version__
+
+if TYPE_CHECKING:
+    from trainopt.curves.curve import Curve as Curve
+    from trainopt.curves.medium import fit_curve as fit_curve
+    from trainopt.errors import DefectError as DefectError
+    from trainopt.errors import InputError as InputError
+    from trainopt.errors import Problem as Problem
+    from trainopt.files import Case as Case
+    from trainopt.files import Workspace as Workspace
+    from trainopt.files import check as check
+    from trainopt.files import load_case as load_case
+    from trainopt.files import load_medium as load_medium
+    from trainopt.files import load_workspace as load_workspace
+    from trainopt.optimize import design as design
+    from trainopt.report.json import curve_document as curve_document
+    from trainopt.report.json import design_document as design_document
+    from trainopt.train.results import Design as Design
+
+_HOMES = {
+    "Case": "trainopt.files",
+    "Curve": "trainopt.curves.curve",
+    "DefectError": "trainopt.errors",
+    "Design": "trainopt.train.results",
+    "InputError": "trainopt.errors",
+    "Problem": "trainopt.errors",
+    "Workspace": "trainopt.files",
+    "check": "trainopt.files",
+    "curve_document": "trainopt.report.json",
+    "design": "trainopt.optimize",
+    "design_document": "trainopt.report.json",
+    "fit_curve": "trainopt.curves.medium",
+    "load_case": "trainopt.files",
+    "load_medium": "trainopt.files",
+    "load_workspace": "trainopt.files",
+}
+
+__all__ = ["__version__", *sorted(_HOMES)]
+
+
+def __getattr__(name: str) -> object:
+    if name not in _HOMES:
+        raise AttributeError(f"module 'trainopt' has no attribute {name!r}")
+    value = getattr(import_module(_HOMES[name]), name)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted(__all__)
