@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
 from trainopt.bench.reduce import reduce_run
 from trainopt.bench.run import ReducedRun
+from trainopt.curves.curve import Curve
 from trainopt.curves.laws import LAWS
+from trainopt.curves.medium import fit_curve
 from trainopt.errors import Problem
 
 AREA = 0.0023  # m², 23 cm²
@@ -33,6 +36,48 @@ class RunEntry:
     keep: bool = False
     tare: float | None = None
     feed_loading: float | None = None
+
+
+@dataclass(frozen=True)
+class Spec:
+    """The fields of a medium's curve, as `trainopt.files.CurveSpec` has them."""
+
+    runs: tuple[RunEntry, ...] = ()
+    law: str = "auto"
+    parameters: dict[str, float] | None = None
+    coefficients: tuple[float, ...] | None = None
+    tested: Any = None
+    lots: Any = None
+
+
+@dataclass(frozen=True)
+class Limits:
+    """The limits that a curve looks at, as `trainopt.files.Limits` has them."""
+
+    turbidity: float | None = None
+    pool_turbidity: float | None = None
+    differential_pressure: float | None = None
+
+
+class Source:
+    """Where a medium was written."""
+
+    def problem(self, loc: tuple[object, ...], text: str) -> Problem:
+        return Problem("medium.yaml", 3, f"{'.'.join(map(str, loc))}: {text}")
+
+
+@dataclass(frozen=True)
+class MediumEntry:
+    """A medium, as `trainopt.files.Medium` has it."""
+
+    curve: Spec
+    limits: Limits = Limits()
+    medium: str = "oat-coarse"
+    source: Source = field(default_factory=Source)
+
+
+def fitted(*runs: RunEntry, law: str = "auto", limits: Limits = Limits()) -> Curve:
+    return fit_curve(MediumEntry(Spec(runs, law), limits))  # type: ignore[arg-type]
 
 
 def where(loc: tuple[str, ...], text: str) -> Problem:

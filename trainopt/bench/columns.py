@@ -171,9 +171,13 @@ def _header(table: Table, index: int) -> _Header:
 
 
 def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -> None:
-    """The column that the run names for a role; the name may add the unit that the header lacks."""
+    """The column that the run names for a role: its header, perhaps with the unit it lacks, or none at
+    all.
+    """
     if role not in DIMENSIONS:
         search.wrong(f"`columns:` names the role '{role}'; expected one of {', '.join(DIMENSIONS)}")
+        return
+    if text.strip().casefold() == "none":
         return
     matches = [header for header in headers if header.text == text.strip()]
     unit_text = ""
@@ -260,7 +264,27 @@ def _find_pressures(search: _Search) -> None:
     if "pressure" not in search.given:
         search.take("pressure", inlets)
     if "outlet_pressure" not in search.given:
+        downstream = _downstream(search, kinds[""])
+        if downstream:
+            names = " and ".join(f"'{header.text}'" for header in downstream)
+            example = f'columns: {{outlet_pressure: "{downstream[0].text}"}}'
+            search.wrong(
+                f"{names} could each be the outlet pressure; expected the run to say, as in {example}, or "
+                f"none"
+            )
         search.take("outlet_pressure", kinds["outlet_pressure"])
+
+
+def _downstream(search: _Search, gauges: list[_Header]) -> list[_Header]:
+    """Numbered gauges that stand after the one given as the pressure: in an inline run one of them is its
+    outlet.
+    """
+    given = search.found.get("pressure")
+    if given is None or "pressure" not in search.given:
+        return []
+    own = re.search(r"\d+", given.header)
+    later = [(re.search(r"\d+", header.text), header) for header in gauges]
+    return [header for number, header in later if own and number and int(number[0]) > int(own[0])]
 
 
 def _is_pressure(header: _Header) -> bool:

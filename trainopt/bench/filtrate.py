@@ -29,6 +29,8 @@ def swapped(amount: Floats) -> NDArray[np.bool_]:
     Near nothing: at most a fifth of the reading before, or one and a half of the run's usual steps.
     """
     out = np.zeros(len(amount), dtype=bool)
+    if len(amount) < 2:
+        return out
     step = np.diff(amount)
     growth = float(np.median(step[step > 0.0])) if np.any(step > 0.0) else 0.0
     for index in np.flatnonzero(step < -NOISE * max(float(np.ptp(amount)), 1e-12)):
@@ -42,6 +44,8 @@ def fall_faults(
     amount: Floats, swaps: NDArray[np.bool_], rows: NDArray[np.int64], role: str
 ) -> list[tuple[int, str]]:
     """Rows at which a cumulative amount falls by more than noise without a new cylinder."""
+    if len(amount) < 2:
+        return []
     low = np.diff(amount) < -NOISE * max(float(np.ptp(amount)), 1e-12)
     return [
         (int(rows[index + 1]), f"{role} falls below that of line {rows[index]}; expected a cumulative {role}")

@@ -31,7 +31,7 @@ DELIMITERS = (",", ";", "\t", "|")
 NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?")
 CLOCK = re.compile(r"\d{1,4}:[0-5]?\d(:[0-5]?\d(\.\d+)?)?")
 _DECIMAL_COMMA = re.compile(r"[+-]?\d*,\d+([eE][+-]?\d+)?")
-_THOUSANDS = re.compile(r"[+-]?\d{1,3}(,\d{3})+(\.\d*)?")
+_THOUSANDS = re.compile(r"[+-]?[1-9]\d{0,2}(,\d{3})+(\.\d*)?")
 
 
 @dataclass(frozen=True, eq=False)
