@@ -48,7 +48,7 @@ class Options:
 class Dropped:
     """Options that were left out before the model was built: why, how many, and the cap that did it."""
 
-    code: str          # "loading-tested" | "loading-limit" | "turbidity" | "pole" | "dominated"
+    code: str          # "loading-tested" | "loading-limit" | "turbidity" | "pole" | "too-slow" | "dominated"
     module: str        # "" where the reason holds for every module of the medium
     options: int
     limit_L_m2: float | None
@@ -129,3 +129,9 @@ class DesignProblem:
     lots: tuple[str, ...]
     blocks: tuple[Block, ...]
     currency: str
+
+    def longest_time(self, block: Block) -> float:
+        """The most that a block's t_b can be, h: what all setups leave (its own, side by side), and the pump's least flow."""
+        setups = sum(b.setup for b in self.blocks) if self.schedule == "sequential" else block.setup
+        pump = self.volume / block.min_flow if block.min_flow > 0.0 else float("inf")
+        return min(self.time - setups, pump)

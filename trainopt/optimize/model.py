@@ -1,0 +1,49 @@
+"""The Pyomo model of a design problem: it only declares and wires; the algebra is in `constraints.py`."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import pyomo.core as pyo
+
+from trainopt.optimize import constraints as rows
+from trainopt.optimize.index import Index
+
+
+def build_model(index: Index) -> Any:
+    """The mixed-integer model of an indexed (and usually pruned) problem, as a Pyomo `ConcreteModel`.
+
+    Variables: `x[stage, medium, module, count]` binary, `t[block]` in h, `f[from, to]` where routes branch.
+    """
+    problem = index.problem
+    model = pyo.ConcreteModel(name="pressure_budget")
+    names = [block.name for block in problem.blocks]
+    model.x = pyo.Var(index.names, within=pyo.Binary)
+    model.t = pyo.Var(names, bounds=lambda _, name: rows.time_bounds(index, names.index(name)))
+    x, t = list(model.x.values()), list(model.t.values())
+
+    if index.plain:
+        _add(model, "one_option", dict(rows.one_option(index, x)))
+    else:
+        model.f = pyo.Var(index.arcs, bounds=(0.0, 1.0))
+        arcs = dict(model.f.items())
+        model.route_start = pyo.Constraint(expr=rows.route_start(index, arcs))
+        _add(model, "route_in", dict(rows.route_in(index, x, arcs)))
+        _add(model, "route_out", dict(rows.route_out(index, x, arcs)))
+    _add(model, "pressure_budget", dict(rows.pressure_budget(index, x, t)))
+    _add(model, "differential_rating", dict(rows.differential_rating(index, x, t)))
+    _add(model, "inlet_rating", dict(rows.inlet_rating(index, x, t)))
+    _add(model, "flux_limit", dict(rows.flux_limit(index, x, t)))
+    if problem.schedule == "sequential":
+        model.batch_time = pyo.Constraint(expr=rows.batch_time(index, t))
+
+    cost = [(float(w), v) for w, v in zip(index.weight.tolist(), x, strict=True)]
+    if problem.objective == "cost" and problem.hour_rate > 0.0:
+        cost += [(problem.hour_rate, v) for v in t]
+    model.objective = pyo.Objective(expr=rows.linear(cost))
+    return model
+
+
+def _add(model: Any, name: str, table: dict[Any, rows.Row]) -> None:
+    if table:
+        setattr(model, name, pyo.Constraint(list(table), rule=lambda _, *key: table[key if len(key) > 1 else key[0]]))

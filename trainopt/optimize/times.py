@@ -1,0 +1,154 @@
+"""Block times of a pick in closed form, and how spare time is shared out.
+
+A pick is one option per used stage. Every limit on it reads "this block takes at least so long", so that a pick
+is feasible exactly if its blocks' shortest times fit the batch time. It checks what HiGHS returns, and shares no code with the model.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from trainopt.train.problem import Block, Candidate, DesignProblem, Floats, Stage
+
+TIME_SLACK = 1e-9
+"""Relative room for rounding when times are held against the time allowed."""
+
+
+@dataclass(frozen=True)
+class Choice:
+    """One used stage with the candidate and the place of the option picked for it."""
+
+    stage: Stage
+    candidate: Candidate
+    option: int
+
+    @property
+    def demand(self) -> Floats:
+        """D in bar·h, shape (lots,)."""
+        return np.asarray(self.candidate.options.demand[:, self.option])
+
+    @property
+    def weight(self) -> float:
+        """What the objective counts for it."""
+        return float(self.candidate.options.weight[self.option])
+
+
+BlockChoice = tuple[Choice, ...]
+Route = tuple[BlockChoice, ...]
+"""A pick for a whole train: per block, the choices of its used stages in flow order."""
+
+
+@dataclass(frozen=True)
+class TimeBounds:
+    """How long a block with its pick takes at least and at most, in h, and which limit sets the least.
+
+    `pressure` is what the pressure budget alone asks for, `limits` every lower bound by name
+    ("pressure", "pump", and per stage "differential-pressure", "inlet-pressure", "flux").
+    """
+
+    least: float
+    most: float
+    pressure: float
+    limits: dict[tuple[str, str], float]
+
+
+def block_bounds(block: Block, choices: BlockChoice, volume: float) -> TimeBounds:
+    """Shortest and longest time of one block with its pick (model.md, section 4)."""
+    line = block.line * volume
+    demands = np.array([choice.demand for choice in choices])
+    limits = {("", "pump"): volume / block.max_flow}
+    if choices:
+        total = float(demands.sum(axis=0).max())
+        limits["", "pressure"] = _ratio(total + line, block.head)
+    elif line > 0.0:
+        limits["", "pressure"] = _ratio(line, block.head)
+    for place, choice in enumerate(choices):
+        one, name = choice.candidate, choice.stage.name
+        limits[name, "flux"] = float(one.options.shortest_time[choice.option])
+        if block.operation != "constant-flow":
+            continue
+        limits[name, "differential-pressure"] = float(demands[place].max()) / one.differential_pressure
+        if one.inlet_pressure < block.pressure:
+            downstream = float(demands[place:].sum(axis=0).max())
+            limits[name, "inlet-pressure"] = _ratio(downstream + line, one.inlet_pressure - block.static)
+    most = volume / block.min_flow if block.min_flow > 0.0 else math.inf
+    return TimeBounds(max(limits.values()), most, limits.get(("", "pressure"), 0.0), limits)
+
+
+def _ratio(need: float, have: float) -> float:
+    return need / have if have > 0.0 else math.inf
+
+
+def block_times(problem: DesignProblem, route: Route) -> tuple[float, ...] | None:
+    """Block times in h of a pick, spare time shared out, or None where the pick meets not every limit."""
+    bounds = [block_bounds(b, c, problem.volume) for b, c in zip(problem.blocks, route, strict=True)]
+    return share_time(problem, bounds)
+
+
+def share_time(problem: DesignProblem, bounds: Sequence[TimeBounds]) -> tuple[float, ...] | None:
+    """Block times within `bounds`: the shortest where an hour costs, else sharing the spare time.
+
+    Spare time goes where the smallest relative spare pressure 1 − t_pressure/t is, which makes the smallest as large as can be.
+    """
+    allowed = _allowed(problem)
+    slack = TIME_SLACK * problem.time
+    for bound, most in zip(bounds, allowed, strict=True):
+        if not (bound.least <= most + slack and bound.least <= bound.most + slack):
+            return None
+    least = [bound.least for bound in bounds]
+    most = [max(min(bound.most, own), bound.least) for bound, own in zip(bounds, allowed, strict=True)]
+    if problem.schedule == "sequential":
+        spare = process_time(problem) - sum(least)
+        if spare < -slack:
+            return None
+    if problem.objective == "cost" and problem.hour_rate > 0.0:
+        return tuple(least)
+    if problem.schedule != "sequential":
+        return tuple(most)
+    return _leveled([bound.pressure for bound in bounds], least, most, process_time(problem))
+
+
+def process_time(problem: DesignProblem) -> float:
+    """Batch time left after all setups, h (blocks in sequence)."""
+    return problem.time - sum(block.setup for block in problem.blocks)
+
+
+def _allowed(problem: DesignProblem) -> list[float]:
+    """The most each block alone may take, h."""
+    if problem.schedule == "sequential":
+        return [process_time(problem)] * len(problem.blocks)
+    return [problem.time - block.setup for block in problem.blocks]
+
+
+def _leveled(pressure: list[float], least: list[float], most: list[float], total: float) -> tuple[float, ...]:
+    """t_b = pressure_b·level inside its bounds, with the level at which the times add up to `total`.
+
+    Found on the piecewise linear sum by its break points, exactly.
+    """
+    if sum(most) <= total:
+        return tuple(most)
+    if sum(least) >= total:
+        return tuple(least)
+    weights = [max(p, 1e-12 * total) for p in pressure]
+
+    def at(level: float) -> list[float]:
+        return [min(max(w * level, low), high) for w, low, high in zip(weights, least, most, strict=True)]
+
+    breaks = sorted({low / w for w, low in zip(weights, least, strict=True)}
+                    | {high / w for w, high in zip(weights, most, strict=True) if math.isfinite(high)})  # fmt: skip
+    below = max((level for level in breaks if sum(at(level)) <= total), default=0.0)
+    moving = sum(w for w, low, high in zip(weights, least, most, strict=True) if low <= w * below < high)
+    return tuple(at(below + (total - sum(at(below))) / moving if moving > 0.0 else below))
+
+
+def objective_of(problem: DesignProblem, route: Route, times: Sequence[float]) -> float:
+    """What the objective counts: weights, and for cost the hours."""
+    total = math.fsum(choice.weight for choices in route for choice in choices)
+    if problem.objective == "cost":
+        hours = math.fsum(t + block.setup for t, block in zip(times, problem.blocks, strict=True))
+        total += problem.hour_rate * hours
+    return total

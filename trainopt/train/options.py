@@ -1,0 +1,187 @@
+"""The module counts a medium can be bought in, their costs, and the caps on how far each may be loaded.
+
+model.md, section 3. Areas in m², loadings in L/m², costs per batch in the catalog's currency.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trainopt.curves.curve import LotCurve
+from trainopt.train.problem import Dropped, Floats, Options
+
+if TYPE_CHECKING:
+    from trainopt.files import Catalog, Costs, Holder, Medium
+
+CAP_SLACK = 1e-12
+"""Relative room for rounding when a loading is held against its cap."""
+
+
+@dataclass(frozen=True)
+class Duty:
+    """What a stage is sized for: volume L, safety factor F, and what the objective counts."""
+
+    volume: float
+    safety_factor: float
+    objective: str
+    operation: str
+
+
+@dataclass(frozen=True)
+class Cap:
+    """The highest design loading a medium may get, L/m², and the limit it comes from."""
+
+    loading: float
+    reason: str
+
+    def holds(self, loading: Floats) -> NDArray[np.bool_]:
+        """Whether each loading is inside the cap."""
+        return loading <= self.loading * (1.0 + CAP_SLACK)
+
+
+def cheapest_holder(holders: Mapping[str, Holder], module: str, counts: NDArray[np.int64]) -> tuple[
+    tuple[tuple[str, int] | None, ...], Floats
+]:
+    """For each count the holder type and number that cost least per batch (ties: fewer, then by name), and that cost."""
+    usable = [(name, holder) for name, holder in sorted(holders.items()) if module in holder.modules]
+    if not usable:
+        return (None,) * len(counts), np.zeros(len(counts))
+    chosen: list[tuple[str, int] | None] = []
+    costs = np.empty(len(counts))
+    for index, count in enumerate(counts.tolist()):
+        offers = []
+        for name, holder in usable:
+            number = -(-count // holder.slots)
+            offers.append((max(number - holder.owned, 0) * holder.price / holder.batches, number, name))
+        cost, number, name = min(offers)
+        chosen.append((name, number))
+        costs[index] = cost
+    return tuple(chosen), costs
+
+
+def demand(curves: Sequence[LotCurve], operation: str, loading: Floats) -> Floats:
+    """D in bar·h, shape (lots, n), of each design loading in L/m² (model.md, section 1); infinite past a pole."""
+    if operation == "constant-pressure":
+        return np.array([curve.demand_constant_pressure(loading) for curve in curves])
+    return np.array([curve.demand_constant_flow(loading) for curve in curves])
+
+
+def module_options(
+    medium: Medium, module: str, catalog: Catalog, costs: Costs, duty: Duty, counts: NDArray[np.int64]
+) -> Options:
+    """The options of one module type, before any cap; `demand` is left empty."""
+    entry = catalog.modules[module]
+    area = counts * entry.area
+    holders, holders_cost = cheapest_holder(catalog.holders, module, counts)
+    flush = medium.flush.volume if medium.flush is not None else 0.0
+    product = costs.product
+    lost = (1.0 - product.recovered) * product.titer * product.value if product is not None else 0.0
+    modules_cost, flush_cost = counts * entry.price, flush * area * costs.flush
+    product_cost = lost * entry.hold_up * counts
+    total = modules_cost + holders_cost + flush_cost + product_cost
+    return Options(
+        module=(module,) * len(counts),
+        count=counts,
+        holders=holders,
+        area=area,
+        modules_cost=modules_cost,
+        holders_cost=holders_cost,
+        flush_cost=flush_cost,
+        product_cost=product_cost,
+        weight=area if duty.objective == "area" else total,
+        shortest_time=np.zeros(len(counts)),
+        loading=duty.safety_factor * duty.volume / (medium.scale_up * area),
+        demand=np.zeros((0, len(counts))),
+    )
+
+
+def take(options: Options, index: NDArray[np.intp]) -> Options:
+    """The options at `index`, in that order."""
+    places = index.tolist()
+    return Options(
+        module=tuple(options.module[i] for i in places),
+        count=options.count[index],
+        holders=tuple(options.holders[i] for i in places),
+        area=options.area[index],
+        modules_cost=options.modules_cost[index],
+        holders_cost=options.holders_cost[index],
+        flush_cost=options.flush_cost[index],
+        product_cost=options.product_cost[index],
+        weight=options.weight[index],
+        shortest_time=options.shortest_time[index],
+        loading=options.loading[index],
+        demand=options.demand[:, index],
+    )
+
+
+def joined(parts: Sequence[Options]) -> Options:
+    """Several module types' options as one table."""
+    if not parts:
+        empty = np.zeros(0)
+        return Options((), np.zeros(0, dtype=np.int64), (), *(empty,) * 8, np.zeros((0, 0)))
+    return Options(
+        module=tuple(name for part in parts for name in part.module),
+        count=np.concatenate([part.count for part in parts]),
+        holders=tuple(holder for part in parts for holder in part.holders),
+        area=np.concatenate([part.area for part in parts]),
+        modules_cost=np.concatenate([part.modules_cost for part in parts]),
+        holders_cost=np.concatenate([part.holders_cost for part in parts]),
+        flush_cost=np.concatenate([part.flush_cost for part in parts]),
+        product_cost=np.concatenate([part.product_cost for part in parts]),
+        weight=np.concatenate([part.weight for part in parts]),
+        shortest_time=np.concatenate([part.shortest_time for part in parts]),
+        loading=np.concatenate([part.loading for part in parts]),
+        demand=np.concatenate([part.demand for part in parts], axis=1),
+    )
+
+
+def inside_caps(
+    options: Options, cap: Cap, curves: Sequence[LotCurve], operation: str, flux_limit: float, volume: float
+) -> tuple[Options, tuple[Dropped, ...]]:
+    """The options that exist, with D and τ filled in, and why the others do not."""
+    dropped: list[Dropped] = []
+    module = options.module[0] if options.module else ""
+    fits = cap.holds(options.loading)
+    if not fits.all():
+        text = f"{int((~fits).sum())} counts load more than {cap.loading:.4g} L/m2 ({_CAP_WORDS[cap.reason]})"
+        dropped.append(Dropped(cap.reason, module, int((~fits).sum()), cap.loading, text))
+        options = take(options, np.flatnonzero(fits))
+    spent = demand(curves, operation, options.loading)
+    finite = np.isfinite(spent).all(axis=0)
+    if not finite.all():
+        pole = min(curve.pole for curve in curves)
+        text = f"{int((~finite).sum())} counts load past {pole:.4g} L/m2, where the fitted resistance is infinite"
+        dropped.append(Dropped("pole", module, int((~finite).sum()), pole, text))
+    filled = replace(options, demand=spent, shortest_time=volume / (options.area * flux_limit))
+    return (filled if finite.all() else take(filled, np.flatnonzero(finite))), tuple(dropped)
+
+
+_CAP_WORDS = {
+    "loading-tested": "the highest loading tested, for the worst lot",
+    "loading-limit": "the loading limit of the medium",
+    "turbidity": "where the filtrate reaches the turbidity limit",
+}
+
+
+def undominated(options: Options) -> NDArray[np.intp]:
+    """Places of the options that no other of the same medium beats, ordered by area.
+
+    Within one medium D (every lot) and τ fall as area grows, so an option is beaten exactly by one of at least
+    its area and at most its weight. Ties go to the lower cost, then the lower count, then the name.
+    """
+    cost = options.modules_cost + options.holders_cost + options.flush_cost + options.product_cost
+    keys = zip(options.weight.tolist(), (-options.area).tolist(), cost.tolist(), options.count.tolist(), options.module,
+               strict=True)  # fmt: skip
+    order = [place for _, place in sorted((key, place) for place, key in enumerate(keys))]
+    kept: list[int] = []
+    largest = 0.0
+    for place in order:
+        if options.area[place] > largest * (1.0 + CAP_SLACK):
+            kept.append(place)
+            largest = options.area[place]
+    return np.array(kept, dtype=np.intp)
