@@ -87,6 +87,11 @@ def _readings(table: Table, found: Columns, problems: list[Problem]) -> _Reading
     """The table's complete rows; problems are added to the list."""
     columns = found.found
     values = {role: column_values(table, column, problems) for role, column in columns.items()}
+    blank = [
+        role for role, column in values.items() if role == "outlet_pressure" and not np.isfinite(column).any()
+    ]
+    columns = {role: column for role, column in columns.items() if role not in blank}
+    values = {role: values[role] for role in columns}
     keep = complete_rows(table, columns, values, problems)
     rows = table.lines[keep]
     values = {role: column[keep] for role, column in values.items()}
