@@ -119,6 +119,14 @@ class Solver:
         """Replace the objective; variables added later than `cost` reaches keep theirs."""
         self._highs.changeColsCost(len(cost), np.arange(len(cost), dtype=np.int32), np.asarray(cost, dtype=float))
 
+    def set_cost(self, place: int, cost: float) -> None:
+        """Replace one variable's cost."""
+        self._highs.changeColCost(place, cost)
+
+    def limit_time(self, seconds: float) -> None:
+        """Stop the next run after so many seconds (HiGHS counts from the instance's first run)."""
+        self._highs.setOptionValue("time_limit", self._highs.getRunTime() + seconds)
+
     def start_from(self, values: Floats) -> None:
         """Offer a feasible point to begin with."""
         solution = highspy.HighsSolution()
