@@ -55,8 +55,9 @@ def _local(run: ReducedRun) -> Floats:
     there.
     """
     resistance, used = run.resistance[run.used], run.used
-    mean = run.pressure_time[used] / run.loading[used]
-    return np.where(np.isfinite(resistance) & (resistance > 0.0), resistance, np.abs(mean))
+    known = np.isfinite(resistance) & (resistance > 0.0)
+    mean = np.abs(run.pressure_time[used]) / np.maximum(run.loading[used], 1e-9)
+    return np.where(known, resistance, mean)
 
 
 def _weight(run: ReducedRun) -> Floats:
