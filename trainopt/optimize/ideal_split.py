@@ -1,0 +1,195 @@
+"""The ideal split: a block's areas with no catalog, min Σ w_i·A_i with Σ D_i(A_i) ≤ B (model.md, section 5).
+
+At its optimum every stage that no limit holds has the same marginal −D_i'(A_i)/w_i.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from trainopt.curves.curve import LotCurve
+from trainopt.optimize.roots import largest_where
+from trainopt.train.options import demand
+from trainopt.train.problem import Floats
+
+_POINTS = 2000
+_LEVELS = 3
+
+
+@dataclass(frozen=True)
+class IdealStage:
+    """One stage of the ideal split.
+
+    `loading_area` = F·V/φ in L, so that L = loading_area/A; `most` the highest design loading allowed, L/m² (caps, flux,
+    rating); `weight` of a m² in the objective; `suffix_budget` bar·h for this stage and those downstream (infinite: none).
+    """
+
+    curves: tuple[LotCurve, ...]
+    operation: str
+    loading_area: float
+    most: float
+    weight: float = 1.0
+    suffix_budget: float = math.inf
+
+    def demand(self, loading: Floats, lots: Floats) -> Floats:
+        """Σ_s p_s·D_s at each loading, bar·h, for the weights `lots` of the lots."""
+        return np.asarray(lots @ demand(self.curves, self.operation, loading))
+
+
+def loading_limit(
+    curves: tuple[LotCurve, ...], operation: str, cap: float, rating_budget: float
+) -> float:
+    """Highest design loading in L/m² inside `cap` at which every lot's D stays within the stage's own rating, bar·h."""
+    finite = min(cap, *(curve.pole * (1.0 - 1e-9) for curve in curves))
+    if math.isinf(rating_budget):
+        return finite
+
+    def holds(loading: Floats) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
+        return np.asarray(demand(curves, operation, loading).max(axis=0) <= rating_budget)
+
+    return largest_where(holds, finite)
+
+
+def ideal_areas(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...] | None:
+    """Areas in m² of the ideal split within `budget` bar·h for every lot, or None where no area is large enough."""
+    if not stages or budget <= 0.0:
+        return None
+    areas = _within(stages, budget)
+    if areas is None:
+        return None
+    # Inlet ratings are budgets of the stages from there down: where one is broken it holds with equality,
+    # and the train falls into two independent parts.
+    for k, stage in enumerate(stages):
+        spent = _worst(stages[k:], areas[k:])
+        if spent > stage.suffix_budget * (1.0 + 1e-9) and not (k == 0 and stage.suffix_budget >= budget):
+            below = ideal_areas([*_freed(stages[k : k + 1]), *stages[k + 1 :]], stage.suffix_budget)
+            if below is None or k == 0:
+                return below
+            above = ideal_areas(stages[:k], budget - _worst(stages[k:], below))
+            return None if above is None else (*above, *below)
+    return areas
+
+
+def _freed(stages: Sequence[IdealStage]) -> list[IdealStage]:
+    from dataclasses import replace
+
+    return [replace(stage, suffix_budget=math.inf) for stage in stages]
+
+
+def _worst(stages: Sequence[IdealStage], areas: Sequence[float]) -> float:
+    """The worst lot's Σ D at these areas, bar·h."""
+    total = sum(
+        demand(s.curves, s.operation, np.array([s.loading_area / a]))[:, 0] for s, a in zip(stages, areas, strict=True)
+    )
+    return float(np.max(total))
+
+
+def _within(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...] | None:
+    """The split for the worst lot: one lot if its split holds for all, else the mixture of lots that binds."""
+    count = len(stages[0].curves)
+    best: tuple[float, ...] | None = None
+    for lot in range(count):
+        areas = _equal_marginals(stages, budget, np.eye(count)[lot])
+        if areas is None:
+            return None
+        if _worst(stages, areas) <= budget * (1.0 + 1e-9):
+            return areas
+        if best is None or _weighed(stages, areas) > _weighed(stages, best):
+            best = areas
+    assert best is not None
+    return _mixed(stages, budget, best)
+
+
+def _weighed(stages: Sequence[IdealStage], areas: Sequence[float]) -> float:
+    return sum(s.weight * a for s, a in zip(stages, areas, strict=True))
+
+
+def _mixed(stages: Sequence[IdealStage], budget: float, start: tuple[float, ...]) -> tuple[float, ...]:
+    """Several lots bind at once: a general constrained minimizer, from the best single lot's split scaled to hold."""
+    from scipy.optimize import minimize
+
+    def demands(areas: Floats) -> Floats:
+        return np.asarray(
+            sum(
+                demand(s.curves, s.operation, np.array([s.loading_area / a]))[:, 0]
+                for s, a in zip(stages, areas, strict=True)
+            )
+        )
+
+    first, least = np.array(start), np.array([s.loading_area / s.most for s in stages])
+    while demands(first).max() > budget:
+        first = first * 1.05
+    weights = np.array([s.weight for s in stages])
+    scale = first.copy()
+    answer = minimize(
+        lambda y: float(weights @ (y * scale)) / float(weights @ scale),
+        np.ones(len(first)),
+        jac=lambda _: weights * scale / float(weights @ scale),
+        bounds=[(low, None) for low in (least / scale)],
+        constraints=[{"type": "ineq", "fun": lambda y: 1.0 - demands(y * scale) / budget}],
+        method="SLSQP",
+        options={"ftol": 1e-12, "maxiter": 300},
+    )
+    areas = np.maximum(answer.x * scale, least)
+    return tuple((areas if demands(areas).max() <= budget * (1.0 + 1e-7) else first).tolist())
+
+
+def _equal_marginals(stages: Sequence[IdealStage], budget: float, lots: Floats) -> tuple[float, ...] | None:
+    """Loadings with one marginal −dD/dA per weight whose demands add up to the budget.
+
+    D and its slope are tabulated on a loading grid that is refined around the answer: no derivative of a law is needed,
+    and a curve that dips only makes the marginal's running maximum level.
+    """
+    tops = [s.most for s in stages]
+    at_top = sum(float(s.demand(np.array([top]), lots)[0]) for s, top in zip(stages, tops, strict=True))
+    if at_top <= budget:
+        return tuple(s.loading_area / top for s, top in zip(stages, tops, strict=True))
+    spans = [(top * 1e-7, top) for top in tops]
+    loadings = tops
+    for _ in range(_LEVELS):
+        grids = [np.geomspace(low, high, _POINTS) for low, high in spans]
+        tables = [_table(s, grid, lots) for s, grid in zip(stages, grids, strict=True)]
+        if sum(float(table[2][0]) for table in tables) > budget:
+            return None
+        level = _level(tables, budget)
+        loadings = [float(_at(table, level, 1)) for table in tables]
+        spans = [_around(grid, loading) for grid, loading in zip(grids, loadings, strict=True)]
+    return tuple(s.loading_area / loading for s, loading in zip(stages, loadings, strict=True))
+
+
+def _table(stage: IdealStage, grid: Floats, lots: Floats) -> tuple[Floats, Floats, Floats]:
+    """ln marginal (non-decreasing), loading and demand on the grid's midpoints, its ends included."""
+    spent = stage.demand(grid, lots)
+    area = stage.loading_area / grid
+    marginal = np.maximum.accumulate(np.diff(spent) / -np.diff(area) / stage.weight)
+    middle = np.sqrt(grid[:-1] * grid[1:])
+    loading = np.concatenate([grid[:1], middle, grid[-1:]])
+    log_marginal = np.log(np.maximum(np.concatenate([marginal[:1], marginal, marginal[-1:]]), 1e-300))
+    # Strictly increasing, so that a level has one loading; the steps are below any that matters.
+    return log_marginal + 1e-13 * np.arange(len(loading)), loading, stage.demand(loading, lots)
+
+
+def _at(table: tuple[Floats, Floats, Floats], level: float, column: int) -> float:
+    return float(np.interp(level, table[0], table[column]))
+
+
+def _level(tables: Sequence[tuple[Floats, Floats, Floats]], budget: float) -> float:
+    """The common ln marginal at which the demands add up to the budget, by bisection."""
+    low = min(float(table[0][0]) for table in tables)
+    high = max(float(table[0][-1]) for table in tables)
+    for _ in range(80):
+        middle = 0.5 * (low + high)
+        if sum(_at(table, middle, 2) for table in tables) > budget:
+            high = middle
+        else:
+            low = middle
+    return low
+
+
+def _around(grid: Floats, loading: float) -> tuple[float, float]:
+    place = int(np.searchsorted(grid, loading))
+    return float(grid[max(place - 3, 0)]), float(grid[min(place + 3, len(grid) - 1)])
