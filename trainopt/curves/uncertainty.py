@@ -113,23 +113,38 @@ def _refit(
     model: Floats,
     rng: np.random.Generator,
 ) -> Fit:
+    """The law fitted again to new errors laid over the fitted curve; each run keeps the mean error it had."""
     chosen = np.concatenate(runs)
-    noise = np.concatenate([_blocks(errors[run] - errors[run].mean(), rng) for run in runs])
-    # Each run keeps the mean error it had: that is how far runs of one lot differ.
-    shift = np.concatenate([np.full(len(run), errors[run].mean()) for run in runs])
-    part = replace(
-        readings.at(chosen), log=model[chosen] + (noise + shift) / np.sqrt(readings.weight[chosen])
-    )
+    places = rng.random(len(chosen))
+    noise = np.concatenate([_blocks(errors[run], places) for run in runs])
+    part = replace(readings.at(chosen), log=model[chosen] + noise / np.sqrt(readings.weight[chosen]))
     return fit_law(part, LAWS[fit.law], COARSE, near=fit)
 
 
-def _blocks(errors: Floats, rng: np.random.Generator) -> Floats:
-    """Errors laid anew in blocks of n^⅓ neighbors, drawn from a circle."""
-    n = len(errors)
-    size = max(round(n ** (1.0 / 3.0)), 1)
-    starts = rng.integers(n, size=-(-n // size))
+def _blocks(errors: Floats, places: Floats) -> Floats:
+    """Errors of a run laid anew in blocks of neighbors, cut from a circle at `places` (0 to 1), the mean
+    kept.
+
+    All runs are cut at the same places, so that errors which runs share (the steps of a gauge) stay shared.
+    """
+    n, mean = len(errors), errors.mean()
+    size = _memory(errors - mean)
+    starts = (places[: -(-n // size)] * n).astype(int)
     at = (starts[:, None] + np.arange(size)).ravel()[:n] % n
-    return np.asarray(errors[at])
+    drawn = errors[at]
+    return np.asarray(drawn - drawn.mean() + mean) if size >= n else np.asarray(drawn)
+
+
+def _memory(errors: Floats) -> int:
+    """How many neighbors hang together: twice the first lag at which their correlation is below 0.2, n/4
+    at most.
+    """
+    n = len(errors)
+    power = float(errors @ errors)
+    for lag in range(1, n // 8):
+        if float(errors[lag:] @ errors[:-lag]) < 0.2 * power:
+            return max(min(2 * lag, n // 4), 1)
+    return max(n // 4, 1)
 
 
 def band(
