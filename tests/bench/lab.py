@@ -62,7 +62,7 @@ class Limits:
 class Source:
     """Where a medium was written."""
 
-    def problem(self, loc: tuple[object, ...], text: str) -> Problem:
+    def at(self, loc: tuple[object, ...], text: str) -> Problem:
         return Problem("medium.yaml", 3, f"{'.'.join(map(str, loc))}: {text}")
 
 
@@ -85,7 +85,7 @@ def where(loc: tuple[str, ...], text: str) -> Problem:
 
 
 def reduced(path: Path, **settings: object) -> ReducedRun:
-    return reduce_run(RunEntry(path, **settings), "oat-coarse", where)  # type: ignore[arg-type]
+    return reduce_run(RunEntry(path, **settings), where)  # type: ignore[arg-type]
 
 
 @dataclass(frozen=True)

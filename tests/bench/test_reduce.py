@@ -81,9 +81,7 @@ def test_hold_up_is_subtracted_and_its_readings_left_out(tmp_path: Path) -> None
 
 def test_mass_needs_a_density(tmp_path: Path) -> None:
     path = write_text(tmp_path / "a.csv", GOOD.replace("volume (mL)", "mass (g)"))
-    assert problems(path) == [
-        "medium.yaml:7: : run of 'oat-coarse' records mass; expected `density:`, for example '1.01 kg/L'"
-    ]
+    assert problems(path) == ["medium.yaml:7: : records mass; expected `density:`, for example '1.01 kg/L'"]
     run = reduced(path, density=1.2)
     assert run.loading[5] == pytest.approx(60.0 / 1.2 / 1000.0 / AREA)
 

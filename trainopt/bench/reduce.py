@@ -30,16 +30,16 @@ MOST_POINTS = 2000
 """A logger's run is averaged down to this many readings: a curve needs no more, and averages are quieter."""
 
 
-def reduce_run(run: Run, medium: str, where: Where) -> ReducedRun:
-    """Read and reduce one bench run of `medium`; raises `InputError` with every problem found in it.
+def reduce_run(run: Run, where: Where) -> ReducedRun:
+    """Read and reduce one bench run; raises `InputError` with every problem found in it.
 
     Differential pressure is inlet minus outlet gauge (the inlet's alone where there is no outlet), loading
     the filtrate volume less the hold-up over the area, flux the local slope of volume in time, resistance
     their ratio.
     """
-    table = read_table(run.file, getattr(run, "sheet", None))
+    table = read_table(run.file, run.sheet)
     found = find_columns(table, run.columns)
-    problems = [*found.problems, *_missing_settings(run, medium, found, where)]
+    problems = [*found.problems, *_missing_settings(run, found, where)]
     if problems:
         raise InputError(problems)
     readings = _readings(table, found, problems)
@@ -59,14 +59,14 @@ class _Readings:
     remarks: tuple[tuple[str, tuple[int, int] | None, str], ...]
 
 
-def _missing_settings(run: Run, medium: str, found: Columns, where: Where) -> list[Problem]:
+def _missing_settings(run: Run, found: Columns, where: Where) -> list[Problem]:
     """What the table cannot say and the run must."""
     out = []
     columns = found.found
     if "mass" in columns and "volume" not in columns and run.density is None:
-        out.append(where((), f"run of '{medium}' records mass; expected `density:`, for example '1.01 kg/L'"))
+        out.append(where((), "records mass; expected `density:`, for example '1.01 kg/L'"))
     if not found.pressure_seen and not (run.operation == "constant-pressure" and run.pressure is not None):
-        text = f"run of '{medium}': its file has no pressure column; expected one such as 'pressure (psi)'"
+        text = "has no pressure column; expected one such as 'pressure (psi)'"
         if run.operation == "constant-pressure":
             text += ", or `pressure:` for a run at constant pressure"
         out.append(where(("file",), text))
@@ -74,7 +74,7 @@ def _missing_settings(run: Run, medium: str, found: Columns, where: Where) -> li
     for column, other in ((inlet, outlet), (outlet, inlet)):
         if _absolute(column) and not _absolute(other):
             assert column is not None
-            text = f"run of '{medium}': column '{column.header}' is absolute; expected gauge pressure"
+            text = f"column '{column.header}' is absolute; expected gauge pressure"
             out.append(where(("file",), text + ", or inlet and outlet both absolute"))
     return out
 
@@ -158,7 +158,7 @@ def _reduced(run: Run, readings: _Readings) -> ReducedRun:
         loading=columns["volume"] / run.area,
         flux=flux,
         resistance=resistance,
-        feed_loading=getattr(run, "feed_loading", None),
+        feed_loading=run.feed_loading,
         time_step=readings.steps["time"],
         volume_step=volume_step,
         pressure_step=max((step for role, step in readings.steps.items() if "pressure" in role), default=0.0),
@@ -166,7 +166,7 @@ def _reduced(run: Run, readings: _Readings) -> ReducedRun:
         flags=tuple(flags),
         **columns,
     )
-    return checked(reduced, keep=bool(getattr(run, "keep", False)))
+    return checked(reduced, keep=run.keep)
 
 
 def _averaged(columns: Mapping[str, Floats], block: int) -> dict[str, Floats]:
@@ -186,7 +186,7 @@ def _filtrate(run: Run, readings: _Readings) -> tuple[Floats, float, list[Flag]]
     values, name = readings.values, run.file.name
     role = "volume" if "volume" in values else "mass"
     density = 1.0 if role == "volume" else run.density or 1.0
-    start, assumed = filtrate.tare(values["time"], values[role], getattr(run, "tare", None), role)
+    start, assumed = filtrate.tare(values["time"], values[role], run.tare, role)
     flags = [Flag("assumed", name, None, assumed)] if assumed else []
     volume = (values[role] - start) / density
     if readings.swaps.any():

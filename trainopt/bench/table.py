@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 
 from trainopt.bench.units import unit_of
 from trainopt.errors import InputError, Problem
+from trainopt.files.source import shown_path
 
 Row = tuple[int, list[str]]
 
@@ -58,14 +59,6 @@ class Table:
     def problem(self, line: int, text: str) -> Problem:
         """A problem at a line of this file."""
         return Problem(self.file, int(line), text)
-
-
-def shown_path(path: Path) -> str:
-    """The path as the user would type it: relative where it is below the current directory."""
-    try:
-        return path.relative_to(Path.cwd()).as_posix()
-    except ValueError:
-        return str(path)
 
 
 def read_table(path: Path, sheet: str | None = None) -> Table:

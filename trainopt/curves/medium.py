@@ -37,9 +37,9 @@ def fit_curve(medium: Medium) -> Curve:
     if evidence is None:
         total = sum(int(run.used.sum()) for run in runs)
         text = f"{total} usable readings are too few for law '{medium.curve.law}'; expected a longer run"
-        raise InputError([medium.source.problem(("curve", "runs"), text)])
+        raise InputError([medium.source.at(("curve", "runs"), text)])
     if not evidence.decided:
-        raise InputError([medium.source.problem(("curve", "law"), _undecided(evidence))])
+        raise InputError([medium.source.at(("curve", "law"), _undecided(evidence))])
     return _fitted(medium, runs, evidence, reference)
 
 
@@ -75,10 +75,10 @@ def _reduced_runs(medium: Medium) -> tuple[list[ReducedRun], list[Problem]]:
     for index, run in enumerate(medium.curve.runs):
 
         def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
-            return medium.source.problem(("curve", "runs", index, *loc), text)
+            return medium.source.at(("curve", "runs", index, *loc), text)
 
         try:
-            reduced = reduce_run(run, medium.medium, where)
+            reduced = reduce_run(run, where)
         except InputError as error:
             problems.extend(error.problems)
             continue
@@ -112,7 +112,7 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence, refe
         tested_loading=_tested_loading(runs, lots, np.exp(fit.log_kappa)),
         tested_flux=max(float(np.median(run.flux[run.used])) for run in runs),
         tested_temperature=reference,
-        turbidity_loading=turbidity_loading(runs, limits.turbidity, getattr(limits, "pool_turbidity", None)),
+        turbidity_loading=turbidity_loading(runs, limits.turbidity, limits.pool_turbidity),
         feed_loading=_feed_loading(runs),
         lots=_lot_effects(lots, fit, errors[k:]),
         alternatives=_alternatives(evidence.fits),
@@ -198,7 +198,7 @@ def _given(medium: Medium) -> Curve:
         field = "coefficients" if law.polynomial else "parameters"
         if values[0] > 0.0:
             text += f"; expected `tested: loading` below {pole:.4g} L/m2"
-        raise InputError([medium.source.problem(("curve", field), text)])
+        raise InputError([medium.source.at(("curve", field), text)])
     return Curve(
         medium=medium.medium,
         law=spec.law,
