@@ -1,8 +1,8 @@
 """Text with a unit to canonical floats and back: bar, L, m², h, LMH, L/m², bar/LMH.
 
-A unit written as in the table below converts by one multiplication, without any import, so that a design does not
-wait for a unit library; every other unit of the right dimension goes through pint with a small registry of
-our own. A test holds the table against that registry, and the registry against NIST SP 811.
+A unit written as in the table below converts by one multiplication, without any import, so that a design
+does not wait for a unit library; every other unit of the right dimension goes through pint with a small
+registry of our own. A test holds the table against that registry, and the registry against NIST SP 811.
 """
 
 from __future__ import annotations
@@ -121,8 +121,8 @@ DEFINITIONS = (
     "LMH = 1e-3 * meter / hour = _ = lmh",
     "GFD = gallon / foot ** 2 / day = _ = gfd",
 )
-"""The units that are known, in pint's notation: name = value = symbol = further spellings. No prefixes apply, so
-that a slip such as `ML` for `mL` is an error instead of a factor of 1e9."""
+"""The units that are known, in pint's notation: name = value = symbol = further spellings. No prefixes apply,
+so that a slip such as `ML` for `mL` is an error instead of a factor of 1e9."""
 
 _PRESSURE_UNITS_REFUSED = {"psia": "psi", "bara": "bar"}
 

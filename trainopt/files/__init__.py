@@ -1,1 +1,60 @@
-"""."""
+"""What the user wrote: YAML files to frozen typed objects in canonical units, each problem with file and line."""
+
+from trainopt.files.catalog import Catalog, Holder, Module
+from trainopt.files.check import Checked, check, examine
+from trainopt.files.load import find_root, load_case, load_medium, load_workspace
+from trainopt.files.medium import CurveSpec, Flush, Limits, LotSpec, Medium, Run, Tested, Variability
+from trainopt.files.scenario import (
+    Batch,
+    BlockSpec,
+    Costs,
+    FeedVariability,
+    Fix,
+    Installed,
+    MediumChoice,
+    Product,
+    Pump,
+    ReliabilityBasis,
+    Scenario,
+    StageSpec,
+)
+from trainopt.files.source import Source, file_hash, shown_path
+from trainopt.files.workspace import Case, Workspace
+
+__all__ = [
+    "Batch",
+    "BlockSpec",
+    "Case",
+    "Catalog",
+    "Checked",
+    "Costs",
+    "CurveSpec",
+    "FeedVariability",
+    "Fix",
+    "Flush",
+    "Holder",
+    "Installed",
+    "Limits",
+    "LotSpec",
+    "Medium",
+    "MediumChoice",
+    "Module",
+    "Product",
+    "Pump",
+    "ReliabilityBasis",
+    "Run",
+    "Scenario",
+    "Source",
+    "StageSpec",
+    "Tested",
+    "Variability",
+    "Workspace",
+    "check",
+    "examine",
+    "file_hash",
+    "find_root",
+    "load_case",
+    "load_medium",
+    "load_workspace",
+    "shown_path",
+]
