@@ -5,7 +5,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import Annotated
 
-from pydantic import PrivateAttr
+from pydantic import Field, PrivateAttr
 
 from trainopt.files.fields import Area, Count, Entry, HoldUp, Money, Name, Range, Words
 from trainopt.files.source import Source
@@ -48,7 +48,7 @@ class Catalog(Entry):
     """Currency of every price."""
     modules: dict[str, Module]
     """Module types by name."""
-    holders: dict[str, Holder] = {}
+    holders: dict[str, Holder] = Field(default_factory=dict)
     """Holder types by name; a module that no holder lists needs none."""
 
     _source: Source = PrivateAttr(default=Source(Path(), "(built in Python)", ""))

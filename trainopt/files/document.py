@@ -94,8 +94,8 @@ def read_document(text: str, shown: str) -> Document:
     except yaml.MarkedYAMLError as error:
         builder.problems.append(_syntax_problem(error, text, shown))
         builder.stopped = True
-    except yaml.reader.ReaderError as error:
-        builder.problems.append(_character_problem(error, text, shown))
+    except yaml.reader.ReaderError:
+        builder.problems.append(_character_problem(text, shown))
         builder.stopped = True
     if builder.documents == 0 and not builder.problems:
         builder.problem(0, "is empty; expected keys and values")
@@ -141,15 +141,14 @@ class _Builder:
         elif isinstance(event, yaml.MappingEndEvent | yaml.SequenceEndEvent):
             self._close()
         elif isinstance(event, yaml.AliasEvent):
-            line = event.start_mark.line + 1
-            self.stop(line, f"alias '*{event.anchor}' is not supported; expected the value written out")
+            self.stop(_line(event), f"alias '*{event.anchor}' is not supported; expected the value written out")
         elif isinstance(event, yaml.DocumentStartEvent):
             self.documents += 1
             if self.documents > 1:
-                self.stop(event.start_mark.line + 1, "a second document starts here; expected one per file")
+                self.stop(_line(event), "a second document starts here; expected one per file")
 
     def _scalar(self, event: Any) -> None:
-        line = event.start_mark.line + 1
+        line = _line(event)
         self._refuse_tag(event, line)
         frame = self.stack[-1] if self.stack else None
         if frame is not None and isinstance(frame.items, dict) and frame.key is None:
@@ -192,7 +191,7 @@ class _Builder:
         frame.key = None
 
     def _open(self, event: Any) -> None:
-        line = event.start_mark.line + 1
+        line = _line(event)
         self._refuse_tag(event, line)
         if self.stack and isinstance(self.stack[-1].items, dict) and self.stack[-1].key is None:
             self.stop(line, "a list or mapping stands where a key belongs; expected a name")
@@ -210,6 +209,10 @@ class _Builder:
     def _refuse_tag(self, event: Any, line: int) -> None:
         if event.tag is not None:
             self.problem(line, f"tag '{event.tag}' is not supported; expected a plain value")
+
+
+def _line(event: Any) -> int:
+    return int(event.start_mark.line) + 1
 
 
 def _syntax_problem(error: yaml.MarkedYAMLError, text: str, shown: str) -> Problem:
@@ -240,7 +243,7 @@ def _syntax_hint(what: str) -> str:
     return "expected 'key: value' lines, indented with spaces"
 
 
-def _character_problem(error: yaml.reader.ReaderError, text: str, shown: str) -> Problem:
+def _character_problem(text: str, shown: str) -> Problem:
     bad = next((i for i, letter in enumerate(text) if _unprintable(letter)), 0)
     line = text.count("\n", 0, bad) + 1
     return Problem(shown, line, f"holds a character that YAML does not allow ({text[bad : bad + 1]!r}); expected text")

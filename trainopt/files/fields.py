@@ -9,6 +9,7 @@ from __future__ import annotations
 import difflib
 import math
 import re
+from abc import ABC, abstractmethod
 from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
@@ -56,17 +57,23 @@ def nearest(name: str, known: Iterable[str]) -> str:
     return f"expected one of {', '.join(known[:most])}{more}"
 
 
-class Rule:
-    """How one field is read; `expected` completes the sentence "expected …"."""
+class Rule(ABC):
+    """How one field is read."""
 
     @property
     def expected(self) -> str:
-        """What the field should hold, with an example."""
-        raise TypeError(f"{type(self).__name__} says nothing")
+        """What the field should hold, with an example; completes "expected …"."""
+        return self._expected()
 
     def read(self, value: Any, info: ValidationInfo) -> Any:
-        """The value, or ValueError."""
-        raise TypeError(f"{type(self).__name__} reads nothing")
+        """The value; ValueError says what is wrong with it and what was expected."""
+        return self._read(value, info)
+
+    @abstractmethod
+    def _expected(self) -> str: ...
+
+    @abstractmethod
+    def _read(self, value: Any, info: ValidationInfo, /) -> Any: ...
 
     def __get_pydantic_core_schema__(self, source: Any, handler: GetCoreSchemaHandler) -> CoreSchema:
         return core_schema.with_info_plain_validator_function(self.read)
@@ -112,8 +119,7 @@ class Amount(Rule):
     dimension: str
     range: Range = Range()
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return expected(self.dimension)
 
     @property
@@ -121,7 +127,7 @@ class Amount(Rule):
         """The range in words."""
         return self.range.words(lambda value: show(value, self.dimension))
 
-    def read(self, value: Any, info: ValidationInfo) -> float:
+    def _read(self, value: Any, info: ValidationInfo, /) -> float:
         amount = self._amount(value, info)
         if not math.isfinite(amount):
             raise ValueError(f"{written(value)} is not a finite number; expected {self.expected}")
@@ -146,12 +152,11 @@ class Number(Rule):
     range: Range = Range()
     example: str = "1.5"
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         words = self.range.words()
         return f"a number{' ' + words if words else ''} such as {self.example}"
 
-    def read(self, value: Any, info: ValidationInfo) -> float:
+    def _read(self, value: Any, _info: ValidationInfo, /) -> float:
         if isinstance(value, bool) or not isinstance(value, int | float):
             raise ValueError(f"{written(value)} is not a bare number; expected {self.expected}")
         if not math.isfinite(value) or not self.range.holds(value):
@@ -166,11 +171,10 @@ class Count(Rule):
     range: Range = Range(least=1)
     example: str = "4"
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return f"a whole number {self.range.words()} such as {self.example}"
 
-    def read(self, value: Any, info: ValidationInfo) -> int:
+    def _read(self, value: Any, _info: ValidationInfo, /) -> int:
         if isinstance(value, bool) or not isinstance(value, int) or not self.range.holds(value):
             raise ValueError(f"{written(value)} does not count anything; expected {self.expected}")
         return int(value)
@@ -185,11 +189,10 @@ class Name(Rule):
 
     example: str = "oat-coarse"
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return f"a name of letters, digits, '-', '_' and '.' such as {self.example}"
 
-    def read(self, value: Any, info: ValidationInfo) -> str:
+    def _read(self, value: Any, _info: ValidationInfo, /) -> str:
         text = as_text(value)
         if text is None or not _NAME.fullmatch(text):
             raise ValueError(f"{written(value)} is not a name; expected {self.expected}")
@@ -203,11 +206,10 @@ class Words(Rule):
     example: str
     empty: bool = False
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return f"text such as '{self.example}'"
 
-    def read(self, value: Any, info: ValidationInfo) -> str:
+    def _read(self, value: Any, _info: ValidationInfo, /) -> str:
         text = as_text(value)
         if text is None or (not text.strip() and not self.empty):
             raise ValueError(f"{written(value)} is not text; expected {self.expected}")
@@ -220,11 +222,10 @@ class Choice(Rule):
 
     words: tuple[str, ...]
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return f"one of {', '.join(self.words)}"
 
-    def read(self, value: Any, info: ValidationInfo) -> str:
+    def _read(self, value: Any, _info: ValidationInfo, /) -> str:
         if not isinstance(value, str):
             raise ValueError(f"{written(value)} is not one of its words; expected {self.expected}")
         if value not in self.words:
@@ -236,11 +237,10 @@ class Choice(Rule):
 class Flag(Rule):
     """true or false."""
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return "true or false"
 
-    def read(self, value: Any, info: ValidationInfo) -> bool:
+    def _read(self, value: Any, _info: ValidationInfo, /) -> bool:
         if not isinstance(value, bool):
             raise ValueError(f"{written(value)} is neither true nor false; expected {self.expected}")
         return value
@@ -252,11 +252,10 @@ class FilePath(Rule):
 
     example: str = "../bench/oat-coarse-a.csv"
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return f"a path relative to this file such as {self.example}"
 
-    def read(self, value: Any, info: ValidationInfo) -> Path:
+    def _read(self, value: Any, info: ValidationInfo, /) -> Path:
         if isinstance(value, Path):
             return value
         text = as_text(value)

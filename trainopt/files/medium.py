@@ -70,11 +70,10 @@ COLUMN_ROLES = (
 class Parameters(Rule):
     """A law's parameters by name: R0 a resistance, the k's per loading, n a bare number from 0 to 2."""
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return "a mapping such as {R0: 0.0008 bar/LMH, k: 0.012 m2/L}"
 
-    def read(self, value: Any, info: ValidationInfo) -> dict[str, float]:
+    def _read(self, value: Any, info: ValidationInfo, /) -> dict[str, float]:
         if not isinstance(value, dict) or not value:
             raise ValueError(f"{written(value)} is not a law's parameters; expected {self.expected}")
         return _each({key: self.rule(key) for key in value}, value, info)
@@ -93,11 +92,10 @@ class Parameters(Rule):
 class Coefficients(Rule):
     """A polynomial's coefficients c0, c1, c2 (, c3), each with its unit, bar/LMH per (L/m2)^i."""
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return "three or four such as [0.0008 bar/LMH, 1e-5 bar/LMH/(L/m2), 1e-7 bar/LMH/(L/m2)^2]"
 
-    def read(self, value: Any, info: ValidationInfo) -> tuple[float, ...]:
+    def _read(self, value: Any, info: ValidationInfo, /) -> tuple[float, ...]:
         if not isinstance(value, tuple | list) or not 3 <= len(value) <= 4:
             raise ValueError(f"{written(value)} is not a polynomial's coefficients; expected {self.expected}")
         rules: dict[int, Rule] = {0: Amount("resistance", Range(above=0.0))}
@@ -126,17 +124,16 @@ def _each(rules: dict[Key, Rule], values: dict[Key, Any], info: ValidationInfo) 
 class Tare(Rule):
     """What the balance or the cylinder showed before any filtrate: a mass (kg) or a volume (L)."""
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return "a mass or a volume such as '35 g' or '5 mL', as the run records it"
 
-    def read(self, value: Any, info: ValidationInfo) -> float:
+    def _read(self, value: Any, info: ValidationInfo, /) -> float:
         try:
-            return Amount("mass", Range(least=0.0)).read(value, info)
+            return float(Amount("mass", Range(least=0.0)).read(value, info))
         except ValueError:
             pass
         try:
-            return Amount("volume", Range(least=0.0)).read(value, info)
+            return float(Amount("volume", Range(least=0.0)).read(value, info))
         except ValueError:
             raise ValueError(f"{written(value)} is no tare; expected {self.expected}") from None
 
@@ -145,11 +142,10 @@ class Tare(Rule):
 class ColumnNames(Rule):
     """The headers of the run's columns by what they hold."""
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return 'a mapping such as {time: "t [min]", volume: "V [mL]", pressure: "P [psi]"}'
 
-    def read(self, value: Any, info: ValidationInfo) -> dict[str, str]:
+    def _read(self, value: Any, info: ValidationInfo, /) -> dict[str, str]:
         if not isinstance(value, dict) or not value:
             raise ValueError(f"{written(value)} names no columns; expected {self.expected}")
         faults: list[tuple[tuple[str | int, ...], str]] = []

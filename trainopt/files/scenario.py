@@ -95,11 +95,10 @@ class Fix(Entry):
 class CountRange(Rule):
     """Fewest and most modules of a stage."""
 
-    @property
-    def expected(self) -> str:
+    def _expected(self) -> str:
         return "the fewest and the most modules such as [8, 16]"
 
-    def read(self, value: Any, info: ValidationInfo) -> tuple[int, int]:
+    def _read(self, value: Any, info: ValidationInfo, /) -> tuple[int, int]:
         if not isinstance(value, tuple | list) or len(value) != 2:
             raise ValueError(f"{written(value)} is not a range; expected {self.expected}")
         low, high = (Count().read(part, info) for part in value)
