@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from trainopt.curves.curve import Curve, LotCurve
 from trainopt.curves.viscosity import viscosity_ratio
 from trainopt.train.options import Cap, Duty, inside_caps, joined, module_options, take, undominated
-from trainopt.train.problem import Block, Candidate, DesignProblem, Dropped, Options, Stage
+from trainopt.train.problem import Block, Candidate, DesignProblem, Dropped, ModuleSize, Options, Stage
 
 if TYPE_CHECKING:
     from trainopt.files import BlockSpec, Case, Medium, MediumChoice, StageSpec
@@ -110,6 +110,7 @@ def _candidate(
     flux_limit = medium.limits.flux if medium.limits.flux is not None else curve.tested_flux
     parts: list[Options] = []
     dropped: list[Dropped] = []
+    sizes: list[ModuleSize] = []
     for name, module in sorted(catalog.modules.items()):
         counts = _counts(stage, name, module.max_count) if module.medium == medium.medium else None
         if counts is None:
@@ -117,6 +118,7 @@ def _candidate(
         options = module_options(medium, name, catalog, case.scenario.costs, duty, counts)
         kept, left_out = inside_caps(options, cap, curves, duty.operation, flux_limit, duty.volume)
         parts.append(kept)
+        sizes.append(ModuleSize(name, module.area, int(counts[0]), int(counts[-1])))
         dropped.extend(left_out)
     return Candidate(
         medium=medium.medium,
@@ -130,6 +132,7 @@ def _candidate(
         curves=curves,
         options=_by_area(joined(parts)),
         dropped=tuple(dropped),
+        modules=tuple(sizes),
     )
 
 

@@ -56,6 +56,16 @@ class Dropped:
 
 
 @dataclass(frozen=True)
+class ModuleSize:
+    """One module type a candidate can be bought in: area of one in m², lowest and highest count allowed."""
+
+    name: str
+    area: float
+    low: int
+    high: int
+
+
+@dataclass(frozen=True)
 class Candidate:
     """One medium that may serve in one stage.
 
@@ -63,7 +73,7 @@ class Candidate:
     Ratings in bar, `flux_limit` in LMH on the installed area, `loading_cap` the highest design loading L in L/m²
     with `cap_reason` ("loading-tested", "loading-limit", "turbidity") saying which limit it comes from.
     `curves`: the curve of each lot of the problem, in the problem's order of lots.
-    `options` are all those inside the caps, undominated ones only when the problem was pruned.
+    `modules` are the sizes on offer, `options` all those inside the caps, undominated ones only when the problem was pruned.
     """
 
     medium: str
@@ -77,6 +87,14 @@ class Candidate:
     curves: tuple[LotCurve, ...]
     options: Options
     dropped: tuple[Dropped, ...]
+    modules: tuple[ModuleSize, ...] = ()
+
+    @property
+    def largest_area(self) -> float:
+        """The most area in m² that the catalog offers of it, loading caps aside (0: none)."""
+        if self.modules:
+            return max(one.area * one.high for one in self.modules)
+        return float(self.options.area.max(initial=0.0))
 
 
 @dataclass(frozen=True)

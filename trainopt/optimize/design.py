@@ -1,0 +1,160 @@
+"""A case, or a problem in plain numbers, to its proven design and what it is compared with."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+from trainopt.curves.curve import Curve
+from trainopt.curves.medium import fit_curve
+from trainopt.errors import InputError, Problem
+from trainopt.optimize.describe import Picked, cost_parts, describe, total_area, total_time
+from trainopt.optimize.even_split import even_split
+from trainopt.optimize.margins import common_safety_factor
+from trainopt.optimize.reasons import reasons
+from trainopt.optimize.recheck import recheck
+from trainopt.optimize.search import Found, SolverOptions, best_route
+from trainopt.train.build import build_problem, prune, used_media
+from trainopt.train.notices import case_notices, design_notices
+from trainopt.train.problem import DesignProblem
+from trainopt.train.results import Design, EvenSplit, Notice, Objective, Saving
+
+if TYPE_CHECKING:
+    from trainopt.files import Case
+
+
+@dataclass(frozen=True)
+class Prepared:
+    """A case ready to be designed: its curves, its problem with all options, and the notices from its files."""
+
+    curves: Mapping[str, Curve]
+    problem: DesignProblem
+    notices: tuple[Notice, ...]
+    inputs: Mapping[str, str]
+
+
+def fit_curves(case: Case) -> dict[str, Curve]:
+    """The curve of every medium that the scenario may use; raises `InputError` with the problems of all of them."""
+    curves: dict[str, Curve] = {}
+    problems: list[Problem] = []
+    for name in used_media(case):
+        try:
+            curves[name] = fit_curve(case.workspace.media[name])
+        except InputError as error:
+            problems.extend(error.problems)
+    if problems:
+        raise InputError(problems)
+    return curves
+
+
+def prepare(case: Case, objective: str | None = None) -> Prepared:
+    """Fit the curves of a case and build its problem."""
+    curves = fit_curves(case)
+    problem = build_problem(case, curves, objective)
+    return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs)
+
+
+def design(
+    what: Case | Prepared | DesignProblem,
+    objective: str | None = None,
+    time_limit: float | None = None,
+    solver: SolverOptions | None = None,
+) -> Design:
+    """The least area or cost that meets every limit, proven, marched through its batch, beside the even split.
+
+    `objective` ("area", "cost") overrides the scenario's, for a case; `time_limit` in s. Raises `InputError` for what is wrong
+    in the files and `DefectError` where the design fails its re-check.
+    """
+    if isinstance(what, DesignProblem):
+        prepared = Prepared({}, what, (), {})
+    elif isinstance(what, Prepared):
+        prepared = what
+    else:
+        prepared = prepare(what, objective)
+    full = prepared.problem
+    problem = prune(full)
+    found = best_route(problem, solver or SolverOptions(time_limit=time_limit))
+    if found.route is None or found.times is None:
+        return _no_design(prepared, found)
+    recheck(problem, found.route, found.times)
+    picked = Picked(full, problem, found.route, found.times)
+    parts, area = cost_parts(problem, found.route, found.times), total_area(found.route)
+    blocks = describe(picked)
+    even = even_design(full)
+    return Design(
+        scenario=full.title,
+        status=found.status,
+        objective=Objective(full.objective, found.objective, found.bound, _gap(found)),
+        area=area,
+        cost=parts.total,
+        currency=full.currency,
+        time=total_time(problem, found.times),
+        cost_parts=parts,
+        blocks=blocks,
+        safety_factor=common_safety_factor(problem, found.route, found.times),
+        even_split=even,
+        saving=_saving(area, parts.total, even),
+        warnings=(
+            *prepared.notices,
+            *(design_notices(full, prepared.curves, blocks) if prepared.curves else ()),
+        ),
+        inputs=prepared.inputs,
+    )
+
+
+def even_design(full: DesignProblem) -> EvenSplit:
+    """The even split of a problem as a result."""
+    pick = even_split(full)
+    if pick.route is None:
+        return EvenSplit("infeasible", None, None, None, None, (), pick.text)
+    parts = cost_parts(full, pick.route, pick.times)
+    return EvenSplit(
+        status="optimal",
+        area=total_area(pick.route),
+        cost=parts.total,
+        cost_parts=parts,
+        time=total_time(full, pick.times),
+        blocks=describe(Picked(full, full, pick.route, pick.times)),
+    )
+
+
+def _no_design(prepared: Prepared, found: Found) -> Design:
+    """No pick: proven impossible, or stopped before any was found."""
+    full = prepared.problem
+    status = "limit" if found.status == "limit" else "infeasible"
+    return Design(
+        scenario=full.title,
+        status=status,
+        objective=None,
+        area=None,
+        cost=None,
+        currency=full.currency,
+        time=None,
+        cost_parts=None,
+        blocks=(),
+        safety_factor=None,
+        even_split=None,
+        saving=None,
+        warnings=prepared.notices,
+        reasons=reasons(full) if status == "infeasible" else (),
+        inputs=prepared.inputs,
+    )
+
+
+def _gap(found: Found) -> float:
+    """Relative distance of the bound from the value."""
+    if found.status == "optimal" or found.objective == found.bound:
+        return 0.0
+    return abs(found.objective - found.bound) / max(abs(found.objective), 1e-12)
+
+
+def _saving(area: float, cost: float, even: EvenSplit) -> Saving | None:
+    if even.area is None or even.cost is None:
+        return None
+    return Saving(
+        area=even.area - area,
+        area_percent=100.0 * (even.area - area) / even.area,
+        cost=even.cost - cost,
+        cost_percent=100.0 * (even.cost - cost) / even.cost if even.cost > 0.0 else None,
+    )

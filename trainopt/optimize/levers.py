@@ -1,0 +1,175 @@
+"""Whether any design exists at all, in closed form, with one limit or another moved.
+
+Of each medium the largest area on offer has the least demand and the shortest time, so that a design exists exactly if
+one exists with the largest areas on some allowed route: no solver is needed to say what would make one possible.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
+from functools import cached_property
+
+import numpy as np
+
+from trainopt.optimize.even_split import routes
+from trainopt.optimize.index import Index, Node
+from trainopt.train.options import CAP_SLACK, demand
+from trainopt.train.problem import Block, DesignProblem, Floats
+
+ROOM = 1e-9
+"""Relative room for rounding where times are held against limits."""
+
+
+@dataclass(frozen=True)
+class Setting:
+    """The limits of a problem, any of which may be moved: volume L, time h, safety factor; per block the pressure in bar;
+    per node the area in m² on offer, the loading cap in L/m² and the flux limit in LMH; `lifted` names limits that are off:
+    ("pump", block), ("rating", node)."""
+
+    volume: float
+    time: float
+    safety_factor: float
+    pressure: tuple[float, ...]
+    area: Mapping[int, float]
+    cap: Mapping[int, float]
+    flux: Mapping[int, float]
+    lifted: frozenset[tuple[str, int]] = field(default_factory=frozenset)
+
+
+class Levers:
+    """A problem's allowed routes with the largest areas on offer; answers whether a setting admits a design."""
+
+    def __init__(self, problem: DesignProblem) -> None:
+        self.problem = problem
+        self.index = all_candidates(problem)
+
+    @cached_property
+    def routes(self) -> tuple[tuple[int, ...], ...]:
+        """Allowed routes as places of nodes."""
+        places = {id(node): n for n, node in enumerate(self.index.nodes)}
+        return tuple(tuple(places[id(node)] for node in nodes) for nodes in routes(self.index))
+
+    @cached_property
+    def setting(self) -> Setting:
+        """The limits as they stand."""
+        problem, nodes = self.problem, self.index.nodes
+        return Setting(
+            volume=problem.volume,
+            time=problem.time,
+            safety_factor=problem.safety_factor,
+            pressure=tuple(block.pressure for block in problem.blocks),
+            area={n: node.candidate.largest_area for n, node in enumerate(nodes)},
+            cap={n: node.candidate.loading_cap for n, node in enumerate(nodes)},
+            flux={n: node.candidate.flux_limit for n, node in enumerate(nodes)},
+        )
+
+    def possible(self, setting: Setting) -> bool:
+        """Whether some route admits a design."""
+        spent = {n: self._spent(setting, n) for n in range(len(self.index.nodes))}
+        return any(self._route_possible(setting, route, spent) for route in self.routes)
+
+    def _spent(self, setting: Setting, n: int) -> Floats | None:
+        """D per lot of a node at the area on offer, bar·h; None where its loading cap cannot be met."""
+        candidate = self.index.nodes[n].candidate
+        area = setting.area[n]
+        if area <= 0.0:
+            return None
+        loading = setting.safety_factor * setting.volume / (candidate.scale_up * area)
+        if loading > setting.cap[n] * (1.0 + CAP_SLACK):
+            return None
+        operation = self.problem.blocks[self.index.nodes[n].block].operation
+        spent = demand(candidate.curves, operation, np.array([loading]))[:, 0]
+        return spent if np.isfinite(spent).all() else None
+
+    def _route_possible(self, setting: Setting, route: tuple[int, ...], spent: Mapping[int, Floats | None]) -> bool:
+        total = 0.0
+        for b, block in enumerate(self.problem.blocks):
+            here = [n for n in route if self.index.nodes[n].block == b]
+            least = self._least_time(setting, b, block, here, spent)
+            pump = ("pump", b) not in setting.lifted and block.min_flow > 0.0
+            most = setting.volume / block.min_flow if pump else math.inf
+            if not least <= most * (1.0 + ROOM):
+                return False
+            if self.problem.schedule == "sequential":
+                total += least + block.setup
+            else:
+                total = max(total, least + block.setup)
+        return total <= setting.time * (1.0 + ROOM)
+
+    def _least_time(
+        self, setting: Setting, b: int, block: Block, here: list[int], spent: Mapping[int, Floats | None]
+    ) -> float:
+        """Shortest time of a block, h (model.md, section 4); infinite where it cannot run."""
+        least = 0.0 if ("pump", b) in setting.lifted else setting.volume / block.max_flow
+        demands = [spent[n] for n in here]
+        known = [d for d in demands if d is not None]
+        if len(known) < len(demands):
+            return math.inf
+        line = block.line * setting.volume
+        total = (float(np.sum(known, axis=0).max()) if known else 0.0) + line
+        least = max(least, _ratio(total, setting.pressure[b] - block.static))
+        for k, n in enumerate(here):
+            one = self.index.nodes[n].candidate
+            least = max(least, _ratio(setting.volume, setting.area[n] * setting.flux[n]))
+            if ("rating", n) in setting.lifted:
+                continue
+            if block.operation == "constant-flow":
+                downstream = float(np.sum(known[k:], axis=0).max()) + line
+                least = max(least, _ratio(float(known[k].max()), one.differential_pressure))
+                least = max(least, _ratio(downstream, one.inlet_pressure - block.static))
+            elif setting.pressure[b] - block.static > min(one.differential_pressure, one.inlet_pressure - block.static):
+                return math.inf
+        return least
+
+
+def _ratio(need: float, have: float) -> float:
+    if need <= 0.0:
+        return 0.0
+    return need / have if have > 0.0 else math.inf
+
+
+def all_candidates(problem: DesignProblem) -> Index:
+    """An index with a node for every candidate, also those without an option inside their caps."""
+    nodes: list[Node] = []
+    place = 0
+    for b, block in enumerate(problem.blocks):
+        for i, stage in enumerate(block.stages):
+            nodes += [Node(b, i, place, stage, candidate, range(0)) for candidate in stage.candidates]
+            place += 1
+    return Index(problem, tuple(nodes))
+
+
+def moved(setting: Setting, name: str, key: int, value: float) -> Setting:
+    """The setting with one entry of a per-node or per-block limit replaced."""
+    table = getattr(setting, name)
+    if isinstance(table, tuple):
+        return replace(setting, **{name: tuple(value if k == key else v for k, v in enumerate(table))})  # type: ignore[arg-type]
+    return replace(setting, **{name: {**table, key: value}})  # type: ignore[arg-type]
+
+
+def nearest(levers: Levers, change: object, start: float, direction: int) -> float | None:
+    """The value nearest to `start`, upward (+1) or downward (−1), at which a design exists; None where none does.
+
+    `change(value)` is the setting with that value. Monotone: once possible, further is possible too.
+    """
+    assert callable(change)
+    near = start
+    far = start
+    for _ in range(80):
+        far = far * 2.0 if direction > 0 else far / 2.0
+        if levers.possible(change(far)):
+            break
+        near = far
+    else:
+        return None
+    for _ in range(200):
+        middle = 0.5 * (near + far)
+        if abs(far - near) <= 1e-12 * abs(far) or middle in (near, far):
+            break
+        if levers.possible(change(middle)):
+            far = middle
+        else:
+            near = middle
+    return far
