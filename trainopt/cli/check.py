@@ -14,14 +14,14 @@ from trainopt.cli.status import Status, say
 def check(
     paths: Annotated[
         list[Path],
-        typer.Argument(metavar="PATH...", help="Workspace folders, scenario, medium or catalog files."),
+        typer.Argument(metavar="PATH...", help="Workspace folders, scenario, medium, catalog or bench files."),
     ],
 ) -> Status:
     """Name every problem in the files.
 
     All of them at once, one line each, with file and line. Nothing is designed.
     """
-    from trainopt.files import check as check_files
+    from trainopt.curves.check import check as check_files
 
     problems, warnings = check_files(paths)
     warn(warnings)

@@ -52,7 +52,6 @@ def curve(
     if target is not None:
         with progress("drawing"):
             from trainopt.files.write import write_bytes_atomic
-
             from trainopt.report.curve_figure import curve_figure
             from trainopt.report.picture import picture_bytes
 

@@ -8,7 +8,7 @@ from typing import Annotated
 
 import typer
 
-from trainopt.cli.options import ObjectiveKind, Units, warn
+from trainopt.cli.options import REPORTS, ObjectiveKind, Units, output_file, write_report
 from trainopt.cli.status import Status
 from trainopt.cli.terminal import color, progress, width
 
@@ -33,19 +33,32 @@ def design(
             min=0.0, metavar="S", help="Stop the search after so many seconds, with the best found."
         ),
     ] = None,
+    report: Annotated[
+        Path | None,
+        typer.Option(metavar="FILE", help="Write the design report too, as .html, .xlsx or .json."),
+    ] = None,
+    force: Annotated[bool, typer.Option("--force", help="Replace the report if it exists.")] = False,
 ) -> Status:
     """Name the modules to buy for a scenario.
 
     The installed area or the cost per batch is least, proven optimal, and stands beside what the even
     split of pressure and time would have bought.
     """
+    kind = None if objective is None else objective.value
+    target = None if report is None else output_file(report, REPORTS, force)
     with progress("designing"):
         from trainopt.files import load_case
-        from trainopt.optimize import design as find_design
 
         case = load_case(scenario)
-        warn(case.warnings)
-        result = find_design(case, objective=objective and objective.value, time_limit=time_limit)
+        if target is None:
+            from trainopt.optimize import design as find_design
+
+            result, dossier = find_design(case, objective=kind, time_limit=time_limit), None
+        else:
+            from trainopt.report.gather import gather
+
+            dossier = gather(case, kind, time_limit)
+            result = dossier.design
     if json:
         from trainopt.report.json import design_document, dumps
 
@@ -54,4 +67,6 @@ def design(
         from trainopt.report.text import design_text
 
         sys.stdout.write(design_text(result, units.value, width(), color()))
+    if target is not None and dossier is not None:
+        write_report(dossier, target, units.value, force)
     return STATUS[result.status]

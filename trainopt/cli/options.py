@@ -10,6 +10,10 @@ if TYPE_CHECKING:
     from collections.abc import Iterable
 
     from trainopt.errors import Problem
+    from trainopt.report.dossier import Dossier
+
+REPORTS = (".html", ".xlsx", ".json")
+"""Kinds of report files."""
 
 
 class Units(StrEnum):
@@ -53,3 +57,16 @@ def output_file(path: Path, suffixes: tuple[str, ...], force: bool) -> Path:
     if path.exists() and not force:
         raise InputError([Problem(str(path), 0, "exists already; use --force to replace it")])
     return path
+
+
+def write_report(dossier: Dossier, target: Path, units: str, force: bool) -> None:
+    """Write the report in the kind that the target's suffix names, and say so."""
+    from trainopt.cli.status import say
+    from trainopt.cli.terminal import progress
+
+    with progress("writing the report"):
+        from trainopt.files.write import write_bytes_atomic
+        from trainopt.report.render import report_bytes
+
+        write_bytes_atomic(target, report_bytes(dossier, target.suffix, units), overwrite=force)
+    say(f"wrote {target}")

@@ -10,6 +10,7 @@ import typer
 from trainopt.cli.check import check
 from trainopt.cli.curve import curve
 from trainopt.cli.design import design
+from trainopt.cli.report import report
 from trainopt.cli.status import guarded
 
 EXIT_STATUSES = (
@@ -46,5 +47,5 @@ def everywhere(
     """Options before any command."""
 
 
-for command in (design, curve, check):
+for command in (design, curve, check, report):
     program.command()(guarded(command))

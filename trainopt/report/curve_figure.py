@@ -30,12 +30,8 @@ def curve_figure(curve: Curve, units: str = "bar") -> Figure:
         _excluded(axes, curve, factor)
         _pooled(axes, curve, factor)
         if curve.turbidity_loading is not None:
-            axes.axvline(
-                curve.turbidity_loading, color=BRICK, linestyle="--", label="turbidity limit reached"
-            )
-        axes.set_title(
-            f"{plain(curve.medium)}: {curve.law}, tested to {significant(curve.tested_loading)} L/m²"
-        )
+            axes.axvline(curve.turbidity_loading, color=BRICK, linestyle="--", label="turbidity limit reached")
+        axes.set_title(f"{plain(curve.medium)}: {curve.law}, tested to {significant(curve.tested_loading)} L/m²")
         axes.set_xlabel("Loading, L/m²")
         axes.set_ylabel(f"Resistance, {units}/LMH")
         axes.set_xlim(left=0.0)

@@ -59,9 +59,7 @@ def _readings(page: Page, run: str, points: Sequence[Point], units: str) -> None
         )
         for point in points
     ]
-    page.table(
-        ("Left out", "Row", "Loading\nL/m²", "Flux\nLMH", f"Resistance\n{units}/LMH", "Turbidity\nNTU"), rows
-    )
+    page.table(("Left out", "Row", "Loading\nL/m²", "Flux\nLMH", f"Resistance\n{units}/LMH", "Turbidity\nNTU"), rows)
 
 
 def _parameters(page: Page, curve: Curve, units: str) -> None:

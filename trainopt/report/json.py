@@ -15,6 +15,7 @@ from trainopt.version import __version__
 
 if TYPE_CHECKING:
     from trainopt.curves.curve import Curve
+    from trainopt.report.dossier import Dossier
     from trainopt.train.results import BlockDesign, CostParts, Design, EvenSplit, Saving, StageDesign
 
 Document = dict[str, Any]
@@ -48,9 +49,7 @@ def design_document(design: Design) -> Document:
         "inputs": dict(design.inputs),
     }
     if design.status == "infeasible":
-        document["reasons"] = [
-            {"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons
-        ]
+        document["reasons"] = [{"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons]
     return document
 
 
@@ -171,6 +170,45 @@ def curve_document(curve: Curve) -> Document:
                 "text": flag.text,
             }
             for flag in curve.flags
+        ],
+    }
+
+
+def report_document(dossier: Dossier) -> Document:
+    """A design with its curves and the course of its batch, as the document `trainopt.report/1`."""
+    return {
+        "schema": "trainopt.report/1",
+        "date": dossier.date,
+        "versions": dict(dossier.versions),
+        "options": dict(dossier.options),
+        "batch": {"volume_L": dossier.volume, "time_h": dossier.time_allowed, "schedule": dossier.schedule},
+        "safety_factor_asked_for": dossier.safety_factor,
+        "lots": list(dossier.lots),
+        "assumptions": list(dossier.assumptions),
+        "design": design_document(dossier.design),
+        "curves": [curve_document(curve) for _, curve in sorted(dossier.curves.items())],
+        "stage_loadings": [
+            {
+                "stage": stage.stage,
+                "loading_L_m2": stage.loading,
+                "derated_loading_L_m2": stage.design_loading,
+                "allowed_loading_L_m2": stage.cap,
+                "allowed_because_of": stage.cap_words,
+            }
+            for stage in dossier.stage_curves
+        ],
+        "courses": [
+            {
+                "block": course.block,
+                "lot": course.lot,
+                "worst_lot": course.worst,
+                "derated": course.derated,
+                "limit_bar": course.limit,
+                "time_h": course.time.tolist(),
+                "pressure_bar": course.total.tolist(),
+                "stages": [{"stage": name, "pressure_bar": values.tolist()} for name, values in course.stages],
+            }
+            for course in dossier.courses
         ],
     }
 

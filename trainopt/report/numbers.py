@@ -12,7 +12,7 @@ NONE = "–"
 PRESSURE_UNITS = {"bar": 1.0, "psi": 14.503773773020923, "kPa": 100.0}
 """Units of pressure on offer and how many of each make a bar (1 psi = 6.894757e3 Pa, NIST SP 811)."""
 
-_PRESSURE_DECIMALS = {"bar": 2, "psi": 1, "kPa": 0}
+PRESSURE_DECIMALS = {"bar": 2, "psi": 1, "kPa": 0}
 
 
 def fixed(value: float | None, decimals: int) -> str:
@@ -79,7 +79,7 @@ class Pressure:
 
     def number(self, bar: float | None) -> str:
         """A pressure given in bar, without its unit."""
-        return NONE if bar is None else fixed(bar * PRESSURE_UNITS[self.unit], _PRESSURE_DECIMALS[self.unit])
+        return NONE if bar is None else fixed(bar * PRESSURE_UNITS[self.unit], PRESSURE_DECIMALS[self.unit])
 
     def text(self, bar: float | None) -> str:
         """A pressure given in bar, with its unit."""

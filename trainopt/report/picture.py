@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import warnings
 from io import BytesIO
 from typing import TYPE_CHECKING
 
@@ -21,6 +22,8 @@ def picture_bytes(figure: Figure, suffix: str) -> bytes:
     """The figure as ".svg" (text stays text), ".png" or ".pdf"."""
     kind = suffix.lower().lstrip(".")
     out = BytesIO()
-    with styled():
+    with styled(), warnings.catch_warnings():
+        # A letter that the font lacks is left to the reader's own fonts.
+        warnings.filterwarnings("ignore", message="Glyph .* missing from font")
         figure.savefig(out, format=kind, dpi=160, metadata=_METADATA[kind])
     return out.getvalue()

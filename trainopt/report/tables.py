@@ -48,9 +48,7 @@ class Page:
             row.add_row(Text("-", style=style), Text(plain(text), style=style))
             self.parts.append(Padding(row, (0, 0, 0, 2)))
 
-    def table(
-        self, columns: Sequence[str], rows: Sequence[Sequence[str]], left: int = 1, total: bool = False
-    ) -> None:
+    def table(self, columns: Sequence[str], rows: Sequence[Sequence[str]], left: int = 1, total: bool = False) -> None:
         """A table; the first `left` columns hold words and may wrap, the others numbers, set to the right.
 
         A heading `Area\\nm²` has its unit in a line of its own. `total` sets the last row off.

@@ -96,9 +96,7 @@ def _bill(page: Page, design: Design) -> None:
     count = str(sum(stage.count for stage in stages))
     rows.append(("total", "", "", "", count, areas[-1], fixed(price, 0)))
     currency = f"\n{design.currency}" if design.currency else ""
-    page.table(
-        ("Stage", "Module", "Medium", "Holders", "Count", "Area\nm²", f"Price{currency}"), rows, 4, True
-    )
+    page.table(("Stage", "Module", "Medium", "Holders", "Count", "Area\nm²", f"Price{currency}"), rows, 4, True)
 
 
 def _stages(page: Page, blocks: tuple[BlockDesign, ...], pressure: Pressure) -> None:
@@ -241,7 +239,6 @@ def _reasons(page: Page, design: Design) -> None:
     if needs:
         page.heading("What would do, each change alone")
         rows = [
-            (name, significant(value, 4) if value is not None else "no value alone is enough")
-            for name, value in needs
+            (name, significant(value, 4) if value is not None else "no value alone is enough") for name, value in needs
         ]
         page.table(("Field", "Value"), rows)
