@@ -15,6 +15,7 @@ from typing import TYPE_CHECKING
 from trainopt.version import __version__
 
 if TYPE_CHECKING:
+    from trainopt.curves.check import check as check
     from trainopt.curves.curve import Curve as Curve
     from trainopt.curves.medium import fit_curve as fit_curve
     from trainopt.errors import DefectError as DefectError
@@ -22,7 +23,6 @@ if TYPE_CHECKING:
     from trainopt.errors import Problem as Problem
     from trainopt.files import Case as Case
     from trainopt.files import Workspace as Workspace
-    from trainopt.files import check as check
     from trainopt.files import load_case as load_case
     from trainopt.files import load_medium as load_medium
     from trainopt.files import load_workspace as load_workspace
@@ -39,7 +39,7 @@ _HOMES = {
     "InputError": "trainopt.errors",
     "Problem": "trainopt.errors",
     "Workspace": "trainopt.files",
-    "check": "trainopt.files",
+    "check": "trainopt.curves.check",
     "curve_document": "trainopt.report.json",
     "design": "trainopt.optimize",
     "design_document": "trainopt.report.json",

@@ -32,13 +32,13 @@ YAML_SUFFIXES = (".yaml", ".yml")
 class Checked:
     """What was looked at: its problems and warnings, and the media whose bench runs are still to be read.
 
-    `runs`: bench files that were asked for by name; `media` by path.
+    `media` by path; `runs`: bench files that were asked for by name, with the media that name them.
     """
 
     problems: set[Problem] = field(default_factory=set)
     warnings: set[Problem] = field(default_factory=set)
     media: dict[Path, Medium] = field(default_factory=dict)
-    runs: set[Path] = field(default_factory=set)
+    runs: dict[Path, list[Medium]] = field(default_factory=dict)
 
     def problem(self, path: Path, text: str) -> None:
         """A problem of a file as a whole."""
@@ -114,10 +114,10 @@ def _bench_file(path: Path, checked: Checked) -> None:
     if not path.is_file():
         checked.problem(path, "no such file; expected a bench run")
         return
-    checked.runs.add(path.resolve())
+    target = path.resolve()
     found = read_workspace(find_root(path))
-    named = [m for m in found.media.values() if any(run.file == path.resolve() for run in m.curve.runs)]
-    checked.media.update({medium.source.path: medium for medium in named})
+    named = [m for m in found.media.values() if any(run.file == target for run in m.curve.runs)]
+    checked.runs[target] = named
     if not named:
         checked.problem(path, "no medium names this run; expected it under `runs:` of a medium file")
 

@@ -1,0 +1,55 @@
+"""Every problem in the files that a path stands for, bench runs and curves included.
+
+`trainopt.files.check` sees the YAML alone; this one also reads every run that the media name and fits their curves,
+so that what it passes cannot fail as wrong input later.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from pathlib import Path
+
+from trainopt.bench.reduce import reduce_run
+from trainopt.curves.medium import fit_curve
+from trainopt.errors import InputError, Problem
+from trainopt.files import Medium, examine
+
+
+def check(paths: Iterable[Path | str]) -> tuple[tuple[Problem, ...], tuple[Problem, ...]]:
+    """Problems and warnings of the files that `paths` stand for, sorted by file and line; never raises for them.
+
+    A path is a folder (its whole workspace with every scenario), a scenario, a medium, the catalog or a bench file.
+    """
+    checked = examine(paths)
+    for medium in checked.media.values():
+        checked.problems.update(_curve_problems(medium))
+    for file, media in checked.runs.items():
+        for medium in media:
+            checked.problems.update(_run_problems(medium, file))
+    return tuple(sorted(checked.problems)), tuple(sorted(checked.warnings))
+
+
+def _curve_problems(medium: Medium) -> tuple[Problem, ...]:
+    if not all(run.file.is_file() for run in medium.curve.runs):
+        return ()  # said already, at the run that names the file
+    try:
+        fit_curve(medium)
+    except InputError as error:
+        return error.problems
+    return ()
+
+
+def _run_problems(medium: Medium, file: Path) -> list[Problem]:
+    """Problems of one bench file."""
+    out: list[Problem] = []
+    for index, run in enumerate(medium.curve.runs):
+
+        def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
+            return medium.source.at(("curve", "runs", index, *loc), text)
+
+        if run.file == file:
+            try:
+                reduce_run(run, where)
+            except InputError as error:
+                out.extend(error.problems)
+    return out
