@@ -160,7 +160,7 @@ class _Search:
         )
         self.solver.add_row(-INFINITE, spent * (1.0 + TIE), places, [1.0] * len(places))
         costs = np.zeros(len(self.matrix.cost))
-        costs[self.x] = _fixed_order(self.index)
+        costs[self.x] = fixed_order(self.index)
         self.solver.set_costs(costs)
         for place in places:
             self.solver.set_cost(place, 0.0)
@@ -192,7 +192,7 @@ def _may_tie(index: Index) -> bool:
     return False
 
 
-def _fixed_order(index: Index) -> Floats:
+def fixed_order(index: Index) -> Floats:
     """A cost per option whose sums differ between any two picks: smaller options in earlier stages come first."""
     out = np.zeros(len(index.names))
     for n, node in enumerate(index.nodes):
