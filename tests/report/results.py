@@ -18,9 +18,7 @@ from trainopt.train.results import (
 )
 
 
-def stage(
-    name: str = "primary", medium: str = "oat-coarse", count: int = 13, **changes: object
-) -> StageDesign:
+def stage(name: str = "primary", medium: str = "oat-coarse", count: int = 13, **changes: object) -> StageDesign:
     area = 0.9 * count
     values: dict[str, object] = {
         "stage": name,

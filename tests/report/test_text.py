@@ -27,8 +27,7 @@ HOSTILE = "[bold red]x[/] \x1b[31m\x07 :smile: $x_1$ \u202eabc\nnext"
 
 def wide(**changes: object) -> object:
     stages = [
-        results.stage(f"{LONG}{i}", LONG, 10_000 + i, module=LONG, holders={LONG: 1000, "rack": 3})
-        for i in range(6)
+        results.stage(f"{LONG}{i}", LONG, 10_000 + i, module=LONG, holders={LONG: 1000, "rack": 3}) for i in range(6)
     ]
     return results.design(blocks=(results.block(LONG, *stages), results.block("guard", *stages)), **changes)
 
@@ -101,8 +100,7 @@ def test_headline_says_what_is_proven() -> None:
 
 def test_even_split_sentence() -> None:
     assert even_split_sentence(results.design()) == (
-        "Against the even split of pressure and time this saves 1.8 m² (5.0 %) of area "
-        "and 1,500 EUR (4.7 %) per batch."
+        "Against the even split of pressure and time this saves 1.8 m² (5.0 %) of area and 1,500 EUR (4.7 %) per batch."
     )
     same = results.design(saving=Saving(0.0, 0.0, 0.0, 0.0))
     assert even_split_sentence(same).startswith("The even split costs nothing here")

@@ -102,6 +102,7 @@ def _bar(axes: Axes, row: int, parts: list[Part], factor: float, full: float, nu
                 label,
                 ha="center",
                 va="center",
+                clip_on=True,
                 fontsize=8 if "\n" not in label else 7,
                 color=readable_on(part.color),
                 bbox={"facecolor": part.color, "edgecolor": "none", "pad": 1.0} if part.hatch else None,

@@ -51,7 +51,7 @@ def stage_figure(stage: StageCurve, units: str = "bar") -> Figure:
         _curves(axes, stage, reach, factor)
         _design_point(axes, stage, factor)
         _cap(axes, stage)
-        axes.set_title(f"{short(stage.stage, 28)}: {short(stage.curve.medium, 28)}, law {stage.curve.law}")
+        axes.set_title(f"{short(stage.stage, 22)}: {short(stage.curve.medium, 22)}, law {stage.curve.law}")
         axes.set_xlabel("Loading, L/m² (shaded: tested)")
         axes.set_ylabel(f"Resistance, {units}/LMH")
         axes.set_xlim(0.0, 1.08 * reach)

@@ -46,7 +46,7 @@ def _draw_block(axes: Axes, block: BlockDesign, slots: int, first: bool) -> None
     axes.set_ylim(-0.05, 1.75)
     axes.set_axis_off()
     axes.set_title(
-        f"{wrapped(block.block, 60, 1)}, {block.operation.replace('-', ' ')}, {fixed(block.flow, 0)} L/h"
+        f"{wrapped(block.block, 34, 1)}, {block.operation.replace('-', ' ')}, {fixed(block.flow, 0)} L/h"
         + (" at the start" if block.operation == "constant-pressure" else "")
     )
     end = len(block.stages) + 1

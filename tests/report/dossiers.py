@@ -1,0 +1,135 @@
+"""Dossiers built by hand, one for each shape of a scenario that a report has to cope with."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from tests.report import results
+from trainopt.curves.curve import Curve
+from trainopt.report.course_figure import Course
+from trainopt.report.dossier import Dossier
+from trainopt.report.stage_figure import StageCurve
+from trainopt.train.results import Design, EvenSplit, Notice, Saving
+
+LONG = "a-name-that-goes-on-" * 10
+HOSTILE = (
+    "<script>alert(1)</script>",
+    "=cmd|' /C calc'!A0",
+    "+1+1",
+    "@SUM(A1)",
+    LONG,
+    "\u202egnp.exe",
+    "مرشح خشن",
+    "filter 🧪 & \"more\" 'quotes'",
+    "{{ 7*7 }}{% raw %}",
+    "$x_1$ \\frac",
+    "a\x00b\x1b[31m\nnext",
+    "]]> &amp; -->",
+)
+
+
+def dossier(design: Design, curve: Curve | None = None) -> Dossier:
+    curve = curve or results.curve()
+    lots = ("a", "b")
+    stage_curves = tuple(
+        StageCurve(
+            stage=stage.stage,
+            curve=curve,
+            lots=tuple((lot, curve.lot_curve(None, ratio)) for lot, ratio in zip(lots, (1.0, 1.1), strict=True)),
+            worst_lot="b",
+            loading=120.0,
+            design_loading=180.0,
+            cap=190.0,
+            cap_words="loading tested",
+        )
+        for block in design.blocks
+        for stage in block.stages
+    )
+    time = np.linspace(0.0, 3.84, 21)
+    courses = tuple(
+        Course(
+            block=block.block,
+            lot=lot,
+            worst=lot == "b",
+            limit=block.pressure.limit,
+            time=time,
+            base=np.full(21, 0.06),
+            stages=tuple((stage.stage, share * stage.pressure * np.exp(time - 3.84)) for stage in block.stages),
+            derated=derated,
+        )
+        for block in design.blocks
+        for lot, derated, share in (("a", False, 0.6), ("b", False, 0.7), ("b", True, 1.0))
+    )
+    return Dossier(
+        design=design,
+        volume=2000.0,
+        time_allowed=6.0,
+        safety_factor=1.5,
+        schedule="sequential",
+        lots=lots,
+        curves={curve.medium: curve},
+        stage_curves=stage_curves,
+        courses=courses,
+        assumptions=("Resistance depends on loading alone.",),
+        versions={"trainopt": "0.1.0", "highspy": "1.0"},
+        options={"Objective asked for": "area"},
+        date="2026-01-02T03:04:05+00:00",
+    )
+
+
+def _six_stages() -> Design:
+    stages = [results.stage(f"stage-{n}", count=c, pressure=0.2) for n, c in enumerate((40, 1, 2, 7, 16, 3))]
+    return results.design(
+        blocks=(results.block("one-block", *stages),),
+        even_split=EvenSplit("infeasible", None, None, None, None, (), "stage-1 finds no module large enough"),
+        saving=None,
+    )
+
+
+def _one_stage() -> Design:
+    block = results.block("only", results.stage(count=1, holders={}), operation="constant-pressure")
+    return results.design(
+        blocks=(block,),
+        even_split=EvenSplit("optimal", 0.9, 760.0, results.PARTS, 6.0, (block,)),
+        saving=Saving(0.0, 0.0, 0.0, 0.0),
+        warnings=(),
+    )
+
+
+def _many_blocks() -> Design:
+    blocks = tuple(
+        results.block(f"block-{n}", results.stage(f"s-{n}-1", count=n + 1), results.stage(f"s-{n}-2", count=3))
+        for n in range(3)
+    )
+    return results.design(blocks=blocks, even_split=None, saving=None)
+
+
+def hostile() -> Design:
+    stages = [
+        results.stage(name, medium=name, module=name, holders={name: 2}, count=n + 1, pressure=0.2)
+        for n, name in enumerate(HOSTILE)
+    ]
+    blocks = (
+        results.block(HOSTILE[0], *stages[:6], worst_lot=HOSTILE[6]),
+        results.block(HOSTILE[4], *stages[6:], worst_lot=HOSTILE[1]),
+    )
+    return results.design(
+        scenario=" ".join(HOSTILE),
+        currency=HOSTILE[0],
+        blocks=blocks,
+        warnings=tuple(Notice(name, name) for name in HOSTILE),
+        inputs={name: name for name in HOSTILE},
+        even_split=EvenSplit("optimal", 99.0, 1.0, results.PARTS, 6.0, blocks),
+    )
+
+
+def shapes() -> dict[str, Dossier]:
+    """Dossiers by name: usual, one stage, six stages, three blocks, no design, hostile names."""
+    return {
+        "usual": dossier(results.design()),
+        "one-stage": dossier(_one_stage()),
+        "six-stages": dossier(_six_stages()),
+        "three-blocks": dossier(_many_blocks()),
+        "no-design": dossier(results.infeasible()),
+        "hostile": dossier(hostile(), results.curve(medium=HOSTILE[0], law="intermediate")),
+    }
