@@ -30,10 +30,7 @@ def sheet(path: Path, rows: Rows, name: str = "run", others: tuple[str, ...] = (
     page.title = name
     for row in rows:
         page.append(
-            [
-                float(cell) if cell.replace(".", "", 1).replace("-", "", 1).isdigit() else cell or None
-                for cell in row
-            ]
+            [float(cell) if cell.replace(".", "", 1).replace("-", "", 1).isdigit() else cell or None for cell in row]
         )
     for other in others:
         book.create_sheet(other).append(["notes", "nothing here"])
@@ -58,9 +55,7 @@ def units_row(path: Path, rows: Rows) -> Path:
 
 
 def marked(path: Path, rows: Rows) -> Path:
-    path.write_bytes(
-        b"\xef\xbb\xbf" + "\n".join(",".join(row) for row in rows).replace("\n", "\r\n").encode()
-    )
+    path.write_bytes(b"\xef\xbb\xbf" + "\n".join(",".join(row) for row in rows).replace("\n", "\r\n").encode())
     return path
 
 
@@ -80,8 +75,7 @@ def wide(path: Path, rows: Rows) -> Path:
     """Extra columns: an index, a remark, the pump's setting, a feed volume."""
     head = ["no", *rows[0], "remark", "set flow (mL/min)", "feed volume (L)"]
     body = [
-        [str(i), *row, "ok" if i % 5 else "", "5.75", f"{float(row[1]) / 1000:.6f}"]
-        for i, row in enumerate(rows[1:])
+        [str(i), *row, "ok" if i % 5 else "", "5.75", f"{float(row[1]) / 1000:.6f}"] for i, row in enumerate(rows[1:])
     ]
     return write_rows(path, [head, *body])
 
@@ -121,9 +115,7 @@ def test_a_messy_file_gives_what_the_clean_one_gives(tmp_path: Path, name: str) 
     clean = reduced(write_rows(tmp_path / "clean.csv", rows))
     messy = reduced(VARIANTS[name](tmp_path / "messy.csv", rows))
     np.testing.assert_allclose(messy.loading, clean.loading, rtol=1e-12)
-    np.testing.assert_allclose(
-        messy.resistance, clean.resistance, rtol=1e-6 if name.startswith("clock") else 1e-9
-    )
+    np.testing.assert_allclose(messy.resistance, clean.resistance, rtol=1e-6 if name.startswith("clock") else 1e-9)
     np.testing.assert_array_equal(messy.turbidity, clean.turbidity)
 
 
@@ -151,9 +143,7 @@ def test_spreadsheet(tmp_path: Path) -> None:
     np.testing.assert_allclose(run.resistance, clean.resistance, rtol=1e-12)
     np.testing.assert_array_equal(run.rows, clean.rows)
     several = sheet(tmp_path / "b.xlsx", rows, others=("setup", "notes"))
-    with pytest.raises(
-        InputError, match=r"b.xlsx: has several sheets \(run, setup, notes\); expected `sheet:`"
-    ):
+    with pytest.raises(InputError, match=r"b.xlsx: has several sheets \(run, setup, notes\); expected `sheet:`"):
         reduced(several)
     np.testing.assert_array_equal(reduced(several, sheet="run").resistance, run.resistance)
     with pytest.raises(InputError, match="has no sheet 'Run'; expected one of run, setup, notes"):
@@ -167,9 +157,7 @@ def test_spreadsheet_with_durations(tmp_path: Path) -> None:
     assert page is not None
     page.append(["elapsed time", *rows[0][1:]])
     for row in rows[1:]:
-        page.append(
-            [datetime.timedelta(minutes=float(row[0])), *(float(cell) if cell else None for cell in row[1:])]
-        )
+        page.append([datetime.timedelta(minutes=float(row[0])), *(float(cell) if cell else None for cell in row[1:])])
     book.save(tmp_path / "a.xlsx")
     run = reduced(tmp_path / "a.xlsx")
     np.testing.assert_allclose(run.time, LAB.rows["time"], atol=1e-8)
@@ -190,9 +178,7 @@ def test_balance_with_a_tare(tmp_path: Path) -> None:
     for run in (reduced(path, density=1.02), reduced(path, density=1.02, tare=0.1523)):
         np.testing.assert_allclose(run.loading, clean.loading, atol=1e-6)
         np.testing.assert_allclose(run.resistance, clean.resistance, rtol=1e-4)
-    assert [flag.text for flag in reduced(path, density=1.02).flags] == [
-        "152.3 g at time 0 taken as the tare"
-    ]
+    assert [flag.text for flag in reduced(path, density=1.02).flags] == ["152.3 g at time 0 taken as the tare"]
 
 
 @pytest.mark.parametrize("double", [False, True], ids=["read-once", "read-twice-at-the-swap"])
@@ -218,9 +204,7 @@ def test_gauges_in_series(tmp_path: Path) -> None:
     rows = [["t (min)", "V (mL)", "P1 (psi)", "P2 (psi)", "P3 (psi)"]]
     rows += [[str(2 * i), str(12 * i), f"{9 + i / 10:.1f}", f"{4 + i / 20:.2f}", "1.0"] for i in range(20)]
     path = write_rows(tmp_path / "inline.csv", rows)
-    with pytest.raises(
-        InputError, match=r"'P1 .psi.' and 'P2 .psi.' and 'P3 .psi.' could each be the pressure"
-    ):
+    with pytest.raises(InputError, match=r"'P1 .psi.' and 'P2 .psi.' and 'P3 .psi.' could each be the pressure"):
         reduced(path)
     with pytest.raises(InputError, match="could each be the outlet pressure"):
         reduced(path, columns={"pressure": "P1 (psi)"})
@@ -253,9 +237,7 @@ def test_a_long_run_is_averaged_in_blocks(tmp_path: Path) -> None:
 
 def test_a_large_file_reads_the_same_as_a_small_one(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     rows = Lab(n=3001).table()
-    path = write_text(
-        tmp_path / "a.csv", "Run 12\n# logger\n\n" + "\n".join(",".join(row) for row in rows) + "\n"
-    )
+    path = write_text(tmp_path / "a.csv", "Run 12\n# logger\n\n" + "\n".join(",".join(row) for row in rows) + "\n")
     careful = read_table(path)
     monkeypatch.setattr("trainopt.bench.table.LARGE", 1000)
     quick = read_table(path)
@@ -297,9 +279,7 @@ CELLS = st.text(alphabet="0123456789.,;-+eE:/ \t\"'#%()[]abcmLpsiNTUµ²", max_s
 
 
 @settings(max_examples=300, deadline=None)
-@given(
-    lines=st.lists(st.lists(CELLS, min_size=1, max_size=5), max_size=12), delimiter=st.sampled_from(",;\t")
-)
+@given(lines=st.lists(st.lists(CELLS, min_size=1, max_size=5), max_size=12), delimiter=st.sampled_from(",;\t"))
 def test_any_text_is_read_or_refused_without_a_traceback(
     tmp_path_factory: pytest.TempPathFactory, lines: Rows, delimiter: str
 ) -> None:

@@ -131,7 +131,5 @@ def test_pooled_turbidity_is_volume_weighted(tmp_path: Path) -> None:
     rows: Rows = [["time (min)", "volume (mL)", "pressure (psi)", "turbidity (NTU)"]]
     rows += [[str(i), str(10 * i), "5", str(2 * i)] for i in range(11)]
     run = reduced(write_rows(tmp_path / "a.csv", rows))
-    np.testing.assert_allclose(
-        run.pool_turbidity[1:], [(2 + 0.5 * (2 + 2 * i) * (i - 1)) / i for i in range(1, 11)]
-    )
+    np.testing.assert_allclose(run.pool_turbidity[1:], [(2 + 0.5 * (2 + 2 * i) * (i - 1)) / i for i in range(1, 11)])
     np.testing.assert_allclose(run.pool_turbidity[10], 10.1)  # half of 20, and the first reading held from 0

@@ -112,9 +112,7 @@ def wavy(seed: int, sag: float) -> Readings:
     """A resistance with a sag in the middle: the slope of a free cubic is negative inside the range."""
     rng = np.random.default_rng(seed)
     z = np.linspace(0.01, 1.0, 80)
-    resistance = (
-        1e-3 * (1.0 + 4.0 * z - sag * z**2 + sag * z**3 / 1.5) * np.exp(0.005 * rng.standard_normal(80))
-    )
+    resistance = 1e-3 * (1.0 + 4.0 * z - sag * z**2 + sag * z**3 / 1.5) * np.exp(0.005 * rng.standard_normal(80))
     zeros = np.zeros(80, dtype=np.intp)
     return Readings(100.0 * z, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, ("a",))
 
@@ -159,9 +157,7 @@ def test_constrained_cubic_is_the_best_allowed_one(data: Readings) -> None:
     free = np.linalg.lstsq(powers / np.exp(data.log + np.log(1e3))[:, None], np.ones(80), rcond=None)[0]
     assert np.any(rows @ free < 0.0), "the case must need the constraint"
     assert fit.cost == pytest.approx(found.fun, rel=1e-4)
-    assert fit.cost <= found.fun * (
-        1.0 + 1e-5
-    )  # the grid lets the reference fall a little between its points
+    assert fit.cost <= found.fun * (1.0 + 1e-5)  # the grid lets the reference fall a little between its points
 
 
 def test_exact_readings_give_exact_parameters() -> None:

@@ -60,9 +60,7 @@ def test_integral_is_the_area_under_the_curve(law: Law) -> None:
         assert law.integral(l, *p) == pytest.approx(area, rel=1e-12)
 
 
-@pytest.mark.parametrize(
-    ("name", "n"), [*HERMIA_ORDER.items(), *(("hermia", n) for n in (0, 0.4, 1, 1.2, 1.5, 2))]
-)
+@pytest.mark.parametrize(("name", "n"), [*HERMIA_ORDER.items(), *(("hermia", n) for n in (0, 0.4, 1, 1.2, 1.5, 2))])
 def test_differential_equation(name: str, n: float) -> None:
     """dR/dl = k·R0·(R/R0)ⁿ, Hermia, Trans. IChemE 60 (1982) 183 (memory), both ways."""
     p = (1e-3, 0.005, n) if name == "hermia" else PARAMETERS[name]
@@ -89,9 +87,7 @@ def test_general_law_holds_the_four(name: str, n: float) -> None:
     np.testing.assert_allclose(
         LAWS["hermia"].resistance(LOADINGS, *p, n), LAWS[name].resistance(LOADINGS, *p), rtol=1e-13
     )
-    np.testing.assert_allclose(
-        LAWS["hermia"].integral(LOADINGS, *p, n), LAWS[name].integral(LOADINGS, *p), rtol=1e-13
-    )
+    np.testing.assert_allclose(LAWS["hermia"].integral(LOADINGS, *p, n), LAWS[name].integral(LOADINGS, *p), rtol=1e-13)
     assert LAWS["hermia"].pole(*p, n) == pytest.approx(LAWS[name].pole(*p))
 
 
@@ -108,21 +104,15 @@ COMBINED = {
     "cake-complete": lambda l, kc, kb: (1.0 - kc / kb * np.log(1.0 - kb * l)) / (1.0 - kb * l),
     "cake-intermediate": lambda l, kc, ki: np.exp(ki * l) * (1.0 + kc / ki * (np.exp(ki * l) - 1.0)),
     "cake-standard": lambda l, kc, ks: (1.0 - ks * l / 2.0) ** -2 + kc * l,
-    "complete-standard": lambda l, kb, ks: (
-        1.0 / ((1.0 - kb * l) * (1.0 + ks / (2.0 * kb) * np.log(1.0 - kb * l)) ** 2)
-    ),
-    "intermediate-standard": lambda l, ki, ks: (
-        np.exp(ki * l) / (1.0 - ks / (2.0 * ki) * (np.exp(ki * l) - 1.0)) ** 2
-    ),
+    "complete-standard": lambda l, kb, ks: 1.0 / ((1.0 - kb * l) * (1.0 + ks / (2.0 * kb) * np.log(1.0 - kb * l)) ** 2),
+    "intermediate-standard": lambda l, ki, ks: np.exp(ki * l) / (1.0 - ks / (2.0 * ki) * (np.exp(ki * l) - 1.0)) ** 2,
 }
 
 
 @pytest.mark.parametrize("name", COMBINED)
 def test_combined_laws_are_the_published_forms(name: str) -> None:
     p = PARAMETERS[name]
-    np.testing.assert_allclose(
-        LAWS[name].resistance(LOADINGS, *p), p[0] * COMBINED[name](LOADINGS, *p[1:]), rtol=1e-12
-    )
+    np.testing.assert_allclose(LAWS[name].resistance(LOADINGS, *p), p[0] * COMBINED[name](LOADINGS, *p[1:]), rtol=1e-12)
 
 
 @pytest.mark.parametrize("name", COMBINED)
@@ -159,9 +149,7 @@ def test_slopes_are_the_derivatives(law: Law) -> None:
         by_k = (np.log(moved(law.shape, index, h)) - np.log(moved(law.shape, index, -h))) / (2.0 * h)
         np.testing.assert_allclose(law.slopes(l, *k)[index], by_k, rtol=2e-6, atol=1e-7 * np.abs(by_k).max())
         area = (moved(law.area, index, h) - moved(law.area, index, -h)) / (2.0 * h)
-        np.testing.assert_allclose(
-            law.area_slopes(l, *k)[index], area, rtol=2e-6, atol=1e-7 * np.abs(area).max()
-        )
+        np.testing.assert_allclose(law.area_slopes(l, *k)[index], area, rtol=2e-6, atol=1e-7 * np.abs(area).max())
     by_l = (np.log(law.shape(l + 1e-4, *k)) - np.log(law.shape(l - 1e-4, *k))) / 2e-4
     np.testing.assert_allclose(law.slopes(l, *k)[-1], by_l, rtol=1e-6, atol=1e-10)
 

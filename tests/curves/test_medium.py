@@ -26,17 +26,13 @@ def three_lots(tmp_path: Path, **settings: object) -> tuple[RunEntry, ...]:
     return tuple(entries)
 
 
-def pressure_run(
-    path: Path, law: str, p: tuple[float, ...], pressure: float, reach: float, n: int = 40
-) -> Path:
+def pressure_run(path: Path, law: str, p: tuple[float, ...], pressure: float, reach: float, n: int = 40) -> Path:
     """A constant-pressure run of known law: minutes and grams of water."""
     end = LAWS[law].integral(reach, *p) / pressure
     rows = [["time (min)", "mass (g)"]]
     for time in np.linspace(0.0, end, n):
         target = pressure * time
-        loading = (
-            brentq(lambda l, y=target: LAWS[law].integral(l, *p) - y, 0.0, reach * 1.001) if time else 0.0
-        )
+        loading = brentq(lambda l, y=target: LAWS[law].integral(l, *p) - y, 0.0, reach * 1.001) if time else 0.0
         rows.append([f"{time * 60.0:.8f}", f"{loading * AREA * 1000.0:.7f}"])
     return write_rows(path, rows)
 
@@ -139,10 +135,7 @@ def test_any_flow_history_by_the_integral(tmp_path: Path) -> None:
     loading = np.concatenate([[0.0], np.cumsum(0.5 * (flux[1:] + flux[:-1]) * np.diff(time))])
     pressure = LAWS["cake"].resistance(loading, *p) * flux
     rows = [["t (h)", "V (mL)", "P (bar)"]]
-    rows += [
-        [f"{t:.8f}", f"{l * AREA * 1e3:.8f}", f"{q:.9f}"]
-        for t, l, q in zip(time, loading, pressure, strict=True)
-    ]
+    rows += [[f"{t:.8f}", f"{l * AREA * 1e3:.8f}", f"{q:.9f}"] for t, l, q in zip(time, loading, pressure, strict=True)]
     curve = fitted(RunEntry(write_rows(tmp_path / "a.csv", rows), operation="constant-pressure"), law="cake")
     np.testing.assert_allclose([e.value for e in curve.parameters.values()], p, rtol=1e-4)
 
@@ -157,9 +150,7 @@ def test_hold_up_shifts_the_start_of_the_integral(tmp_path: Path) -> None:
     shifted = [["0", "0"], *([f"{float(t) + delay:.8f}", f"{float(m) + 12.0:.7f}"] for t, m in body)]
     write_rows(path, [lines[0].split(","), *shifted])
     run = RunEntry(path, operation="constant-pressure", pressure=pressure, density=1.0, hold_up=0.012)
-    np.testing.assert_allclose(
-        [e.value for e in fitted(run, law="complete").parameters.values()], p, rtol=1e-4
-    )
+    np.testing.assert_allclose([e.value for e in fitted(run, law="complete").parameters.values()], p, rtol=1e-4)
 
 
 def test_an_outlier_pulls_little(tmp_path: Path) -> None:
@@ -185,9 +176,7 @@ def test_auto_refuses_where_laws_fit_alike_but_differ(tmp_path: Path) -> None:
             refused += 1
             text = str(error.problems[0])
             assert text.startswith("medium.yaml:3: curve.law: auto cannot tell between")
-            assert (
-                "expected a longer run, more readings or a second lot, or one of these laws by name" in text
-            )
+            assert "expected a longer run, more readings or a second lot, or one of these laws by name" in text
     assert refused >= 5
     for seed in range(5):
         fitted(RunEntry(Lab(noise=0.01, seed=seed).write(tmp_path / f"{seed}.csv")))
@@ -208,17 +197,14 @@ def test_order_and_constant_trade_off_is_said(tmp_path: Path) -> None:
 
 def test_feed_loading_is_carried(tmp_path: Path) -> None:
     runs = [
-        replace(run, feed_loading=value)
-        for run, value in zip(three_lots(tmp_path), (120.0, 90.0, None), strict=True)
+        replace(run, feed_loading=value) for run, value in zip(three_lots(tmp_path), (120.0, 90.0, None), strict=True)
     ]
     assert fitted(*runs).feed_loading == 90.0
     assert fitted(*three_lots(tmp_path)).feed_loading is None
 
 
 def test_every_problem_of_every_run_at_once(tmp_path: Path) -> None:
-    one = write_rows(
-        tmp_path / "a.csv", [["time (min)", "volume (mL)"], *([str(i), str(i)] for i in range(8))]
-    )
+    one = write_rows(tmp_path / "a.csv", [["time (min)", "volume (mL)"], *([str(i), str(i)] for i in range(8))])
     with pytest.raises(InputError) as caught:
         fitted(RunEntry(one), RunEntry(tmp_path / "b.csv"))
     texts = [str(problem) for problem in caught.value.problems]

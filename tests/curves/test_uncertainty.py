@@ -89,9 +89,7 @@ def test_spread_between_lots(curve: Curve) -> None:
 
 
 def test_runs_left_out_are_foretold_best_by_the_true_law(tmp_path: Path) -> None:
-    runs = [
-        RunEntry(Lab(noise=0.01, seed=seed).write(tmp_path / f"{seed}.csv"), lot="a") for seed in range(3)
-    ]
+    runs = [RunEntry(Lab(noise=0.01, seed=seed).write(tmp_path / f"{seed}.csv"), lot="a") for seed in range(3)]
     errors = left_out_errors(fitted(*runs))
     assert errors["intermediate"] < 0.012
     assert errors["intermediate"] <= min(errors.values()) * 1.01

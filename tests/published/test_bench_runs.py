@@ -80,9 +80,7 @@ def test_least_squares_of_the_slurry_on_the_times_that_the_reader_gives() -> Non
     )
 
 
-WORKSHEET = RunEntry(
-    HERE / "test_bench_worksheet.csv", operation="constant-pressure", area=2.72, pressure=3.0
-)
+WORKSHEET = RunEntry(HERE / "test_bench_worksheet.csv", operation="constant-pressure", area=2.72, pressure=3.0)
 """A printed worksheet at 3 bar; equations of Rushton, Ward & Holdich, Solid–Liquid Filtration, ch. 2
 (memory).
 """

@@ -55,11 +55,9 @@ def _clock_times(table: Table, column: Column, cells: list[str], problems: list[
     return np.asarray(out - out[read[0]]) if len(read) else out
 
 
-def column_step(values: Floats, column: Column) -> float:
-    """Resolution of a column in canonical units, found in the units of the file."""
-    factor = column.unit.factor if column.unit is not None else 1.0 / 3600.0
-    sample = values[:: max(len(values) // 2000, 1)]
-    return resolution(sample / factor) * factor
+def column_step(values: Floats) -> float:
+    """Resolution of a column in its own canonical unit; a long column is sampled."""
+    return resolution(values[:: max(len(values) // 2000, 1)])
 
 
 def complete_rows(
@@ -74,7 +72,5 @@ def complete_rows(
     for index in np.flatnonzero(np.isnan(values["time"])):
         line = table.lines[index]
         if line not in bad:
-            problems.append(
-                table.problem(line, f"column '{columns['time'].header}' is empty; expected a time")
-            )
+            problems.append(table.problem(line, f"column '{columns['time'].header}' is empty; expected a time"))
     return keep

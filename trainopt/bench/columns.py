@@ -120,11 +120,7 @@ class _Search:
         if unit is None and role == "time" and _is_clock(self.table, header.index):
             return Column(role, header.index, header.text, None)
         if unit is None:
-            unknown = (
-                f"has the unit '{header.unit_text}', which is not known"
-                if header.unit_text
-                else "has no unit"
-            )
+            unknown = f"has the unit '{header.unit_text}', which is not known" if header.unit_text else "has no unit"
             self.wrong(f"column '{header.text}' ({role}) {unknown}; expected for example '{example}'")
             return None
         if unit.dimension != dimension:
@@ -229,9 +225,7 @@ def _find_amount(search: _Search) -> None:
 
 def _amounts(left: list[_Header], dimension: str, words: set[str]) -> list[_Header]:
     """Columns that can be the amount of filtrate: by unit, those called filtrate first; else by name."""
-    by_unit = [
-        h for h in left if h.unit is not None and h.unit.dimension == dimension and not h.words & _IGNORED
-    ]
+    by_unit = [h for h in left if h.unit is not None and h.unit.dimension == dimension and not h.words & _IGNORED]
     by_name = [h for h in left if h.unit is None and h.words & words and not h.words & (_IGNORED | _FEED)]
     filtrate = [h for h in by_unit if h.words & _FILTRATE]
     not_feed = [h for h in by_unit if not h.words & _FEED]
@@ -256,9 +250,7 @@ def _find_pressures(search: _Search) -> None:
     if difference and not search.given & {"pressure", "outlet_pressure"}:
         unused = ", ".join(f"'{header.text}'" for header in (*inlets, *kinds["outlet_pressure"]))
         if unused:
-            search.assumed.append(
-                f"differential pressure from column '{difference[0].text}'; {unused} not used"
-            )
+            search.assumed.append(f"differential pressure from column '{difference[0].text}'; {unused} not used")
         search.take("differential_pressure", difference)
         return
     if "pressure" not in search.given:
@@ -269,8 +261,7 @@ def _find_pressures(search: _Search) -> None:
             names = " and ".join(f"'{header.text}'" for header in downstream)
             example = f'columns: {{outlet_pressure: "{downstream[0].text}"}}'
             search.wrong(
-                f"{names} could each be the outlet pressure; expected the run to say, as in {example}, or "
-                f"none"
+                f"{names} could each be the outlet pressure; expected the run to say, as in {example}, or none"
             )
         search.take("outlet_pressure", kinds["outlet_pressure"])
 

@@ -40,9 +40,7 @@ def swapped(amount: Floats) -> NDArray[np.bool_]:
     return out
 
 
-def fall_faults(
-    amount: Floats, swaps: NDArray[np.bool_], rows: NDArray[np.int64], role: str
-) -> list[tuple[int, str]]:
+def fall_faults(amount: Floats, swaps: NDArray[np.bool_], rows: NDArray[np.int64], role: str) -> list[tuple[int, str]]:
     """Rows at which a cumulative amount falls by more than noise without a new cylinder."""
     if len(amount) < 2:
         return []

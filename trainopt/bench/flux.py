@@ -16,19 +16,27 @@ from numpy.typing import NDArray
 from trainopt.bench.run import Floats
 
 SHORTEST = 3
-STEPS = np.array([m * 10.0**e for e in range(3, -7, -1) for m in (5.0, 2.0, 1.0)])
+FINEST = 1e-5
+"""Steps finer than this part of the largest reading do not matter and count as none."""
 
 
 def resolution(values: Floats) -> float:
-    """The coarsest round step (1, 2, 5 times a power of ten) all readings are multiples of; else 0."""
-    known = values[np.isfinite(values)]
-    if not known.any():
-        return 0.0
-    for step in STEPS:
-        ratio = known / step
-        if np.all(np.abs(ratio - np.round(ratio)) < 1e-6):
-            return float(step)
-    return 0.0
+    """The step that all readings are multiples of, in whatever unit they are; 0 where there is none to
+    speak of.
+
+    Euclid's algorithm on all readings at once, blind to rounding in the last digits.
+    """
+    left = np.unique(np.abs(values[np.isfinite(values)]))
+    largest = float(left[-1]) if len(left) else 0.0
+    left = left[left > 1e-9 * largest]
+    step = 0.0
+    while len(left):
+        step = float(left[0])
+        if step < FINEST * largest:
+            return 0.0
+        rest = np.abs(left - np.round(left / step) * step)
+        left = np.unique(rest[rest > 1e-9 * largest])
+    return step
 
 
 def local_flow(time: Floats, volume: Floats, step: float = 0.0) -> Floats:

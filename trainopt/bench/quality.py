@@ -101,9 +101,7 @@ def _slipping(run: ReducedRun, usable: NDArray[np.bool_]) -> NDArray[np.bool_]:
     return np.asarray(usable & low & (run.pressure < 0.98 * peak))
 
 
-def _pump_slip(
-    run: ReducedRun, slipping: NDArray[np.bool_], stepping: NDArray[np.bool_], keep: bool
-) -> Iterator[Flag]:
+def _pump_slip(run: ReducedRun, slipping: NDArray[np.bool_], stepping: NDArray[np.bool_], keep: bool) -> Iterator[Flag]:
     """The resistance is still right, because flux is measured; but a slipping pump was starved or worn."""
     for first, last in _stretches(slipping, shortest=2):
         set_point = float(np.median(run.flux))
@@ -185,12 +183,9 @@ def _growth(run: ReducedRun, first: int) -> tuple[float, float]:
     used = np.flatnonzero(run.used)
     after = used[used >= first]
     span = run.loading[after[-1]] - run.loading[first]
-    before = used[
-        (used < first) & (run.loading[used] >= run.loading[first] - max(span, 0.3 * run.loading[first]))
-    ]
+    before = used[(used < first) & (run.loading[used] >= run.loading[first] - max(span, 0.3 * run.loading[first]))]
     return tuple(  # type: ignore[return-value]
-        float(np.polyfit(run.loading[at], run.resistance[at], 1)[0]) if len(at) >= 3 else 0.0
-        for at in (before, after)
+        float(np.polyfit(run.loading[at], run.resistance[at], 1)[0]) if len(at) >= 3 else 0.0 for at in (before, after)
     )
 
 
@@ -264,11 +259,7 @@ def _physical_sense(run: ReducedRun) -> Iterator[Flag]:
     low, high = SENSIBLE_RESISTANCE
     if np.isfinite(clean) and not low <= clean <= high:
         fits = sorted(name for name, factor in _PRESSURE_MIX_UPS.items() if 1e-5 <= clean * factor <= 0.1)
-        suspects = (
-            f"; a pressure unit mix-up is suspected: {' or '.join(fits)}"
-            if fits
-            else "; check units and area"
-        )
+        suspects = f"; a pressure unit mix-up is suspected: {' or '.join(fits)}" if fits else "; check units and area"
         text = f"resistance of {clean:.3g} bar/LMH is outside physical sense ({low:g} to {high:g}){suspects}"
         yield Flag("unit-suspected", run.name, None, text)
 

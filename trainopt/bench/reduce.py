@@ -87,9 +87,7 @@ def _readings(table: Table, found: Columns, problems: list[Problem]) -> _Reading
     """The table's complete rows; problems are added to the list."""
     columns = found.found
     values = {role: column_values(table, column, problems) for role, column in columns.items()}
-    blank = [
-        role for role, column in values.items() if role == "outlet_pressure" and not np.isfinite(column).any()
-    ]
+    blank = [role for role, column in values.items() if role == "outlet_pressure" and not np.isfinite(column).any()]
     columns = {role: column for role, column in columns.items() if role not in blank}
     values = {role: values[role] for role in columns}
     keep = complete_rows(table, columns, values, problems)
@@ -113,7 +111,7 @@ def _readings(table: Table, found: Columns, problems: list[Problem]) -> _Reading
     if len(left_out):
         text = f"{len(left_out)} row(s) without a volume or pressure left out"
         remarks.append(("no-reading", (int(left_out[0]), int(left_out[-1])), text))
-    steps = {role: column_step(values[role], column) for role, column in columns.items()}
+    steps = {role: column_step(values[role]) for role in columns}
     return _Readings(values, steps, swaps, rows, tuple(remarks))
 
 
@@ -218,10 +216,7 @@ def _differential(run: Run, values: Mapping[str, Floats], n: int) -> tuple[Float
     if run.operation == "constant-pressure" and n > 1 and pressure[0] < 0.2 * float(np.median(pressure)):
         settled = pressure.copy()
         settled[0] = pressure[1]
-        text = (
-            f"pressure of the first reading ({pressure[0]:.3g} bar) taken as that of the second: not yet "
-            f"applied"
-        )
+        text = f"pressure of the first reading ({pressure[0]:.3g} bar) taken as that of the second: not yet applied"
         return settled, [text]
     return pressure, []
 

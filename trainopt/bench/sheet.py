@@ -35,8 +35,7 @@ no source).
 MOST_READINGS = 90
 
 CAUTIONS = (
-    "Stay below the rating of the weakest part: device, tubing, fittings, gauge. Use relief or a pump "
-    "that stalls.",
+    "Stay below the rating of the weakest part: device, tubing, fittings, gauge. Use relief or a pump that stalls.",
     "Purge air before loading; zero and check the gauges; calibrate the pump with water at both settings.",
     "Stop at the pressure endpoint, the turbidity endpoint or the planned loading, whichever comes first.",
     "Return turbidity samples to the cylinder or add their volume; write down every change as a remark.",
@@ -164,9 +163,7 @@ def sheet_bytes(plan: RunPlan, kind: str, pressure_unit: str = "psi") -> bytes:
     rows = sheet_rows(plan, pressure_unit)
     if kind == "csv":
         text = io.StringIO()
-        csv.writer(text, lineterminator="\n").writerows(
-            [["" if c is None else c for c in row] for row in rows]
-        )
+        csv.writer(text, lineterminator="\n").writerows([["" if c is None else c for c in row] for row in rows])
         return text.getvalue().encode("utf-8")
     return _spreadsheet(rows)
 

@@ -72,9 +72,7 @@ def read_table(path: Path, sheet: str | None = None) -> Table:
     elif sheet is not None:
         raise InputError([Problem(file, 0, f"has no sheets, but sheet '{sheet}' is asked for")])
     elif path.stat().st_size > LARGE:
-        return _large_table(path, file) or _table(
-            file, _text_rows(path.read_bytes(), file, assumed)[0], assumed
-        )
+        return _large_table(path, file) or _table(file, _text_rows(path.read_bytes(), file, assumed)[0], assumed)
     else:
         rows = _text_rows(path.read_bytes(), file, assumed)[0]
     return _table(file, rows, assumed)
@@ -90,9 +88,7 @@ def _large_table(path: Path, file: str) -> Table | None:
 
     with path.open("rb") as stream:
         head = stream.read(HEAD)
-        count = head.count(b"\n") + sum(
-            chunk.count(b"\n") for chunk in iter(lambda: stream.read(1 << 20), b"")
-        )
+        count = head.count(b"\n") + sum(chunk.count(b"\n") for chunk in iter(lambda: stream.read(1 << 20), b""))
     assumed: list[str] = []
     try:
         rows, delimiter = _text_rows(head[: head.rfind(b"\n") + 1], file, assumed)
@@ -192,10 +188,7 @@ def _decimal_points(rows: list[Row], file: str, assumed: list[str]) -> list[Row]
         return [(line, [_swap(cell) for cell in cells]) for line, cells in rows]
     if all(grouped) and not all(decimal):
         assumed.append("a comma in a number groups thousands")
-        return [
-            (line, [c.replace(",", "") if _THOUSANDS.fullmatch(c) else c for c in cells])
-            for line, cells in rows
-        ]
+        return [(line, [c.replace(",", "") if _THOUSANDS.fullmatch(c) else c for c in cells]) for line, cells in rows]
     line, cell = commas[0]
     text = f"'{cell}': the comma may mark decimals or thousands; expected numbers with a decimal point"
     raise InputError([Problem(file, line, text)])
@@ -223,9 +216,7 @@ def _spreadsheet_rows(path: Path, file: str, sheet: str | None) -> Iterator[Row]
     try:
         names = book.sheetnames
         if sheet is not None and sheet not in names:
-            raise InputError(
-                [Problem(file, 0, f"has no sheet '{sheet}'; expected one of {', '.join(names)}")]
-            )
+            raise InputError([Problem(file, 0, f"has no sheet '{sheet}'; expected one of {', '.join(names)}")])
         if sheet is None and len(names) > 1:
             text = f"has several sheets ({', '.join(names)}); expected `sheet:` to name the one with the run"
             raise InputError([Problem(file, 0, text)])

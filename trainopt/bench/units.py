@@ -85,9 +85,7 @@ _SHOUTED = {
     "KG",
     "ML/MIN",
 }
-_PLAIN = {
-    key.lower(): (dimension, value) for dimension, known in _SPELLINGS.items() for key, value in known.items()
-}
+_PLAIN = {key.lower(): (dimension, value) for dimension, known in _SPELLINGS.items() for key, value in known.items()}
 
 
 @cache
@@ -126,11 +124,7 @@ def split_header(header: str) -> tuple[str, str]:
     for mark in ("_", " "):
         name, _, unit = header.rpartition(mark)
         found = unit_of(unit)
-        if (
-            name
-            and found is not None
-            and not (mark == " " and len(unit) == 1 and found.dimension == "temperature")
-        ):
+        if name and found is not None and not (mark == " " and len(unit) == 1 and found.dimension == "temperature"):
             return name.strip(" _"), unit
     return ("", header) if unit_of(header) is not None and header not in _NAMES else (header, "")
 

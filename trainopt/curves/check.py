@@ -1,7 +1,7 @@
 """Every problem in the files that a path stands for, bench runs and curves included.
 
-`trainopt.files.check` sees the YAML alone; this one also reads every run that the media name and fits their curves,
-so that what it passes cannot fail as wrong input later.
+`trainopt.files.check` sees the YAML alone; this one also reads every run that the media name and fits their
+curves, so that what it passes cannot fail as wrong input later.
 """
 
 from __future__ import annotations
@@ -16,9 +16,11 @@ from trainopt.files import Medium, examine
 
 
 def check(paths: Iterable[Path | str]) -> tuple[tuple[Problem, ...], tuple[Problem, ...]]:
-    """Problems and warnings of the files that `paths` stand for, sorted by file and line; never raises for them.
+    """Problems and warnings of the files that `paths` stand for, sorted by file and line; never raises for
+    them.
 
-    A path is a folder (its whole workspace with every scenario), a scenario, a medium, the catalog or a bench file.
+    A path is a folder (its whole workspace with every scenario), a scenario, a medium, the catalog or a
+    bench file.
     """
     checked = examine(paths)
     for medium in checked.media.values():

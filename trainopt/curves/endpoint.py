@@ -12,9 +12,7 @@ from trainopt.bench.quality import breakthrough
 from trainopt.bench.run import Floats, ReducedRun
 
 
-def turbidity_loading(
-    runs: Iterable[ReducedRun], limit: float | None, pool_limit: float | None = None
-) -> float | None:
+def turbidity_loading(runs: Iterable[ReducedRun], limit: float | None, pool_limit: float | None = None) -> float | None:
     """Smallest loading in L/m² over all runs where a limit is first reached or the filter breaks through.
 
     `limit` NTU holds for the filtrate as it leaves the filter, `pool_limit` NTU for the pooled filtrate so

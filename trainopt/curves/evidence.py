@@ -27,7 +27,7 @@ part.
 BOUND = 4.0
 """Robust standard deviations beyond which an error counts linearly."""
 
-ROUNDS = 20
+ROUNDS = 100
 
 
 @dataclass(frozen=True, eq=False)
@@ -74,7 +74,7 @@ def settle(readings: Readings, law: str) -> tuple[Readings, Fit]:
     current, fit = readings, fit_law(readings, LAWS[law])
     for _ in range(ROUNDS):
         weight = _weights(readings, fit, current)
-        if np.max(np.abs(weight - current.weight)) < 1e-6:
+        if np.max(np.abs(weight - current.weight)) < 1e-12:
             break
         current = replace(readings, weight=weight)
         fit = fit_law(current, LAWS[law])

@@ -136,9 +136,7 @@ def _polynomial(name: str, degree: int) -> Law:
 _COMPLETE, _INTERMEDIATE = combined.Inner("complete"), combined.Inner("intermediate")
 
 _ALL = (
-    _one_constant(
-        "cake", "deposit on the surface, R grows by the same per loading (Hermia 1982, n = 0)", _no_pole
-    ),
+    _one_constant("cake", "deposit on the surface, R grows by the same per loading (Hermia 1982, n = 0)", _no_pole),
     _one_constant("intermediate", "particles settle on pores and each other (Hermia 1982, n = 1)", _no_pole),
     _one_constant("standard", "pores narrow from inside (Hermia 1982, n = 3/2)", blocking.standard_pole),
     _one_constant("complete", "each particle closes a pore (Hermia 1982, n = 2)", blocking.complete_pole),
@@ -153,9 +151,7 @@ _ALL = (
         blocking.hermia_area_slopes,
         blocking.hermia_pole,
     ),
-    _two_constants(
-        "cake-complete", "pores close, a cake grows", ("k_c", "k_b"), combined.CakeOver(_COMPLETE)
-    ),
+    _two_constants("cake-complete", "pores close, a cake grows", ("k_c", "k_b"), combined.CakeOver(_COMPLETE)),
     _two_constants(
         "cake-intermediate",
         "pores close in part, a cake grows",
@@ -163,9 +159,7 @@ _ALL = (
         combined.CakeOver(_INTERMEDIATE),
     ),
     _two_constants("cake-standard", "pores narrow, a cake grows", ("k_c", "k_s"), combined.CakeBeside()),
-    _two_constants(
-        "complete-standard", "pores close and narrow", ("k_b", "k_s"), combined.StandardUnder(_COMPLETE)
-    ),
+    _two_constants("complete-standard", "pores close and narrow", ("k_b", "k_s"), combined.StandardUnder(_COMPLETE)),
     _two_constants(
         "intermediate-standard",
         "pores close in part and narrow",

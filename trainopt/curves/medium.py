@@ -104,9 +104,7 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence, refe
         law=fit.law,
         parameters={
             name: Estimate(value, _known(error), unit)
-            for name, value, error, unit in zip(
-                law.parameters, fit.parameters, errors, law.units, strict=False
-            )
+            for name, value, error, unit in zip(law.parameters, fit.parameters, errors, law.units, strict=False)
         },
         covariance=tuple(tuple(float(value) for value in row) for row in fit.covariance[:k, :k]),
         tested_loading=_tested_loading(runs, lots, np.exp(fit.log_kappa)),
@@ -133,9 +131,7 @@ def _known(error: float) -> float | None:
 def _lot_effects(lots: tuple[str, ...], fit: Fit, errors: Floats) -> dict[str, LotEffect]:
     rho, kappa, n = np.exp(fit.log_rho), np.exp(fit.log_kappa), len(lots)
     return {
-        lot: LotEffect(
-            float(rho[i]), _known(rho[i] * errors[i]), float(kappa[i]), _known(kappa[i] * errors[n + i])
-        )
+        lot: LotEffect(float(rho[i]), _known(rho[i] * errors[i]), float(kappa[i]), _known(kappa[i] * errors[n + i]))
         for i, lot in enumerate(lots)
     }
 
@@ -145,17 +141,14 @@ def _alternatives(fits: tuple[Fit, ...]) -> tuple[Alternative, ...]:
     evidence = np.exp(-0.5 * (np.array([fit.aicc for fit in fits]) - fits[0].aicc))
     weights = evidence / evidence.sum()
     return tuple(
-        Alternative(fit.law, fit.aicc, float(weight), fit.error)
-        for fit, weight in zip(fits, weights, strict=True)
+        Alternative(fit.law, fit.aicc, float(weight), fit.error) for fit, weight in zip(fits, weights, strict=True)
     )
 
 
 def _tested_loading(runs: Sequence[ReducedRun], lots: tuple[str, ...], kappa: Floats) -> float:
     """Never beyond what was run, nor beyond where the shared shape was seen (κ·l)."""
     reached = [(float(run.loading[run.used].max()), kappa[lots.index(run.lot)]) for run in runs]
-    return min(
-        max(loading for loading, _ in reached), max(float(factor) * loading for loading, factor in reached)
-    )
+    return min(max(loading for loading, _ in reached), max(float(factor) * loading for loading, factor in reached))
 
 
 def _feed_loading(runs: Sequence[ReducedRun]) -> float | None:
@@ -187,10 +180,7 @@ def _given(medium: Medium) -> Curve:
         else tuple((spec.parameters or {})[name] for name in law.parameters)
     )
     assert spec.tested is not None, "the file's schema asks for the tested range"
-    lots = {
-        name: LotEffect(lot.resistance, None, lot.fouling, None)
-        for name, lot in sorted((spec.lots or {}).items())
-    }
+    lots = {name: LotEffect(lot.resistance, None, lot.fouling, None) for name, lot in sorted((spec.lots or {}).items())}
     tested = spec.tested
     pole = law.pole(*values)
     if values[0] <= 0.0 or tested.loading >= pole:

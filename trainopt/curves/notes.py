@@ -86,8 +86,7 @@ def _trade_off(medium: str, evidence: Evidence) -> Iterator[Flag]:
     variance = np.diag(fit.covariance)
     if not np.all(np.isfinite(variance[[i, j]])):
         text = (
-            "n cannot be told from these runs: the resistance hardly grows; take a law with its own n, "
-            "or a longer run"
+            "n cannot be told from these runs: the resistance hardly grows; take a law with its own n, or a longer run"
         )
         yield Flag("n-and-k", medium, None, text)
         return

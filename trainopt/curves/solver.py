@@ -12,6 +12,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from trainopt.curves.blocking import Floats
 
@@ -35,18 +36,12 @@ class Solution:
 
 
 def least_squares(
-    function: Residuals,
-    start: Floats,
-    lower: Floats,
-    upper: Floats,
-    steps: int = 200,
-    tolerance: float = 1e-10,
+    function: Residuals, start: Floats, lower: Floats, upper: Floats, steps: int = 200, tolerance: float = 1e-10
 ) -> Solution:
     """Minimum of Σr(x)² with lower ≤ x ≤ upper; `function(x)` returns r (n,) and dr/dx (n, k).
 
-    A point where a residual is not finite counts as worse than any other. Stops where a step moves no
-    parameter by more than `tolerance` (relative to its size or 1e-3) or where the best step can save
-    nothing.
+    A point where a residual is not finite counts as worse than any other. Ends where a step moves no
+    parameter by more than `tolerance` (relative to its size or 1e-3).
     """
     x = np.clip(start, lower, upper)
     residuals, jacobian = function(x)
@@ -54,21 +49,16 @@ def least_squares(
     damping, growth = 1e-3, 2.0
     for step in range(steps):
         gradient = jacobian.T @ residuals
-        free = ~(((x <= lower) & (gradient > 0.0)) | ((x >= upper) & (gradient < 0.0)))
+        free = _free(x, gradient, lower, upper)
         if not free.any():
             return Solution(x, residuals, jacobian, step, True)
-        move = _step(jacobian[:, free], gradient[free], damping)
-        trial = x.copy()
-        trial[free] += move
-        trial = np.clip(trial, lower, upper)
+        trial = _moved(x, free, _step(jacobian[:, free], gradient[free], damping), lower, upper)
         moved = trial - x
-        if np.all(np.abs(moved) <= tolerance * (np.abs(x) + 1e-3)):
-            return Solution(x, residuals, jacobian, step, True)
+        if _small(moved, x, tolerance) or damping > 1e16:
+            return _polished(function, Solution(x, residuals, jacobian, step, True), lower, upper, tolerance)
         new_residuals, new_jacobian = function(trial)
         new_cost = float(new_residuals @ new_residuals)
         if not new_cost < cost:
-            if damping > 1e16:
-                return Solution(x, residuals, jacobian, step, True)
             damping, growth = damping * growth, growth * 2.0
             continue
         predicted = -float(moved @ (2.0 * gradient) + moved @ (jacobian.T @ (jacobian @ moved)))
@@ -77,6 +67,44 @@ def least_squares(
         growth = 2.0
         x, residuals, jacobian, cost = trial, new_residuals, new_jacobian, new_cost
     return Solution(x, residuals, jacobian, steps, False)
+
+
+def _free(x: Floats, gradient: Floats, lower: Floats, upper: Floats) -> NDArray[np.bool_]:
+    """Parameters that no bound holds back."""
+    return np.asarray(~(((x <= lower) & (gradient > 0.0)) | ((x >= upper) & (gradient < 0.0))))
+
+
+def _moved(x: Floats, free: NDArray[np.bool_], move: Floats, lower: Floats, upper: Floats) -> Floats:
+    trial = x.copy()
+    trial[free] += move
+    return np.asarray(np.clip(trial, lower, upper))
+
+
+def _small(moved: Floats, x: Floats, tolerance: float) -> bool:
+    return bool(np.all(np.abs(moved) <= tolerance * (np.abs(x) + 1e-3)))
+
+
+def _polished(function: Residuals, found: Solution, lower: Floats, upper: Floats, tolerance: float) -> Solution:
+    """A few undamped steps on the gradient alone: the sum of squares is flat to rounding long before x is
+    settled.
+    """
+    best = found
+    for _ in range(12 if tolerance < 1e-6 else 0):
+        gradient = best.jacobian.T @ best.residuals
+        free = _free(best.x, gradient, lower, upper)
+        if not free.any():
+            break
+        trial = _moved(best.x, free, _step(best.jacobian[:, free], gradient[free], 0.0), lower, upper)
+        if not _small(trial - best.x, best.x, 1e-4):
+            break
+        residuals, jacobian = function(trial)
+        if not np.all(np.isfinite(residuals)) or residuals @ residuals > best.cost * (1.0 + 1e-9) + 1e-300:
+            break
+        settled = _small(trial - best.x, best.x, tolerance)
+        best = Solution(trial, residuals, jacobian, best.steps + 1, True)
+        if settled:
+            break
+    return best
 
 
 def _step(jacobian: Floats, gradient: Floats, damping: float) -> Floats:

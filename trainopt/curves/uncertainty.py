@@ -61,9 +61,7 @@ class Interval:
 def bootstrap(curve: Curve, draws: int = DRAWS, seed: int = 1) -> Draws:
     """Refits of a curve fitted to runs; the same seed gives the same draws."""
     if curve.evidence is None:
-        raise ValueError(
-            f"curve of '{curve.medium}' was given by its parameters; there is nothing to draw from"
-        )
+        raise ValueError(f"curve of '{curve.medium}' was given by its parameters; there is nothing to draw from")
     return _bootstrap(curve.evidence, draws, seed)
 
 
@@ -74,9 +72,7 @@ def _bootstrap(evidence: Evidence, draws: int, seed: int) -> Draws:
     runs = [np.flatnonzero(readings.run == run) for run in range(int(readings.run.max()) + 1)]
     errors = _inflated(readings, fit)
     model = readings.log + fit.residuals / np.sqrt(readings.weight)
-    refits = [
-        _refit(readings, fit, _drawn_runs(readings, runs, rng), errors, model, rng) for _ in range(draws)
-    ]
+    refits = [_refit(readings, fit, _drawn_runs(readings, runs, rng), errors, model, rng) for _ in range(draws)]
     return Draws(
         fit.law,
         readings.lots,
@@ -94,9 +90,7 @@ def _inflated(readings: Readings, fit: Fit) -> Floats:
     return np.asarray(-fit.residuals * np.sqrt(n / max(n - fit.count + 1, 1)))
 
 
-def _drawn_runs(
-    readings: Readings, runs: list[NDArray[np.intp]], rng: np.random.Generator
-) -> list[NDArray[np.intp]]:
+def _drawn_runs(readings: Readings, runs: list[NDArray[np.intp]], rng: np.random.Generator) -> list[NDArray[np.intp]]:
     """Runs drawn with replacement within each lot."""
     out: list[NDArray[np.intp]] = []
     for lot in range(len(readings.lots)):
@@ -255,8 +249,7 @@ def _left_out_error(readings: Readings, fit: Fit) -> float:
         held = readings.at(np.flatnonzero(out))
         lot = readings.lots[int(held.lot[0])]
         log_rho, log_kappa = (
-            (float(part[lots.index(lot)]) if lot in lots else 0.0)
-            for part in (refit.log_rho, refit.log_kappa)
+            (float(part[lots.index(lot)]) if lot in lots else 0.0) for part in (refit.log_rho, refit.log_kappa)
         )
         errors = _foretold(law, refit.parameters, log_rho, log_kappa, held) - held.log
         errors = np.clip(errors, -5.0, 5.0)
@@ -271,9 +264,7 @@ def _without_lot_gaps(readings: Readings) -> tuple[Readings, tuple[str, ...]]:
     return replace(readings, lot=np.searchsorted(present, readings.lot), lots=lots), lots
 
 
-def _foretold(
-    law: Law, parameters: tuple[float, ...], log_rho: float, log_kappa: float, held: Readings
-) -> Floats:
+def _foretold(law: Law, parameters: tuple[float, ...], log_rho: float, log_kappa: float, held: Readings) -> Floats:
     x = np.exp(log_kappa) * held.loading
     with np.errstate(divide="ignore"):
         resistance = log_rho + np.log(law.resistance(x, *parameters))

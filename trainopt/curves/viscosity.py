@@ -25,9 +25,7 @@ def viscosity_at_density(temperature: float, density: float) -> float:
     """
     t, d = temperature / 647.096, density / 322.0
     dilute = 100.0 * math.sqrt(t) / sum(h / t**i for i, h in enumerate(_DILUTE))
-    return dilute * math.exp(
-        d * sum(h * (1.0 / t - 1.0) ** i * (d - 1.0) ** j for (i, j), h in _DENSE.items())
-    )
+    return dilute * math.exp(d * sum(h * (1.0 / t - 1.0) ** i * (d - 1.0) ** j for (i, j), h in _DENSE.items()))
 
 
 def water_density(temperature: float) -> float:
