@@ -9,7 +9,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from trainopt.optimize.index import Index, index_problem
+from trainopt.optimize.index import SINK, SOURCE, Index, index_problem
 from trainopt.optimize.model import build_model
 from trainopt.optimize.solve import INFINITE, Answer, Matrix, Solver, compile_model
 from trainopt.optimize.times import Choice, Route, block_times, objective_of
@@ -54,14 +54,27 @@ def best_route(problem: DesignProblem, options: SolverOptions | None = None) -> 
 
 
 def _hopeless(index: Index) -> bool:
-    """Whether some block has no time, or a stage that must be used has no option: then there is nothing to solve."""
+    """Whether some block has no time, a stage that must be used has no option, or no route is allowed: then there is nothing to solve."""
     problem = index.problem
     for block in problem.blocks:
         longest = problem.longest_time(block)
         if longest <= 0.0 or problem.volume / block.max_flow > longest or block.head <= 0.0:
             return True
     served = {node.place for node in index.nodes}
-    return any(not stage.optional and place not in served for place, (_, stage) in enumerate(index.stages))
+    if any(not stage.optional and place not in served for place, (_, stage) in enumerate(index.stages)):
+        return True
+    return not index.plain and not _passable(index)
+
+
+def _passable(index: Index) -> bool:
+    """Whether some allowed route leads through the train."""
+    reached, onward = {SOURCE}, [SOURCE]
+    while onward:
+        tail = onward.pop()
+        heads = {head for at, head in index.arcs if at == tail} - reached
+        reached |= heads
+        onward.extend(heads)
+    return SINK in reached
 
 
 class _Search:
@@ -117,9 +130,7 @@ class _Search:
                 return answer, route, times
             self.solver.add_row(-INFINITE, len(places) - 1.0, [self.x[k] for k in places], [1.0] * len(places))
 
-    def _improve(
-        self, route: Route, times: tuple[float, ...], best: float
-    ) -> tuple[Route, tuple[float, ...], bool]:
+    def _improve(self, route: Route, times: tuple[float, ...], best: float) -> tuple[Route, tuple[float, ...], bool]:
         """The tie-break's pick if it is proven and no worse, else the one at hand."""
         answer, other, other_times = self._solve()
         if answer.status != "optimal" or other is None or other_times is None:
