@@ -136,7 +136,7 @@ def test_sections_come_in_reading_order() -> None:
         "Train",
         "Where pressure and time go",
         "Curves of the stages",
-        "Course of pressure over the batch",
+        "Pressure over the batch",
         "Cost per batch",
         "Assumptions and warnings",
         "Cautions",

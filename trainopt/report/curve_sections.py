@@ -113,4 +113,4 @@ def course_section(dossier: Dossier, units: str) -> Section | None:
         pressure_column("Limit", units),
     )
     table = Table("Pressure at the pump, by lot", columns, rows)
-    return Section("course", "Course of pressure over the batch", (), (picture,), (table,))
+    return Section("course", "Pressure over the batch", (), (picture,), (table,))
