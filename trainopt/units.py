@@ -129,7 +129,11 @@ _PRESSURE_UNITS_REFUSED = {"psia": "psi", "bara": "bar"}
 _NUMBER = r"[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?"
 _QUANTITY = re.compile(rf"\s*(?P<number>{_NUMBER})\s*(?P<unit>\S.*?)?\s*", re.DOTALL)
 _WORD = re.compile(r"[A-Za-z_]+")
-_UNIT = re.compile(r"(?:[A-Za-z_]+(?:(?:\^|\*\*)?-?[1-9])?|1(?=\s*/)|[*/·() ]|\)(?:\^|\*\*)-?[1-9])+")
+_POWERED = r"[A-Za-z_]+(?:(?:\^|\*\*)?-?[1-9])?"
+_TIMES = r"(?:\s*[*/·]\s*|\s+)"
+_GROUP = rf"\({_POWERED}(?:{_TIMES}{_POWERED})*\)(?:(?:\^|\*\*)-?[1-9])?"
+_FACTOR = rf"(?:{_POWERED}|{_GROUP})"
+_UNIT = re.compile(rf"(?:1\s*/\s*)?{_FACTOR}(?:{_TIMES}{_FACTOR})*")
 _COMMA = re.compile(r"\s*[+-]?\d+,\d")
 _PLAIN = str.maketrans({"²": "^2", "³": "^3", "°": "deg", "µ": "u", "μ": "u"})
 _LONGEST = 80
@@ -149,6 +153,8 @@ def quantity(text: str, dimension: str) -> float:
             unit = "NTU"
         else:
             raise ValueError(missing_unit(text.strip(), dimension))
+    elif not _UNIT.fullmatch(unit):
+        raise ValueError(_not_a_quantity(text, dimension))
     value = _convert(float(match["number"]), unit, dimension)
     if not math.isfinite(value):
         raise ValueError(f"{_quoted(text)} is not a finite number; expected {expected(dimension)}")
@@ -252,7 +258,7 @@ def _pint_unit(unit: str, dimension: str) -> Any:
     if dimension == "pressure" and unit in _PRESSURE_UNITS_REFUSED:
         plain = _PRESSURE_UNITS_REFUSED[unit]
         raise ValueError(f"'{unit}' is absolute pressure; expected gauge pressure, in '{plain}'")
-    if not _UNIT.fullmatch(unit):
+    if not _UNIT.fullmatch(unit.translate(_PLAIN)):
         raise ValueError(f"{_quoted(unit)} is not a unit; expected {expected(dimension)}")
     for word in _WORD.findall(unit):
         if word not in _known_words():

@@ -3,7 +3,7 @@
 from trainopt.files.catalog import Catalog, Holder, Module
 from trainopt.files.check import Checked, check, examine
 from trainopt.files.load import find_root, load_case, load_medium, load_workspace
-from trainopt.files.medium import CurveSpec, Flush, Limits, LotSpec, Medium, Run, Tested, Variability
+from trainopt.files.medium import CurveSpec, Flush, Limits, LotSpec, Medium, Origin, Run, Tested, Variability
 from trainopt.files.scenario import (
     Batch,
     BlockSpec,
@@ -39,6 +39,7 @@ __all__ = [
     "Medium",
     "MediumChoice",
     "Module",
+    "Origin",
     "Product",
     "Pump",
     "ReliabilityBasis",

@@ -9,7 +9,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
 from trainopt.errors import Problem
-from trainopt.files.fields import nearest, written
+from trainopt.files.fields import nearest
 from trainopt.files.medium import Medium
 from trainopt.files.scenario import BlockSpec, Scenario, StageSpec
 from trainopt.files.source import Loc, Source
@@ -125,7 +125,7 @@ def _module_problems(
 ) -> Iterator[Problem]:
     if module not in modules:
         yield _at_stage(source, loc, stage, f"unknown module '{module}'; {nearest(module, modules)}")
-    elif modules[module] not in allowed:
+    elif allowed and modules[module] not in allowed:
         text = f"module '{module}' is of medium '{modules[module]}'; expected one of {', '.join(sorted(allowed))}"
         yield _at_stage(source, loc, stage, text)
 
@@ -198,12 +198,8 @@ def _mapping(data: Any, key: str) -> dict[str, Any]:
 
 
 def _module_media(source: Source | None) -> dict[str, str] | None:
-    """The medium of each module of the catalog as it is written; None where it could not be read."""
-    if source is None:
-        return None
-    modules = _mapping(source.data, "modules")
-    return {
-        name: module["medium"] if isinstance(module["medium"], str) else written(module["medium"])
-        for name, module in modules.items()
-        if isinstance(module, dict) and "medium" in module
-    }
+    """The medium of each module of the catalog; None where one does not say, which is a problem of its own."""
+    modules = _mapping(source.data, "modules") if source is not None else {}
+    media = {name: module.get("medium") for name, module in modules.items() if isinstance(module, dict)}
+    known = {name: medium for name, medium in media.items() if isinstance(medium, str)}
+    return known if len(known) == len(modules) > 0 else None

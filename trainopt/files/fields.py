@@ -44,12 +44,19 @@ def from_file(info: ValidationInfo) -> bool:
     return info.context is not None
 
 
+def nearest_name(name: str, known: Iterable[str]) -> str | None:
+    """The known name that an unknown one is most likely a slip of, if any is near."""
+    by_letters = {one.casefold(): one for one in sorted(known)}
+    near = difflib.get_close_matches(name.casefold(), sorted(by_letters), n=1, cutoff=0.6)
+    return by_letters[near[0]] if near else None
+
+
 def nearest(name: str, known: Iterable[str]) -> str:
     """What to offer in place of an unknown name: the nearest known one, or all of them."""
     known = sorted(known)
-    near = difflib.get_close_matches(name, known, n=1, cutoff=0.6)
+    near = nearest_name(name, known)
     if near:
-        return f"did you mean '{near[0]}'?"
+        return f"did you mean '{near}'?"
     if not known:
         return "expected none"
     most = 12

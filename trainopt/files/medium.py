@@ -214,6 +214,68 @@ class LotSpec(Entry):
     """Multiplier on the loading (kappa): above 1 the lot fouls faster."""
 
 
+@dataclass(frozen=True)
+class StandardErrors(Rule):
+    """Standard errors of a curve's parameters or coefficients by name, each in its parameter's unit."""
+
+    def _expected(self) -> str:
+        return "a mapping such as {R0: 0.00001 bar/LMH, k: 0.0002 m2/L}"
+
+    def _read(self, value: Any, info: ValidationInfo, /) -> dict[str, float]:
+        if not isinstance(value, dict):
+            raise ValueError(f"{written(value)} holds no standard errors; expected {self.expected}")
+        return _each({key: self.rule(str(key)) for key in value}, value, info)
+
+    @staticmethod
+    def rule(name: str) -> Rule:
+        """How the standard error of that name is read."""
+        if name == "n":
+            return Number(Range(least=0.0), "0.1")
+        power = name[1:] if name[:1] == "c" and name[1:] in {"1", "2", "3"} else ""
+        if power:
+            return Amount(f"resistance_per_loading_{power}", Range(least=0.0))
+        return Amount("resistance" if name in {"R0", "c0"} else "per_loading", Range(least=0.0))
+
+
+class OriginRun(Entry):
+    """One bench run that a frozen curve was fitted to."""
+
+    file: Annotated[Path, FilePath()]
+    """The recorded table, relative to the medium file."""
+    lot: Annotated[str, Name("a")] = "unnamed"
+    """The lot of feed that was run."""
+    sha256: Annotated[str, Words("sha256:…")]
+    """Hash of the file when the curve was frozen."""
+
+
+class LotErrors(Entry):
+    """Standard errors of a lot's multipliers."""
+
+    resistance: Annotated[float, Number(Range(least=0.0), "0.01")] | None = None
+    """Of the multiplier on the resistance."""
+    fouling: Annotated[float, Number(Range(least=0.0), "0.01")] | None = None
+    """Of the multiplier on the loading."""
+
+
+class Origin(Entry):
+    """Where a curve given by its parameters came from, as `trainopt curve --freeze` writes it."""
+
+    runs: tuple[OriginRun, ...] = ()
+    """The runs it was fitted to; one that has changed since is a warning."""
+    standard_errors: Annotated[dict[str, float], StandardErrors()] | None = None
+    """Standard errors of the parameters."""
+    lots: dict[str, LotErrors] | None = None
+    """Standard errors of the lots' multipliers."""
+    turbidity: Turbidity | None = None
+    """The turbidity limit that `turbidity_loading` belongs to."""
+    pool_turbidity: Turbidity | None = None
+    """The limit on the pooled filtrate that `turbidity_loading` belongs to."""
+    turbidity_loading: Annotated[float, Amount("loading", Range(least=0.0))] | None = None
+    """Loading at which the filtrate reached a turbidity limit."""
+    feed_loading: Loading | None = None
+    """Loading that the filter upstream had reached when the feed of the runs was collected."""
+
+
 class CurveSpec(Entry):
     """Resistance against loading: by bench runs, by a law's parameters, or by a polynomial's coefficients."""
 
@@ -229,6 +291,8 @@ class CurveSpec(Entry):
     """The range the parameters or coefficients were tested over (not with runs, which say it themselves)."""
     lots: dict[str, LotSpec] | None = None
     """How lots of feed differ, for a curve given by parameters or coefficients."""
+    origin: Origin | None = None
+    """The runs that the parameters were fitted to, with their uncertainty."""
 
 
 class Limits(Entry):

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from typing import Any
 
 from trainopt.errors import Problem
-from trainopt.files.fields import nearest
+from trainopt.files.fields import nearest, nearest_name
 from trainopt.files.medium import LAWS, POLYNOMIALS, Medium
 from trainopt.files.source import Source
 
@@ -49,7 +49,7 @@ def _curve_problems(source: Source, curve: dict[str, Any]) -> Iterator[Problem]:
 def _by_runs(source: Source, curve: dict[str, Any]) -> Iterator[Problem]:
     if curve["runs"] == ():
         yield source.at(("curve", "runs"), "is empty; expected at least one bench run")
-    for field in ("tested", "lots"):
+    for field in ("tested", "lots", "origin"):
         if curve.get(field) is not None:
             text = "belongs to a curve given by parameters; expected none beside runs, which say it themselves"
             yield source.at(("curve", field), text)
@@ -86,13 +86,14 @@ def _parameters(source: Source, law: str, values: Any) -> Iterator[Problem]:
         return
     if not isinstance(values, dict):
         return
+    unknown = [name for name in values if name not in LAWS[law]]
+    meant = {nearest_name(name, LAWS[law]) for name in unknown}
+    for name in unknown:
+        text = f"law '{law}' has no parameter '{name}'; {nearest(name, LAWS[law])}"
+        yield source.problem((*loc, name), f"curve.parameters: {text}")
     for name in LAWS[law]:
-        if name not in values:
-            yield source.at(loc, f"'{name}' of law '{law}' is missing; expected {', '.join(LAWS[law])}")
-    for name in values:
-        if name not in LAWS[law]:
-            text = f"law '{law}' has no parameter '{name}'; {nearest(name, LAWS[law])}"
-            yield source.problem((*loc, name), f"curve.parameters: {text}")
+        if name not in values and name not in meant:
+            yield source.at(loc, f"'{name}' is missing; law '{law}' expected {', '.join(LAWS[law])}")
 
 
 def _run_problems(source: Source, medium: Medium) -> Iterator[Problem]:

@@ -93,7 +93,8 @@ def expectation(field: FieldInfo) -> str:
     """What a field should hold, completing "expected …"."""
     rule = rule_of(field)
     if rule is not None:
-        return rule.expected
+        other = f" or {_of(field.annotation)}" if entry(field.annotation) else ""
+        return rule.expected + other
     inside = items(field.annotation)
     if inside is not None:
         kind = "a mapping of names" if is_mapping(field.annotation) else "a list"

@@ -8,7 +8,7 @@ from pydantic import BaseModel, ValidationError
 from pydantic_core import ErrorDetails
 
 from trainopt.errors import Problem
-from trainopt.files.fields import nearest, written
+from trainopt.files.fields import nearest, nearest_name, written
 from trainopt.files.schema import entry_at, expectation, field_at
 from trainopt.files.source import Loc, Source
 
@@ -21,9 +21,19 @@ def validated(model: type[Model], source: Source) -> tuple[Model | None, list[Pr
         found = model.model_validate(source.data, context={"folder": source.path.parent})
     except ValidationError as error:
         details = error.errors(include_url=False)
-        return None, [_problem(model, source, detail) for detail in details]
+        meant = {_meant(model, detail) for detail in details if detail["type"] == "extra_forbidden"}
+        told = [detail for detail in details if detail["type"] != "missing" or detail["loc"] not in meant]
+        return None, [_problem(model, source, detail) for detail in told]
     found.__pydantic_private__ = {"_source": source}
     return found, []
+
+
+def _meant(model: type[BaseModel], detail: ErrorDetails) -> Loc:
+    """The place of the key that an unknown one is a slip of: that it is missing need not be said too."""
+    *above, key = detail["loc"]
+    owner = entry_at(model, tuple(above))
+    near = nearest_name(str(key), owner.model_fields) if owner is not None else None
+    return (*above, near or key)
 
 
 def _problem(model: type[BaseModel], source: Source, detail: ErrorDetails) -> Problem:
