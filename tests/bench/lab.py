@@ -48,6 +48,7 @@ class Spec:
     coefficients: tuple[float, ...] | None = None
     tested: Any = None
     lots: Any = None
+    origin: Any = None
 
 
 @dataclass(frozen=True)

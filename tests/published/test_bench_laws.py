@@ -12,12 +12,8 @@ from trainopt.curves.solver import covariance, least_squares
 
 # NIST Statistical Reference Datasets, nonlinear regression, Misra1a to Misra1d: volume adsorbed against
 # pressure (D. Misra, 1978). Data and certified values retyped from the files of a general fitting library.
-Y = np.array(
-    [10.07, 14.73, 17.94, 23.93, 29.61, 35.18, 40.02, 44.82, 50.76, 55.05, 61.01, 66.40, 75.47, 81.78]
-)
-X = np.array(
-    [77.6, 114.9, 141.1, 190.8, 239.9, 289.0, 332.8, 378.4, 434.8, 477.3, 536.8, 593.1, 689.1, 760.0]
-)
+Y = np.array([10.07, 14.73, 17.94, 23.93, 29.61, 35.18, 40.02, 44.82, 50.76, 55.05, 61.01, 66.40, 75.47, 81.78])
+X = np.array([77.6, 114.9, 141.1, 190.8, 239.9, 289.0, 332.8, 378.4, 434.8, 477.3, 536.8, 593.1, 689.1, 760.0])
 
 # Each model is filtrate volume against time at constant pressure for one order n of the general law: with
 # R/R0 = (1 − V/b1)^(−1/(n − 1)) and J0 = b1·b2, the volume at time x is
@@ -42,9 +38,7 @@ def volume_at(time: float, p: tuple[float, ...]) -> float:
 
 @pytest.mark.parametrize("name", CERTIFIED)
 @pytest.mark.parametrize("start", [(500.0, 1e-4), (300.0, 3e-4)])
-def test_certified_regressions_are_the_general_law_at_constant_pressure(
-    name: str, start: tuple[float, float]
-) -> None:
+def test_certified_regressions_are_the_general_law_at_constant_pressure(name: str, start: tuple[float, float]) -> None:
     """Least squares on the volumes, with the law's integral, its slopes and our solver: ten digits."""
     n, (b1, b1_error), (b2, b2_error), rss = CERTIFIED[name]
     law = LAWS["hermia"]

@@ -7,7 +7,6 @@ from __future__ import annotations
 import csv
 import io
 from dataclasses import dataclass
-from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -188,11 +187,3 @@ def _spreadsheet(rows: list[list[object]]) -> bytes:
     out = io.BytesIO()
     book.save(out)
     return out.getvalue()
-
-
-def sheet_kind(path: Path) -> str:
-    """Which kind of sheet the file's name asks for: "csv" or "xlsx"."""
-    kind = path.suffix.lower().lstrip(".")
-    if kind not in {"csv", "xlsx"}:
-        raise InputError([Problem(str(path), 0, "expected a name that ends in .csv or .xlsx")])
-    return kind

@@ -28,19 +28,31 @@ def curve(
         typer.Option(metavar="FILE", help="Draw resistance against loading as .svg, .png or .pdf."),
     ] = None,
     units: Annotated[Units, typer.Option(help="Unit of pressure in the tables and the picture.")] = Units.bar,
-    force: Annotated[bool, typer.Option("--force", help="Replace the picture if it exists.")] = False,
+    freeze: Annotated[
+        Path | None,
+        typer.Option(metavar="FILE", help="Write the curve by its parameters as a medium file (.yaml)."),
+    ] = None,
+    force: Annotated[bool, typer.Option("--force", help="Replace the files written if they exist.")] = False,
 ) -> Status:
     """Fit the resistance curve of a medium.
 
     Prints the reduced bench readings, the law with its parameters and lots, and the alternatives;
-    --plot draws them.
+    --plot draws them; --freeze writes a medium file that gives the same designs without the runs.
     """
     target = None if plot is None else output_file(plot, PLOTS, force)
+    frozen = None if freeze is None else output_file(freeze, (".yaml",), force)
     with progress("fitting"):
         from trainopt.curves.medium import fit_curve
         from trainopt.files import load_medium
 
-        result = fit_curve(load_medium(medium))
+        read = load_medium(medium)
+        result = fit_curve(read)
+    if frozen is not None:
+        from trainopt.curves.freeze import frozen_text
+        from trainopt.files.write import write_text_atomic
+
+        write_text_atomic(frozen, frozen_text(read, result, frozen), overwrite=force)
+        say(f"wrote {frozen}")
     if json:
         from trainopt.report.json import curve_document, dumps
 

@@ -11,6 +11,7 @@ from trainopt.cli.check import check
 from trainopt.cli.curve import curve
 from trainopt.cli.design import design
 from trainopt.cli.report import report
+from trainopt.cli.sheet import sheet
 from trainopt.cli.status import guarded
 
 EXIT_STATUSES = (
@@ -47,5 +48,5 @@ def everywhere(
     """Options before any command."""
 
 
-for command in (design, curve, check, report):
+for command in (design, curve, check, sheet, report):
     program.command()(guarded(command))

@@ -14,6 +14,7 @@ from trainopt.curves.curve import Alternative, Curve, Estimate, LotEffect, Point
 from trainopt.curves.endpoint import turbidity_loading
 from trainopt.curves.evidence import Evidence, weigh
 from trainopt.curves.fit import Fit
+from trainopt.curves.given import given_curve
 from trainopt.curves.laws import LAWS
 from trainopt.curves.notes import curve_flags
 from trainopt.curves.readings import fit_readings
@@ -27,7 +28,7 @@ if TYPE_CHECKING:
 def fit_curve(medium: Medium) -> Curve:
     """The resistance curve of a medium; raises `InputError` with every problem in its runs."""
     if not medium.curve.runs:
-        return _given(medium)
+        return given_curve(medium)
     runs, problems = _reduced_runs(medium)
     if problems:
         raise InputError(problems)
@@ -168,43 +169,3 @@ def _points(runs: Iterable[ReducedRun]) -> Iterable[Point]:
         ):
             seen = turbidity if turbidity == turbidity else None
             yield Point(run.name, row, run.lot, loading, flux, resistance, seen, excluded)
-
-
-def _given(medium: Medium) -> Curve:
-    """A curve by its parameters, checked to be a resistance on its tested range."""
-    spec = medium.curve
-    law = LAWS[spec.law]
-    values = (
-        spec.coefficients
-        if spec.coefficients is not None
-        else tuple((spec.parameters or {})[name] for name in law.parameters)
-    )
-    assert spec.tested is not None, "the file's schema asks for the tested range"
-    lots = {name: LotEffect(lot.resistance, None, lot.fouling, None) for name, lot in sorted((spec.lots or {}).items())}
-    tested = spec.tested
-    pole = law.pole(*values)
-    if values[0] <= 0.0 or tested.loading >= pole:
-        text = f"law '{spec.law}' with these parameters is not finite and positive up to the tested loading"
-        field = "coefficients" if law.polynomial else "parameters"
-        if values[0] > 0.0:
-            text += f"; expected `tested: loading` below {pole:.4g} L/m2"
-        raise InputError([medium.source.at(("curve", field), text)])
-    return Curve(
-        medium=medium.medium,
-        law=spec.law,
-        parameters={
-            name: Estimate(value, None, unit)
-            for name, value, unit in zip(law.parameters, values, law.units, strict=True)
-        },
-        covariance=None,
-        tested_loading=tested.loading,
-        tested_flux=tested.flux,
-        tested_temperature=tested.temperature,
-        turbidity_loading=None,
-        feed_loading=None,
-        lots=lots,
-        alternatives=(),
-        points=(),
-        flags=(),
-        source="parameters",
-    )
