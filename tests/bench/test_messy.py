@@ -168,6 +168,16 @@ def test_a_file_that_is_no_spreadsheet(tmp_path: Path) -> None:
         reduced(write_text(tmp_path / "a.xlsx", "hello"))
 
 
+@pytest.mark.parametrize(("form", "per"), [("mm:ss", 60.0), ("h:mm", 1.0)])
+def test_two_part_times_need_their_form(tmp_path: Path, form: str, per: float) -> None:
+    """'0:30' may be half an hour or half a minute: refused unless the header says which."""
+    rows = [["time", "V (mL)", "P (psi)"], *([f"{i // 2}:{30 * (i % 2):02d}", str(3 * i), "5"] for i in range(9))]
+    with pytest.raises(InputError, match=r"a.csv:2: column 'time': '0:00' may be h:mm or mm:ss; expected the header"):
+        reduced(write_rows(tmp_path / "a.csv", rows))
+    rows[0][0] = f"time ({form})"
+    np.testing.assert_allclose(reduced(write_rows(tmp_path / "a.csv", rows)).time, np.arange(9) / 2.0 / per)
+
+
 def test_balance_with_a_tare(tmp_path: Path) -> None:
     rows = LAB.table()
     clean = reduced(write_rows(tmp_path / "clean.csv", rows))

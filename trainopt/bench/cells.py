@@ -38,14 +38,23 @@ def column_values(table: Table, column: Column, problems: list[Problem]) -> Floa
 
 
 def _clock_times(table: Table, column: Column, cells: list[str], problems: list[Problem]) -> Floats:
-    """`h:mm:ss` (or `h:mm`) as hours since the first reading; a clock that passes midnight goes on
-    counting.
+    """Clock times as hours since the first reading; a clock that passes midnight goes on counting.
+
+    Three parts are h:mm:ss. Two could be h:mm or mm:ss, so the header must say which.
     """
     out = np.full(len(cells), np.nan)
+    two = [index for index, cell in enumerate(cells) if CLOCK.fullmatch(cell) and cell.count(":") == 1]
+    if two and not column.clock:
+        text = f"column '{column.header}': '{cells[two[0]]}' may be h:mm or mm:ss"
+        expected = f"expected the header to say, as in '{column.header} (mm:ss)'"
+        problems.append(table.problem(table.lines[two[0]], f"{text}; {expected}"))
+        return out
+    shortest = 1 if column.clock in {"mm:ss", "m:ss"} else 0
     for index, cell in enumerate(cells):
         if CLOCK.fullmatch(cell):
             parts = [float(part) for part in cell.split(":")]
-            out[index] = sum(part / 60.0**power for power, part in enumerate(parts))
+            shift = shortest if len(parts) == 2 else 0
+            out[index] = sum(part / 60.0 ** (power + shift) for power, part in enumerate(parts))
         elif cell:
             text = f"column '{column.header}': '{cell}' is not a time; expected h:mm:ss throughout"
             problems.append(table.problem(table.lines[index], text))
@@ -69,7 +78,8 @@ def complete_rows(
         if role not in {"turbidity", "feed_volume", "feed_mass"}:
             keep &= np.isfinite(column)
     bad = {problem.line for problem in problems}
-    for index in np.flatnonzero(np.isnan(values["time"])):
+    ambiguous = any("may be h:mm or mm:ss" in problem.text for problem in problems)
+    for index in np.flatnonzero(np.isnan(values["time"])) if not ambiguous else ():
         line = table.lines[index]
         if line not in bad:
             problems.append(table.problem(line, f"column '{columns['time'].header}' is empty; expected a time"))

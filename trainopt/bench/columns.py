@@ -42,12 +42,16 @@ EXAMPLES = {
 
 @dataclass(frozen=True)
 class Column:
-    """One column with its role: `index` in the table, `header` as written, `unit` (None: clock times)."""
+    """One column with its role: `index` in the table, `header` as written, `unit` (None: clock times).
+
+    `clock` is the form of clock times that the header states ("" where it states none).
+    """
 
     role: str
     index: int
     header: str
     unit: HeaderUnit | None
+    clock: str = ""
 
 
 @dataclass(frozen=True)
@@ -62,6 +66,8 @@ class _Header:
     def words(self) -> set[str]:
         return set(re.findall(r"[a-zµδ]+\d*|\d+", self.name.casefold().replace("Δ".casefold(), "delta ")))
 
+
+CLOCK_FORMS = {"hh:mm:ss", "h:mm:ss", "hh:mm", "h:mm", "mm:ss", "m:ss"}
 
 _TIME_WORDS = {"time", "t", "elapsed", "clock", "duration"}
 _IGNORED = {
@@ -117,8 +123,9 @@ class _Search:
         dimension, example = DIMENSIONS[role], EXAMPLES[role]
         if unit is None and role == "turbidity" and not header.unit_text:
             return Column(role, header.index, header.text, HeaderUnit("NTU", "turbidity", 1.0))
-        if unit is None and role == "time" and _is_clock(self.table, header.index):
-            return Column(role, header.index, header.text, None)
+        clock = not header.unit_text or header.unit_text.casefold() in CLOCK_FORMS
+        if unit is None and role == "time" and clock and _is_clock(self.table, header.index):
+            return Column(role, header.index, header.text, None, header.unit_text.casefold())
         if unit is None:
             unknown = f"has the unit '{header.unit_text}', which is not known" if header.unit_text else "has no unit"
             self.wrong(f"column '{header.text}' ({role}) {unknown}; expected for example '{example}'")
