@@ -20,9 +20,7 @@ def curve(
         Path,
         typer.Argument(metavar="MEDIUM", help="The medium file, for example models/media/oat-coarse.yaml."),
     ],
-    json: Annotated[
-        bool, typer.Option("--json", help="Print the whole result as JSON instead of tables.")
-    ] = False,
+    json: Annotated[bool, typer.Option("--json", help="Print the whole result as JSON instead of tables.")] = False,
     plot: Annotated[
         Path | None,
         typer.Option(metavar="FILE", help="Draw resistance against loading as .svg, .png or .pdf."),
@@ -64,10 +62,10 @@ def curve(
     if target is not None:
         with progress("drawing"):
             from trainopt.files.write import write_bytes_atomic
-            from trainopt.report.curve_figure import curve_figure
+            from trainopt.report.curve_page import curve_page
             from trainopt.report.picture import picture_bytes
 
-            picture = picture_bytes(curve_figure(result, units.value), target.suffix)
+            picture = picture_bytes(curve_page(result, units.value), target.suffix)
             write_bytes_atomic(target, picture, overwrite=force)
         say(f"wrote {target}")
     return Status.DONE

@@ -102,7 +102,8 @@ class Alternative:
 class Point:
     """One reduced reading: loading L/m², flux LMH, resistance bar/LMH, turbidity NTU (None where not read).
 
-    `excluded` is the reason why the fit left it out, None where it was used.
+    `excluded` is the reason why the fit left it out, None where it was used; `pool_turbidity` NTU is that of the
+    filtrate pooled so far.
     """
 
     run: str
@@ -113,6 +114,7 @@ class Point:
     resistance: float
     turbidity: float | None
     excluded: str | None
+    pool_turbidity: float | None = None
 
 
 @dataclass(frozen=True)

@@ -163,9 +163,9 @@ def _feed_loading(runs: Sequence[ReducedRun]) -> float | None:
 
 def _points(runs: Iterable[ReducedRun]) -> Iterable[Point]:
     for run in runs:
-        columns = (run.rows, run.loading, run.flux, run.resistance, run.turbidity)
-        for (row, loading, flux, resistance, turbidity), excluded in zip(
-            zip(*(column.tolist() for column in columns), strict=True), run.excluded, strict=True
-        ):
-            seen = turbidity if turbidity == turbidity else None
-            yield Point(run.name, row, run.lot, loading, flux, resistance, seen, excluded)
+        columns = (run.rows, run.loading, run.flux, run.resistance, run.turbidity, run.pool_turbidity)
+        rows = zip(*(column.tolist() for column in columns), strict=True)
+        for (row, loading, flux, resistance, turbidity, pooled), excluded in zip(rows, run.excluded, strict=True):
+            read = turbidity if turbidity == turbidity else None
+            pool = pooled if pooled == pooled else None
+            yield Point(run.name, row, run.lot, loading, flux, resistance, read, excluded, pool)
