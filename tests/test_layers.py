@@ -59,7 +59,7 @@ def test_only_optimize_knows_pyomo_and_the_solver(path: Path) -> None:
 @pytest.mark.parametrize("path", SOURCES, ids=lambda p: str(p.relative_to(PACKAGE)))
 def test_dependencies_are_declared(path: Path) -> None:
     declared = {"highspy", "jinja2", "matplotlib", "numpy", "openpyxl", "pandas", "pint", "pydantic", "pydantic_core",
-                "pyomo", "yaml", "rich", "scipy", "typer", "click", "trainopt"}  # fmt: skip
+                "pyomo", "yaml", "rich", "scipy", "typer", "click", "markupsafe", "trainopt"}  # fmt: skip
     for module, line in imported(path):
         top = module.split(".")[0]
         assert top in declared or top in sys.stdlib_module_names, f"{path}:{line}: {module} is not a declared dependency"

@@ -22,7 +22,7 @@ from trainopt.version import __version__
 
 ROOT = Path(__file__).parents[2]
 RUNNER = CliRunner()
-COMMANDS = ("design", "curve", "check")
+COMMANDS = ("design", "curve", "check", "sheet", "report")
 
 
 def trainopt(*arguments: str, **options: object) -> subprocess.CompletedProcess[str]:
@@ -54,7 +54,8 @@ def test_each_command_explains_itself(command: str) -> None:
 
 def test_options_of_the_commands() -> None:
     promised = {
-        "design": ("SCENARIO", "--json", "--objective", "--units", "--time-limit"),
+        "design": ("SCENARIO", "--json", "--objective", "--units", "--time-limit", "--report", "--force"),
+        "report": ("SCENARIO", "--output", "--objective", "--units", "--time-limit", "--force"),
         "curve": ("MEDIUM", "--json", "--plot", "--units", "--force"),
         "check": ("PATH...",),
     }
@@ -144,9 +145,7 @@ def test_a_reader_that_goes_away_is_no_traceback() -> None:
         "app()\n"
     )
     shell = f'{sys.executable} -c "$SCRIPT" | head -n 1; exit ${{PIPESTATUS[0]}}'
-    result = subprocess.run(
-        ["bash", "-c", shell], env={**os.environ, "SCRIPT": script}, capture_output=True, text=True
-    )
+    result = subprocess.run(["bash", "-c", shell], env={**os.environ, "SCRIPT": script}, capture_output=True, text=True)
     assert result.stdout == "a line that nobody reads\n"
     assert result.stderr == ""
     assert result.returncode == 141

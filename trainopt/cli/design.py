@@ -20,18 +20,14 @@ def design(
         Path,
         typer.Argument(metavar="SCENARIO", help="The scenario file, for example scenarios/harvest.yaml."),
     ],
-    json: Annotated[
-        bool, typer.Option("--json", help="Print the whole result as JSON instead of tables.")
-    ] = False,
+    json: Annotated[bool, typer.Option("--json", help="Print the whole result as JSON instead of tables.")] = False,
     objective: Annotated[
         ObjectiveKind | None, typer.Option(help="What to make least, in place of the scenario's own.")
     ] = None,
     units: Annotated[Units, typer.Option(help="Unit of pressure in the tables.")] = Units.bar,
     time_limit: Annotated[
         float | None,
-        typer.Option(
-            min=0.0, metavar="S", help="Stop the search after so many seconds, with the best found."
-        ),
+        typer.Option(min=0.0, metavar="S", help="Stop the search after so many seconds, with the best found."),
     ] = None,
     report: Annotated[
         Path | None,

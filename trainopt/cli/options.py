@@ -45,13 +45,9 @@ def output_file(path: Path, suffixes: tuple[str, ...], force: bool) -> Path:
 
     kinds = ", ".join(suffixes)
     if path.suffix.lower() not in suffixes:
-        raise InputError(
-            [Problem(str(path), 0, f"cannot be written as '{path.suffix}'; expected one of {kinds}")]
-        )
+        raise InputError([Problem(str(path), 0, f"cannot be written as '{path.suffix}'; expected one of {kinds}")])
     if not path.parent.is_dir():
-        raise InputError(
-            [Problem(str(path.parent), 0, f"no such folder; expected one to write {path.name} into")]
-        )
+        raise InputError([Problem(str(path.parent), 0, f"no such folder; expected one to write {path.name} into")])
     if path.is_dir():
         raise InputError([Problem(str(path), 0, "is a folder; expected a file to write")])
     if path.exists() and not force:

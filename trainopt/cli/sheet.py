@@ -23,7 +23,7 @@ def sheet(
     units: Annotated[Units, typer.Option(help="Unit of pressure in the sheet.")] = Units.bar,
     force: Annotated[bool, typer.Option("--force", help="Replace the sheet if it exists.")] = False,
 ) -> Status:
-    """Plan a bench run at constant flow and write the sheet to record it in.
+    """Plan a bench run and write the sheet to record it in.
 
     Pump settings, volumes, reading times, endpoints and cautions; the sheet, filled in, is read as a run.
     """

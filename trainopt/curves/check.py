@@ -23,8 +23,10 @@ def check(paths: Iterable[Path | str]) -> tuple[tuple[Problem, ...], tuple[Probl
     bench file.
     """
     checked = examine(paths)
+    faulty = {problem.file for problem in checked.problems}
     for medium in checked.media.values():
-        checked.problems.update(_curve_problems(medium))
+        if medium.source.shown not in faulty:  # a curve can only be fitted as its file says, once that is right
+            checked.problems.update(_curve_problems(medium))
     for file, media in checked.runs.items():
         for medium in media:
             checked.problems.update(_run_problems(medium, file))

@@ -48,7 +48,7 @@ def report_html(dossier: Dossier, units: str = "bar") -> str:
         lstrip_blocks=True,
         keep_trailing_newline=True,
     )
-    environment.filters.update(plain=plain, anchor=anchor, drawn=drawn, breakable=breakable)
+    environment.filters.update(plain=plain, drawn=drawn, breakable=breakable)
     page = environment.get_template("design.html.jinja")
     return page.render(
         title=dossier.design.scenario,
@@ -66,13 +66,10 @@ def breakable(text: str) -> Markup:
     """Text as markup that may break inside its long words."""
     from markupsafe import Markup, escape
 
-    pieces = [part[i : i + LONGEST] for part in re.split(r"(?<=[\s-])", text) for i in range(0, len(part), LONGEST)]
-    return Markup("<wbr>").join(escape(piece) for piece in pieces)
-
-
-def anchor(name: str) -> str:
-    """A name as an id that any page takes."""
-    return re.sub(r"[^A-Za-z0-9_-]", "_", name)
+    parts = re.split(r"(?<=[\s-])", text)
+    return Markup("").join(
+        Markup("<wbr>").join(escape(part[i : i + LONGEST]) for i in range(0, len(part), LONGEST)) for part in parts
+    )
 
 
 def key_figures(dossier: Dossier) -> tuple[tuple[str, str], ...]:
