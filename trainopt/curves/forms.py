@@ -45,9 +45,19 @@ def forms(law: Law, reach: float, loading: Floats, resistance: Floats) -> Iterat
     """The forms to try, in order, for a fit over loadings up to `reach` L/m²."""
     first, last = _ends(loading, resistance)
     if law.polynomial:
-        yield from _polynomial_forms(law, reach, first, last)
+        yield from _polynomial_forms(law, reach, first, last, loading, resistance)
+    elif law.name == "cake":
+        line = np.stack([np.ones_like(loading), loading / reach], axis=1)
+        r0, rise = np.maximum(_relative_least_squares(line, resistance), 1e-3 * first)
+        yield _mechanistic_form(law, reach, float(r0), float(r0 + rise))
     else:
         yield _mechanistic_form(law, reach, first, last)
+
+
+def _relative_least_squares(columns: Floats, resistance: Floats) -> Floats:
+    """Coefficients that make the sum of squared relative errors of a linear law least, lots as one."""
+    solution = np.linalg.lstsq(columns / resistance[:, None], np.ones(len(resistance)), rcond=None)[0]
+    return np.asarray(solution)
 
 
 def _ends(loading: Floats, resistance: Floats) -> tuple[float, float]:
@@ -108,11 +118,16 @@ def _constants(name: str, ratio: float) -> list[tuple[float, ...]]:
     ]
 
 
-def _polynomial_forms(law: Law, reach: float, first: float, last: float) -> Iterator[Form]:
+def _polynomial_forms(
+    law: Law, reach: float, first: float, last: float, loading: Floats, resistance: Floats
+) -> Iterator[Form]:
     degree = law.degree or 0
     matrix = _from_ends(degree, reach) * first
     rise = last / first - 1.0
-    start = np.array([1.0, *[rise] * degree])
+    powers = loading[:, None] ** np.arange(degree + 1)
+    start = _relative_least_squares(powers @ matrix, resistance)
+    if not np.all(powers @ matrix @ start > 0.0):
+        start = np.array([1.0, *[rise] * degree])
     low = np.array([1e-6, *[0.0] * degree])
     high = np.full(degree + 1, np.inf)
 

@@ -113,7 +113,7 @@ def _step(jacobian: Floats, gradient: Floats, damping: float) -> Floats:
     scale = np.where(scale > 0.0, scale, 1.0)
     scaled = jacobian / scale
     normal = scaled.T @ scaled
-    normal[np.diag_indices_from(normal)] += damping
+    normal.flat[:: len(normal) + 1] += damping
     try:
         move = np.linalg.solve(normal, -gradient / scale)
     except np.linalg.LinAlgError:
