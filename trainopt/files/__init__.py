@@ -1,6 +1,7 @@
 """What the user wrote: YAML files to frozen typed objects in canonical units, each problem with file and line."""
 
 from trainopt.files.catalog import Catalog, Holder, Module
+from trainopt.files.change import Field, field_dimension, find_field, set_field
 from trainopt.files.check import Checked, check, examine
 from trainopt.files.load import find_root, load_case, load_medium, load_workspace
 from trainopt.files.medium import CurveSpec, Flush, Limits, LotSpec, Medium, Origin, Run, Tested, Variability
@@ -30,6 +31,7 @@ __all__ = [
     "Costs",
     "CurveSpec",
     "FeedVariability",
+    "Field",
     "Fix",
     "Flush",
     "Holder",
@@ -52,10 +54,13 @@ __all__ = [
     "Workspace",
     "check",
     "examine",
+    "field_dimension",
     "file_hash",
+    "find_field",
     "find_root",
     "load_case",
     "load_medium",
     "load_workspace",
+    "set_field",
     "shown_path",
 ]

@@ -4,12 +4,11 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import TypeVar
 
 from trainopt.errors import InputError, Problem
 from trainopt.files.catalog import Catalog
 from trainopt.files.crosscheck import case_problems, case_warnings, workspace_problems, workspace_warnings
-from trainopt.files.fields import Entry
+from trainopt.files.inherit import read_inherited
 from trainopt.files.medium import Medium
 from trainopt.files.medium_check import medium_problems
 from trainopt.files.scenario import Scenario
@@ -17,8 +16,6 @@ from trainopt.files.scenario_check import scenario_problems
 from trainopt.files.source import Source, read_source, shown_path
 from trainopt.files.validate import validated
 from trainopt.files.workspace import Case, Workspace
-
-File = TypeVar("File", bound=Entry)
 
 
 @dataclass
@@ -116,9 +113,9 @@ def read_medium(path: Path) -> tuple[Medium | None, set[str], list[Problem]]:
 
 
 def read_scenario(path: Path) -> tuple[Scenario | None, list[Problem]]:
-    """A scenario file: the object where it fits the schema, and its problems by itself."""
+    """A scenario file with what it extends: the object where it fits the schema, and its problems by itself."""
     try:
-        source, problems = read_source(path)
+        source, problems = read_inherited(path)
     except InputError as error:
         return None, list(error.problems)
     scenario, faults = validated(Scenario, source)
