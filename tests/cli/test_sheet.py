@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 from pathlib import Path
 
 from typer.testing import CliRunner
@@ -47,3 +48,23 @@ def test_freeze_writes_a_medium_file(tmp_path: Path) -> None:
     assert frozen.exit_code == 0, frozen.stderr
     assert "given by its parameters" in frozen.stdout
     assert RUNNER.invoke(program, ["curve", str(medium), "--freeze", str(target)]).exit_code == 2
+
+
+def test_the_loading_at_a_resistance(tmp_path: Path) -> None:
+    medium = str(ROOT / "models" / "media" / "rye-fine.yaml")
+    result = RUNNER.invoke(program, ["curve", medium, "--at", "0.01 bar/LMH"])
+    assert result.exit_code == 0
+    assert "Loading where the resistance reaches 0.0100 bar/LMH" in result.stdout
+    wrong = RUNNER.invoke(program, ["curve", medium, "--at", "0.01"])
+    assert wrong.exit_code == 2
+    assert wrong.stderr.startswith("--at: 0.01 has no unit")
+
+
+def test_json_carries_the_uncertainty() -> None:
+    medium = str(ROOT / "models" / "media" / "rye-fine.yaml")
+    document = json.loads(RUNNER.invoke(program, ["curve", medium, "--json"]).stdout)
+    band = document["band"]
+    assert len(band["loading_L_m2"]) == len(band["low_bar_per_LMH"]) == len(band["high_bar_per_LMH"]) == 41
+    assert all(low < high for low, high in zip(band["low_bar_per_LMH"], band["high_bar_per_LMH"], strict=True))
+    assert document["lot_spread"]["lots"] == 3
+    assert set(document["left_out_errors"]) == {other["law"] for other in document["alternatives"]}

@@ -8,7 +8,7 @@ from typing import Annotated
 
 import typer
 
-from trainopt.cli.options import Units, output_file
+from trainopt.cli.options import Units, amount, output_file
 from trainopt.cli.status import Status, say
 from trainopt.cli.terminal import color, progress, width
 
@@ -25,6 +25,10 @@ def curve(
         Path | None,
         typer.Option(metavar="FILE", help="Draw resistance against loading as .svg, .png or .pdf."),
     ] = None,
+    at: Annotated[
+        str | None,
+        typer.Option(metavar="RESISTANCE", help="Say at what loading it is reached, for example '0.01 bar/LMH'."),
+    ] = None,
     units: Annotated[Units, typer.Option(help="Unit of pressure in the tables and the picture.")] = Units.bar,
     freeze: Annotated[
         Path | None,
@@ -38,6 +42,7 @@ def curve(
     --plot draws them; --freeze writes a medium file that gives the same designs without the runs.
     """
     target = None if plot is None else output_file(plot, PLOTS, force)
+    asked = None if at is None else amount("--at", at, "resistance")
     frozen = None if freeze is None else output_file(freeze, (".yaml",), force)
     with progress("fitting"):
         from trainopt.curves.medium import fit_curve
@@ -54,11 +59,11 @@ def curve(
     if json:
         from trainopt.report.json import curve_document, dumps
 
-        sys.stdout.write(dumps(curve_document(result)))
+        sys.stdout.write(dumps(curve_document(result, uncertainty=True)))
     else:
         from trainopt.report.curve_text import curve_text
 
-        sys.stdout.write(curve_text(result, units.value, width(), color()))
+        sys.stdout.write(curve_text(result, units.value, width(), color(), asked))
     if target is not None:
         with progress("drawing"):
             from trainopt.files.write import write_bytes_atomic

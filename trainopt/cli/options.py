@@ -39,6 +39,17 @@ def warn(problems: Iterable[Problem]) -> None:
         say(f"warning: {problem}")
 
 
+def amount(option: str, text: str, dimension: str) -> float:
+    """The canonical value of an option with a unit; `InputError` names the option."""
+    from trainopt.errors import InputError, Problem
+    from trainopt.units import quantity
+
+    try:
+        return quantity(text, dimension)
+    except ValueError as error:
+        raise InputError([Problem(option, 0, str(error))]) from None
+
+
 def output_file(path: Path, suffixes: tuple[str, ...], force: bool) -> Path:
     """The path of a file to write, refused at once where its kind is unknown or it would overwrite."""
     from trainopt.errors import InputError, Problem

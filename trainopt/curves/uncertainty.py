@@ -16,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trainopt.bench.run import Floats
-from trainopt.curves.curve import Curve
+from trainopt.curves.curve import Curve, LotCurve
 from trainopt.curves.evidence import Evidence
 from trainopt.curves.fit import COARSE, Fit, Readings, fit_law
 from trainopt.curves.laws import LAWS, Law
@@ -37,11 +37,12 @@ class Draws:
     def resistance(self, loading: Floats, lot: str | None = None) -> Floats:
         """R in bar/LMH of every draw, (draws, n), pooled or as `lot` sees it."""
         law = LAWS[self.law]
-        rho, kappa = self._multipliers(lot)
+        rho, kappa = self.multipliers(lot)
         rows = zip(self.parameters, rho, kappa, strict=True)
         return np.stack([r * law.resistance(k * loading, *map(float, p)) for p, r, k in rows])
 
-    def _multipliers(self, lot: str | None) -> tuple[Floats, Floats]:
+    def multipliers(self, lot: str | None) -> tuple[Floats, Floats]:
+        """ρ and κ of every draw, (draws,) each; ones for the pooled curve."""
         if lot is None:
             ones = np.ones(len(self.parameters))
             return ones, ones
@@ -168,10 +169,9 @@ def loading_at(
 
     It may lie beyond what was tested; compare with `curve.tested_loading`.
     """
-    value = curve.lot_curve(lot)
-    best = _reach(value.law, value.parameters, resistance / value.resistance_factor) / value.fouling_factor
+    best = reach(curve.lot_curve(lot), resistance)
     sample = bootstrap(curve, draws, seed)
-    rho, kappa = sample._multipliers(lot)
+    rho, kappa = sample.multipliers(lot)
     reached = [
         _reach(sample.law, tuple(map(float, p)), resistance / r) / k
         for p, r, k in zip(sample.parameters, rho, kappa, strict=True)
@@ -179,6 +179,11 @@ def loading_at(
     tail = 50.0 * (1.0 - level)
     low, high = np.percentile(reached, [tail, 100.0 - tail], method="inverted_cdf")
     return Interval(best, float(low), float(high))
+
+
+def reach(curve: LotCurve, resistance: float) -> float:
+    """Smallest loading in L/m² at which a lot's curve reaches `resistance` bar/LMH; infinite where it never does."""
+    return _reach(curve.law, curve.parameters, resistance / curve.resistance_factor) / curve.fouling_factor
 
 
 def _reach(name: str, parameters: tuple[float, ...], resistance: float) -> float:

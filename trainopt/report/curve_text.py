@@ -12,8 +12,16 @@ if TYPE_CHECKING:
     from trainopt.curves.curve import Curve, Estimate, Point
 
 
-def curve_text(curve: Curve, units: str = "bar", width: int = WIDTH, color: bool = False) -> str:
-    """The curve as tables at most `width` columns wide; resistances in `units` (bar, psi or kPa) per LMH."""
+LEVEL = 0.9
+
+
+def curve_text(
+    curve: Curve, units: str = "bar", width: int = WIDTH, color: bool = False, at: float | None = None
+) -> str:
+    """The curve as tables at most `width` columns wide; resistances in `units` (bar, psi or kPa) per LMH.
+
+    `at` is a resistance in bar/LMH whose loading is asked for.
+    """
     page = Page()
     page.line(curve.medium, "bold")
     page.line(sentence(curve))
@@ -21,6 +29,9 @@ def curve_text(curve: Curve, units: str = "bar", width: int = WIDTH, color: bool
         _readings(page, run, [point for point in curve.points if point.run == run], units)
     _parameters(page, curve, units)
     _lots(page, curve)
+    _band(page, curve, units)
+    if at is not None:
+        _loading_at(page, curve, at, units)
     _alternatives(page, curve)
     if curve.flags:
         page.heading("Flags")
@@ -91,11 +102,59 @@ def _lots(page: Page, curve: Curve) -> None:
         for lot, effect in curve.lots.items()
     ]
     page.table(("Lot", "Resistance", "Standard error", "Fouling", "Standard error"), rows)
+    from trainopt.curves.uncertainty import lot_spread
+
+    spread = lot_spread(curve)
+    if spread is not None:
+        page.line(
+            f"Between lots: resistance varies by {percent(100.0 * spread.log_resistance)}, fouling by "
+            f"{percent(100.0 * spread.log_fouling)} (standard deviation over {spread.lots} lots)."
+        )
+
+
+def _band(page: Page, curve: Curve, units: str) -> None:
+    """The pooled curve with its band at a few loadings, where it was fitted."""
+    if curve.evidence is None:
+        return
+    import numpy as np
+
+    from trainopt.curves.uncertainty import band
+
+    loading = np.linspace(0.0, curve.tested_loading, 5)
+    low, high = band(curve, loading, level=LEVEL)
+    middle = curve.lot_curve(None).resistance(loading)
+    factor = PRESSURE_UNITS[units]
+    page.heading(f"Pooled curve with its {100 * LEVEL:.0f} % band (bootstrap over runs and errors)")
+    rows = [
+        (fixed(l, 1), *(significant(factor * value, 4) for value in values))
+        for l, *values in zip(loading, middle, low, high, strict=True)
+    ]
+    page.table(("Loading\nL/m²", f"Resistance\n{units}/LMH", "From", "To"), rows, 0)
+
+
+def _loading_at(page: Page, curve: Curve, at: float, units: str) -> None:
+    """Where each lot's curve reaches a resistance, with its interval where the curve was fitted."""
+    from trainopt.curves.uncertainty import loading_at, reach
+
+    page.heading(f"Loading where the resistance reaches {significant(at * PRESSURE_UNITS[units])} {units}/LMH")
+    rows = []
+    for lot in (None, *curve.lots):
+        if curve.evidence is None:
+            value, low, high = reach(curve.lot_curve(lot), at), None, None
+        else:
+            found = loading_at(curve, at, lot, LEVEL)
+            value, low, high = found.value, found.low, found.high
+        beyond = "beyond what was tested" if value > curve.tested_loading else ""
+        rows.append((lot or "pooled", beyond, *(significant(number, 4) for number in (value, low, high))))
+    page.table(("Lot", "", "Loading\nL/m²", "From", "To"), rows, 2)
 
 
 def _alternatives(page: Page, curve: Curve) -> None:
     if not curve.alternatives:
         return
+    from trainopt.curves.uncertainty import left_out_errors
+
+    left_out = left_out_errors(curve)
     page.heading("Laws by the evidence, best first")
     best = curve.alternatives[0].aicc
     rows = [
@@ -104,7 +163,8 @@ def _alternatives(page: Page, curve: Curve) -> None:
             fixed(other.aicc - best, 1),
             percent(100.0 * other.weight),
             percent(100.0 * other.relative_error),
+            *((percent(100.0 * left_out[other.law]),) if other.law in left_out else ()),
         )
         for other in curve.alternatives
     ]
-    page.table(("Law", "AICc above best", "Weight", "Error"), rows)
+    page.table(("Law", "AICc above best", "Weight", "Error", *(("Run left out",) if left_out else ())), rows)

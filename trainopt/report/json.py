@@ -127,8 +127,38 @@ def _saving(saving: Saving | None) -> Document | None:
     }
 
 
-def curve_document(curve: Curve) -> Document:
-    """A curve with the points it was fitted on, as the document `trainopt.curve/1`."""
+def curve_document(curve: Curve, uncertainty: bool = False) -> Document:
+    """A curve with the points it was fitted on, as the document `trainopt.curve/1`.
+
+    With `uncertainty` also its 90 % band, the spread between lots and the errors on runs left out.
+    """
+    document = _curve_document(curve)
+    return {**document, **_uncertainty(curve)} if uncertainty and curve.evidence is not None else document
+
+
+def _uncertainty(curve: Curve) -> Document:
+    import numpy as np
+
+    from trainopt.curves.uncertainty import band, left_out_errors, lot_spread
+
+    loading = np.linspace(0.0, curve.tested_loading, 41)
+    low, high = band(curve, loading, level=0.9)
+    spread = lot_spread(curve)
+    return {
+        "band": {
+            "level": 0.9,
+            "loading_L_m2": loading.tolist(),
+            "low_bar_per_LMH": low.tolist(),
+            "high_bar_per_LMH": high.tolist(),
+        },
+        "lot_spread": None
+        if spread is None
+        else {"lots": spread.lots, "resistance": spread.log_resistance, "fouling": spread.log_fouling},
+        "left_out_errors": left_out_errors(curve),
+    }
+
+
+def _curve_document(curve: Curve) -> Document:
     return {
         "schema": "trainopt.curve/1",
         "medium": curve.medium,
@@ -196,6 +226,10 @@ def report_document(dossier: Dossier) -> Document:
                 "allowed_because_of": stage.cap_words,
             }
             for stage in dossier.stage_curves
+        ],
+        "volumes": [
+            {"volume_L": point.volume, "objective": point.objective, "even_split": point.even_split}
+            for point in dossier.volumes
         ],
         "courses": [
             {
