@@ -47,7 +47,7 @@ class Axis:
 def parse_axis(text: str, dimension_of: Callable[[str], str | None]) -> Axis:
     """The axis that `text` describes; `dimension_of` knows the dimension of a field (None: a bare number).
 
-    Raises ValueError saying what was expected; `dimension_of` raises it for an unknown field.
+    Raises ValueError saying what was expected; an unknown field is for `dimension_of` to refuse.
     """
     field, equals, spec = text.partition("=")
     field, spec = field.strip(), spec.strip()

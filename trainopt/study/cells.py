@@ -8,10 +8,12 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass, replace
+from functools import cached_property
 
 import numpy as np
 
 from trainopt.optimize.describe import total_area, total_time
+from trainopt.optimize.recheck import recheck
 from trainopt.optimize.search import best_route
 from trainopt.optimize.times import Choice, Route, TimeBounds, block_bounds, share_time
 from trainopt.study.even import EvenTable, cost_of
@@ -21,6 +23,10 @@ from trainopt.train.build import prune
 from trainopt.train.options import take
 from trainopt.train.problem import Candidate, DesignProblem
 from trainopt.train.results import Pick
+
+
+SHORTEST = 1e-9
+"""A block time in h that stands for none at all (a block that neither filters nor resists)."""
 
 
 @dataclass(frozen=True)
@@ -40,7 +46,6 @@ class Cells:
 
     def __init__(self, full: DesignProblem, longest: float) -> None:
         self.full = replace(full, time=longest)
-        self.even = EvenTable(self.full)
         self._bought: dict[int, _Bought] = {}
         self._fastest: float | None = None
         self.frontier: Frontier | None
@@ -48,6 +53,11 @@ class Cells:
             self.frontier = frontier(prune(self.full))
         except TooManyLabelsError:
             self.frontier = None
+
+    @cached_property
+    def even(self) -> EvenTable:
+        """The even split at any batch time."""
+        return EvenTable(self.full)
 
     def cell(self, at: tuple[float, ...], time: float) -> SweepCell:
         """The cell at a batch time in h."""
@@ -86,7 +96,9 @@ class Cells:
         if place is None:
             return None
         if place not in self._bought:
-            self._bought[place] = _bought(problem, self.frontier.route(place))
+            self._bought[place] = bought = _bought(problem, self.frontier.route(place))
+            # Marched once, at the shortest times the pick allows: any longer time only lowers pressures and fluxes.
+            recheck(self.full, bought.route, tuple(max(bound.least, SHORTEST) for bound in bought.bounds))
         return self._bought[place]
 
     def why_not(self, problem: DesignProblem) -> str:

@@ -134,6 +134,8 @@ def _block_table(index: Index, b: int, arcs: set[Ends]) -> dict[Ends | None, Com
     table: dict[Ends | None, Complete] = {}
     numbers = {node.options.start: n for n, node in enumerate(index.nodes)}
     nodes = index.nodes_of(b)
+    inside = {numbers[node.options.start] for node in nodes}
+    heads = {head for tail, head in arcs if tail not in inside}
     for node in reversed(nodes):
         n = numbers[node.options.start]
         wanted_upstream = any((numbers[other.options.start], n) in arcs for other in nodes if other.stage < node.stage)
@@ -143,7 +145,8 @@ def _block_table(index: Index, b: int, arcs: set[Ends]) -> dict[Ends | None, Com
                 parts.setdefault(last, []).append(_in_front(index, block, parts[n][0], node, suffix))
         for last, found in parts.items():
             labels = _in_time(index.problem, block, _stacked_partial(found))
-            table[n, last] = _completed(index, block, labels)
+            if n in heads:
+                table[n, last] = _completed(index, block, labels)
             if wanted_upstream and len(labels):
                 suffixes[n, last] = thinned_partial(labels)
     if all(stage.optional for stage in block.stages):

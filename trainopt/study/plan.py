@@ -9,11 +9,10 @@ from dataclasses import dataclass, field
 from trainopt.curves.curve import Curve
 from trainopt.curves.medium import fit_curve
 from trainopt.errors import InputError
-from trainopt.files import Case
+from trainopt.files import Case, set_field
 from trainopt.optimize.design import Prepared, design
 from trainopt.study.axis import Axis
 from trainopt.study.cells import Cells
-from trainopt.study.paths import set_field
 from trainopt.study.results import Change, EvenCell, SweepCell
 from trainopt.train.build import build_problem, used_media
 from trainopt.train.results import Design, Pick
@@ -99,8 +98,8 @@ class Plan:
         places = [tuple(0.0 if v is None else v for v in at) for at in ats]
         try:
             cells = self._cells(group.values)
-        except (ValueError, InputError) as error:
-            return Found(tuple(SweepCell(at, "invalid", reason=str(error)) for at in places))
+        except InputError as error:
+            return Found(tuple(SweepCell(at, "invalid", reason=_texts(error)) for at in places))
         if isinstance(cells, Case):
             return Found(tuple(self._designed(cells, at) for at in places))
         allowed = [cells.full.time if time is None else time for time in times]
@@ -147,7 +146,7 @@ class Plan:
         k = self.time_axis
         try:
             cells = self._cells(tuple(None if place == k else v for place, v in enumerate(at)))
-        except (ValueError, InputError):
+        except InputError:
             return ()
         if isinstance(cells, Case):
             return self._designed(cells, at).picks
@@ -185,6 +184,10 @@ class Plan:
                 ends = [cells.get(tuple(v if k == axis else o for k, o in enumerate(others))) for v in (low, high)]
                 if ends[0] is not None and ends[1] is not None and ends[0].picks != ends[1].picks:
                     yield Interval(axis, others, low, high, ends[0].picks, ends[1].picks)
+
+
+def _texts(error: InputError) -> str:
+    return "; ".join(problem.text for problem in error.problems)
 
 
 def _same_turbidity(one: object, other: object) -> bool:
@@ -226,4 +229,3 @@ def cell_of(result: Design, at: tuple[float, ...]) -> SweepCell:
         even_split=None if even is None else EvenCell(even.status, even.area, even.cost),
         reason="; ".join(reason.text for reason in result.reasons[:1]),
     )
-

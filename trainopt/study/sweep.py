@@ -12,13 +12,13 @@ from collections.abc import Callable, Iterator, Sequence
 from concurrent.futures import Future, ProcessPoolExecutor, as_completed
 from pathlib import Path
 
-from trainopt.files import Case
+from trainopt.files import Case, field_dimension
 from trainopt.optimize.design import fit_curves
 from trainopt.study.axis import Axis, parse_axis
 from trainopt.study.journal import Journal, fingerprint
-from trainopt.study.paths import field_dimension
 from trainopt.study.plan import Found, Job, Plan
 from trainopt.study.results import Change, Sweep, SweepCell
+from trainopt.units import CANONICAL
 
 Progress = Callable[[int, int], None]
 """Told how many jobs are done, of how many."""
@@ -31,8 +31,16 @@ _TRIAL = 0.4
 
 
 def axes_of(case: Case, texts: Sequence[str]) -> tuple[Axis, ...]:
-    """The axes that `texts` describe ("batch.volume=500 L..5000 L/19"); ValueError with what is wrong."""
-    axes = tuple(parse_axis(text, lambda field: field_dimension(case, field)) for text in texts)
+    """The axes that `texts` describe ("batch.volume=500 L..5000 L/19").
+
+    Raises ValueError for values that make no sense and `InputError` for a field that the case does not have.
+    """
+
+    def dimension_of(field: str) -> str | None:
+        dimension = field_dimension(case, field)
+        return dimension if dimension in CANONICAL else None
+
+    axes = tuple(parse_axis(text, dimension_of) for text in texts)
     if not axes:
         raise ValueError("nothing varies; expected an axis such as 'batch.volume=500 L..5000 L/19'")
     if len({axis.field for axis in axes}) < len(axes):

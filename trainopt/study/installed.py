@@ -1,0 +1,205 @@
+"""A train that stands: its stages with fixed areas, and how long its blocks take at any batch volume (model.md, section 1).
+
+The volume is an array throughout, so that the largest batch is found in a few calls.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from trainopt.curves.curve import Curve
+from trainopt.errors import InputError
+from trainopt.files import Case
+from trainopt.files.scenario import BlockSpec, StageSpec
+from trainopt.optimize.times import Choice, Route
+from trainopt.train.build import build_problem, lots_of
+from trainopt.train.options import CAP_SLACK, demand
+from trainopt.train.options import module_options as priced
+from trainopt.train.options import Duty
+from trainopt.train.problem import Block, Candidate, DesignProblem, Floats, Stage
+from trainopt.train.results import Pick
+
+Bools = NDArray[np.bool_]
+
+
+@dataclass(frozen=True, eq=False)
+class Train:
+    """A fixed train: `problem` with one option per used stage (nothing left out for its loading), and that pick as a route."""
+
+    problem: DesignProblem
+    route: Route
+    picks: tuple[Pick, ...]
+
+    def with_factor(self, factor: float) -> Train:
+        """The same train at another derating."""
+        return replace(self, problem=replace(self.problem, safety_factor=factor))
+
+    def for_lot(self, lot: int) -> Train:
+        """The same train with one lot alone."""
+        route = tuple(
+            tuple(replace(c, candidate=replace(c.candidate, curves=(c.candidate.curves[lot],))) for c in block)
+            for block in self.route
+        )
+        return replace(self, problem=replace(self.problem, lots=(self.problem.lots[lot],)), route=route)
+
+    def loading(self, choice: Choice, volume: Floats, factor: float | Floats = 1.0) -> Floats:
+        """Design loading in L/m² at each volume, at `factor` times the train's own derating."""
+        area = float(choice.candidate.options.area[choice.option]) * choice.candidate.scale_up
+        return np.asarray(self.problem.safety_factor * factor * volume / area)
+
+    def inside_caps(self, volume: Floats, factor: float | Floats = 1.0) -> Bools:
+        """Whether every stage's loading is inside its cap and finite in demand."""
+        good = np.full(np.shape(volume), True)
+        for block, choices in zip(self.problem.blocks, self.route, strict=True):
+            for choice in choices:
+                loading = self.loading(choice, volume, factor)
+                good &= loading <= choice.candidate.loading_cap * (1.0 + CAP_SLACK)
+                good &= np.isfinite(demand(choice.candidate.curves, block.operation, loading)).all(axis=0)
+        return good
+
+    def needs(self, b: int, volume: Floats, factor: float | Floats = 1.0) -> dict[tuple[str, str], Floats]:
+        """How long one block takes at least by each of its limits, h; keys as in `optimize.times.block_bounds`."""
+        block, choices = self.problem.blocks[b], self.route[b]
+        line = block.line * volume
+        demands = [demand(c.candidate.curves, block.operation, self.loading(c, volume, factor)) for c in choices]
+        total = np.sum(demands, axis=0).max(axis=0) if demands else np.zeros(np.shape(volume))
+        limits = {("", "pump"): volume / block.max_flow, ("", "pressure"): _ratio(total + line, block.head)}
+        for place, choice in enumerate(choices):
+            one, name = choice.candidate, choice.stage.name
+            area = float(one.options.area[choice.option])
+            limits[name, "flux"] = volume / (area * one.flux_limit)
+            if block.operation != "constant-flow":
+                continue
+            limits[name, "differential-pressure"] = demands[place].max(axis=0) / one.differential_pressure
+            if one.inlet_pressure < block.pressure:
+                downstream = np.sum(demands[place:], axis=0).max(axis=0)
+                limits[name, "inlet-pressure"] = _ratio(downstream + line, one.inlet_pressure - block.static)
+        return limits
+
+    def shortest(self, volume: Floats, factor: float | Floats = 1.0) -> Floats:
+        """Shortest time of each block, h, shape (blocks, n)."""
+        return np.array(
+            [np.max(list(self.needs(b, volume, factor).values()), axis=0) for b in range(len(self.problem.blocks))]
+        )
+
+    def total(self, times: Floats) -> Floats:
+        """Batch time with setups, h, of block times of shape (blocks, n)."""
+        setups = np.array([[block.setup] for block in self.problem.blocks])
+        spent = times + setups
+        return np.asarray(spent.sum(axis=0) if self.problem.schedule == "sequential" else spent.max(axis=0))
+
+    def passes(self, volume: Floats, factor: float | Floats = 1.0) -> Bools:
+        """Whether each volume goes through in the time allowed with every limit met."""
+        with np.errstate(invalid="ignore"):
+            times = self.shortest(volume, factor)
+        slowest = np.array([[b.min_flow] for b in self.problem.blocks])
+        slow_enough = (times * slowest <= volume * (1.0 + 1e-12)).all(axis=0)
+        in_time = self.total(times) <= self.problem.time * (1.0 + 1e-12)
+        return np.asarray(self.inside_caps(volume, factor) & slow_enough & in_time)
+
+    def at(self, volume: float) -> tuple[DesignProblem, Route]:
+        """The problem and the route at one volume, every option's demand and loading filled in."""
+        v = np.array([volume])
+        blocks: list[Block] = []
+        route: list[tuple[Choice, ...]] = []
+        for block, choices in zip(self.problem.blocks, self.route, strict=True):
+            filled = tuple(self._filled(block, choice, v) for choice in choices)
+            route.append(filled)
+            blocks.append(replace(block, stages=tuple(choice.stage for choice in filled)))
+        return replace(self.problem, volume=volume, blocks=tuple(blocks)), tuple(route)
+
+    def _filled(self, block: Block, choice: Choice, volume: Floats) -> Choice:
+        one, options = choice.candidate, choice.candidate.options
+        loading = self.loading(choice, volume)
+        fresh = replace(
+            options,
+            loading=loading,
+            demand=demand(one.curves, block.operation, loading),
+            shortest_time=volume / (options.area * one.flux_limit),
+        )
+        candidate = replace(one, options=fresh)
+        return Choice(replace(choice.stage, candidates=(candidate,)), candidate, 0)
+
+
+def _ratio(need: Floats, have: float) -> Floats:
+    return np.asarray(need / have) if have > 0.0 else np.full(np.shape(need), math.inf)
+
+
+def installed_picks(case: Case) -> dict[str, tuple[str, int]]:
+    """Module and count of each stage that the scenario says is installed; `InputError` with all that is wrong."""
+    scenario, catalog = case.scenario, case.workspace.catalog
+    source = scenario.source
+    if not scenario.installed:
+        text = "the scenario says nothing of a train that is installed; expected `installed:` with a module and a count per stage"
+        raise InputError([source.problem((), text)])
+    stages = {stage.stage: stage for stage in scenario.stages}
+    problems = []
+    for name, entry in scenario.installed.items():
+        where = ("installed", name)
+        if name not in stages:
+            problems.append(source.problem(where, f"no stage '{name}'; expected one of {', '.join(stages)}"))
+        elif entry.module not in catalog.modules:
+            problems.append(source.problem((*where, "module"), f"no module '{entry.module}' in the catalog"))
+        else:
+            medium = catalog.modules[entry.module].medium
+            allowed = [choice.medium for choice in stages[name].media]
+            if medium not in allowed:
+                text = f"'{entry.module}' is made of '{medium}'; expected a module of {', '.join(allowed)}"
+                problems.append(source.problem((*where, "module"), text))
+    missing = [s.stage for s in scenario.stages if not s.optional and s.stage not in scenario.installed]
+    if missing:
+        problems.append(source.problem(("installed",), f"stage '{missing[0]}' is not optional and has nothing installed"))
+    if problems:
+        raise InputError(problems)
+    return {name: (entry.module, entry.count) for name, entry in scenario.installed.items()}
+
+
+def fixed_train(
+    case: Case, curves: Mapping[str, Curve], installed: Mapping[str, tuple[str, int]], safety_factor: float = 1.0
+) -> Train:
+    """The train of `installed` modules, at a derating."""
+    scenario = case.scenario
+    bare = scenario.model_copy(update={"safety_factor": safety_factor})
+    bare.__pydantic_private__ = scenario.__pydantic_private__
+    problem = build_problem(replace(case, scenario=bare), curves)
+    lots = lots_of(case, curves)
+    blocks: list[Block] = []
+    route: list[tuple[Choice, ...]] = []
+    for block, spec in zip(problem.blocks, scenario.blocks, strict=True):
+        choices = tuple(
+            _fixed(case, problem, block, stage, spec, installed[stage.name], len(lots))
+            for stage in block.stages
+            if stage.name in installed
+        )
+        route.append(choices)
+        blocks.append(replace(block, stages=tuple(choice.stage for choice in choices)))
+    picks = tuple(
+        Pick(c.stage.name, c.candidate.medium, c.candidate.options.module[0], int(c.candidate.options.count[0]))
+        for choices in route
+        for c in choices
+    )
+    return Train(replace(problem, blocks=tuple(blocks)), tuple(route), picks)
+
+
+def _fixed(
+    case: Case, problem: DesignProblem, block: Block, stage: Stage, spec: BlockSpec, bought: tuple[str, int], lots: int
+) -> Choice:
+    """A stage with its one option; the option table says nothing yet of its demand, which is the volume's to say."""
+    module, count = bought
+    workspace = case.workspace
+    medium = workspace.media[workspace.catalog.modules[module].medium]
+    own: Candidate = next(c for c in stage.candidates if c.medium == medium.medium)
+    duty = Duty(problem.volume, problem.safety_factor, problem.objective, spec.operation)
+    options = priced(medium, module, workspace.catalog, case.scenario.costs, duty, np.array([count], dtype=np.int64))
+    candidate = replace(own, options=replace(options, demand=np.zeros((lots, 1))), dropped=())
+    return Choice(replace(stage, optional=False, candidates=(candidate,)), candidate, 0)
+
+
+def stage_of(case: Case, name: str) -> StageSpec:
+    """A stage of the scenario by its name."""
+    return next(stage for stage in case.scenario.stages if stage.stage == name)
