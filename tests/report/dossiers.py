@@ -7,7 +7,7 @@ import numpy as np
 from tests.report import results
 from trainopt.curves.curve import Curve
 from trainopt.report.course_figure import Course
-from trainopt.report.dossier import Dossier
+from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.stage_figure import StageCurve
 from trainopt.train.results import Design, EvenSplit, Notice, Saving
 
@@ -74,6 +74,11 @@ def dossier(design: Design, curve: Curve | None = None) -> Dossier:
         versions={"trainopt": "0.1.0", "highspy": "1.0"},
         options={"Objective asked for": "area"},
         date="2026-01-02T03:04:05+00:00",
+        volumes=tuple(
+            VolumePoint(200.0 * n, None if n > 12 else 3.4 * n, None if n > 11 else 3.7 * n) for n in range(5, 16)
+        )
+        if design.blocks
+        else (),
     )
 
 

@@ -60,7 +60,7 @@ def test_every_figure_has_a_caption_and_words_for_those_who_cannot_see_it(tree: 
 
 def test_text_in_pictures_is_text() -> None:
     figures = re.findall(r"<svg.*?</svg>", PAGES["usual"], flags=re.DOTALL)
-    assert len(figures) == 6
+    assert len(figures) == 7
     assert all("<text" in figure for figure in figures)
     assert "primary" in figures[0]
 
@@ -137,6 +137,7 @@ def test_sections_come_in_reading_order() -> None:
         "Where pressure and time go",
         "Curves of the stages",
         "Pressure over the batch",
+        "Other batch volumes",
         "Cost per batch",
         "Assumptions and warnings",
         "Cautions",

@@ -13,9 +13,11 @@ import numpy as np
 
 from trainopt.optimize.design import Prepared, design, prepare
 from trainopt.report.course_figure import Course
-from trainopt.report.dossier import Dossier
+from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.numbers import limit_words, significant, trimmed
 from trainopt.report.stage_figure import StageCurve
+from trainopt.study.axis import Axis
+from trainopt.study.sweep import sweep
 from trainopt.train import march
 from trainopt.version import __version__
 
@@ -49,6 +51,7 @@ def gather(case: Case, objective: str | None = None, time_limit: float | None = 
         versions=versions(),
         options=options,
         date=now(),
+        volumes=tuple(_volumes(case, found)),
     )
 
 
@@ -72,6 +75,21 @@ def versions() -> Mapping[str, str]:
         except PackageNotFoundError:
             found[name] = "not installed as a package"
     return found
+
+
+def _volumes(case: Case, found: Design) -> Iterator[VolumePoint]:
+    """Designs for half to one and a half times the batch volume; none where this one has no proof."""
+    if found.status != "optimal" or found.objective is None:
+        return
+    volume, kind = case.scenario.batch.volume, found.objective.kind
+    axis = Axis("batch.volume", "volume", "L", tuple(volume * n / 10 for n in range(5, 16)))
+    for cell in sweep(case, [axis], objective=kind, changes=False).cells:
+        even = cell.even_split
+        yield VolumePoint(
+            cell.at[0],
+            cell.objective,
+            None if even is None else even.cost if kind == "cost" else even.area,
+        )
 
 
 def _used(problem: DesignProblem, found: Design) -> Iterator[tuple[Block, BlockDesign, StageDesign, Candidate]]:
