@@ -14,13 +14,10 @@ from numpy.typing import NDArray
 
 from trainopt.curves.curve import Curve
 from trainopt.errors import InputError
-from trainopt.files import Case
-from trainopt.files.scenario import BlockSpec, StageSpec
+from trainopt.files import BlockSpec, Case
 from trainopt.optimize.times import Choice, Route
 from trainopt.train.build import build_problem, lots_of
-from trainopt.train.options import CAP_SLACK, demand
-from trainopt.train.options import module_options as priced
-from trainopt.train.options import Duty
+from trainopt.train.options import CAP_SLACK, Duty, demand, module_options
 from trainopt.train.problem import Block, Candidate, DesignProblem, Floats, Stage
 from trainopt.train.results import Pick
 
@@ -131,32 +128,15 @@ def _ratio(need: Floats, have: float) -> Floats:
 
 
 def installed_picks(case: Case) -> dict[str, tuple[str, int]]:
-    """Module and count of each stage that the scenario says is installed; `InputError` with all that is wrong."""
-    scenario, catalog = case.scenario, case.workspace.catalog
-    source = scenario.source
-    if not scenario.installed:
-        text = "the scenario says nothing of a train that is installed; expected `installed:` with a module and a count per stage"
-        raise InputError([source.problem((), text)])
-    stages = {stage.stage: stage for stage in scenario.stages}
-    problems = []
-    for name, entry in scenario.installed.items():
-        where = ("installed", name)
-        if name not in stages:
-            problems.append(source.problem(where, f"no stage '{name}'; expected one of {', '.join(stages)}"))
-        elif entry.module not in catalog.modules:
-            problems.append(source.problem((*where, "module"), f"no module '{entry.module}' in the catalog"))
-        else:
-            medium = catalog.modules[entry.module].medium
-            allowed = [choice.medium for choice in stages[name].media]
-            if medium not in allowed:
-                text = f"'{entry.module}' is made of '{medium}'; expected a module of {', '.join(allowed)}"
-                problems.append(source.problem((*where, "module"), text))
-    missing = [s.stage for s in scenario.stages if not s.optional and s.stage not in scenario.installed]
-    if missing:
-        problems.append(source.problem(("installed",), f"stage '{missing[0]}' is not optional and has nothing installed"))
-    if problems:
-        raise InputError(problems)
-    return {name: (entry.module, entry.count) for name, entry in scenario.installed.items()}
+    """Module and count of each stage that the scenario says is installed; `InputError` where it says nothing.
+
+    That the modules fit their stages is checked with the files.
+    """
+    installed = case.scenario.installed
+    if not installed:
+        text = "'installed' is missing; expected the module and the count that stand in each stage"
+        raise InputError([case.scenario.source.problem((), text)])
+    return {stage: (entry.module, entry.count) for stage, entry in installed.items()}
 
 
 def fixed_train(
@@ -195,11 +175,6 @@ def _fixed(
     medium = workspace.media[workspace.catalog.modules[module].medium]
     own: Candidate = next(c for c in stage.candidates if c.medium == medium.medium)
     duty = Duty(problem.volume, problem.safety_factor, problem.objective, spec.operation)
-    options = priced(medium, module, workspace.catalog, case.scenario.costs, duty, np.array([count], dtype=np.int64))
+    options = module_options(medium, module, workspace.catalog, case.scenario.costs, duty, np.array([count], dtype=np.int64))
     candidate = replace(own, options=replace(options, demand=np.zeros((lots, 1))), dropped=())
     return Choice(replace(stage, optional=False, candidates=(candidate,)), candidate, 0)
-
-
-def stage_of(case: Case, name: str) -> StageSpec:
-    """A stage of the scenario by its name."""
-    return next(stage for stage in case.scenario.stages if stage.stage == name)
