@@ -96,6 +96,13 @@ def clock(path: Path, rows: Rows) -> Path:
     return write_rows(path, [["clock time", *rows[0][1:]], *body])
 
 
+def stamps(path: Path, rows: Rows) -> Path:
+    """Dates with times, as a logger writes them, over a change of month."""
+    start = datetime.datetime(2026, 2, 28, 23, 40)
+    body = [[(start + datetime.timedelta(minutes=float(row[0]))).isoformat(" "), *row[1:]] for row in rows[1:]]
+    return write_rows(path, [["timestamp", *rows[0][1:]], *body])
+
+
 VARIANTS: dict[str, Callable[[Path, Rows], Path]] = {
     "semicolon-decimal-comma": semicolons,
     "title-lines-and-notes": titled,
@@ -106,6 +113,7 @@ VARIANTS: dict[str, Callable[[Path, Rows], Path]] = {
     "extra-columns": wide,
     "utf-16": utf16,
     "clock-over-midnight": clock,
+    "clock-with-dates": stamps,
 }
 
 

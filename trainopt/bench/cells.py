@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 from collections.abc import Mapping
 
 import numpy as np
@@ -10,7 +11,7 @@ from numpy.typing import NDArray
 from trainopt.bench.columns import Column
 from trainopt.bench.flux import resolution
 from trainopt.bench.run import Floats
-from trainopt.bench.table import CLOCK, Table, is_number
+from trainopt.bench.table import CLOCK, STAMP, Table, is_number
 from trainopt.errors import Problem
 
 _NOT_READ = {"", "-", "--", "n/a", "na", "nd"}
@@ -51,17 +52,28 @@ def _clock_times(table: Table, column: Column, cells: list[str], problems: list[
         return out
     shortest = 1 if column.clock in {"mm:ss", "m:ss"} else 0
     for index, cell in enumerate(cells):
-        if CLOCK.fullmatch(cell):
+        if STAMP.fullmatch(cell):
+            out[index] = _stamped(cell)
+        elif CLOCK.fullmatch(cell):
             parts = [float(part) for part in cell.split(":")]
             shift = shortest if len(parts) == 2 else 0
             out[index] = sum(part / 60.0 ** (power + shift) for power, part in enumerate(parts))
         elif cell:
-            text = f"column '{column.header}': '{cell}' is not a time; expected h:mm:ss throughout"
+            text = f"column '{column.header}': '{cell}' is not a time; expected h:mm:ss or 2026-03-01 09:30:00"
             problems.append(table.problem(table.lines[index], text))
     read = np.flatnonzero(np.isfinite(out))
-    passed = np.diff(out[read]) < -0.5 * _DAY
+    stamped = any(STAMP.fullmatch(cell) for cell in cells)
+    passed = np.diff(out[read]) < (-np.inf if stamped else -0.5 * _DAY)
     out[read[1:]] += _DAY * np.cumsum(passed)
     return np.asarray(out - out[read[0]]) if len(read) else out
+
+
+def _stamped(cell: str) -> float:
+    """Hours since an early day; a date that does not exist is no number."""
+    try:
+        return (datetime.datetime.fromisoformat(cell) - datetime.datetime(2000, 1, 1)).total_seconds() / 3600.0
+    except ValueError:
+        return float("nan")
 
 
 def column_step(values: Floats) -> float:

@@ -10,7 +10,7 @@ import re
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from trainopt.bench.table import CLOCK, Table
+from trainopt.bench.table import Table, is_clock
 from trainopt.bench.units import HeaderUnit, split_header, unit_of
 from trainopt.errors import Problem
 
@@ -69,7 +69,7 @@ class _Header:
 
 CLOCK_FORMS = {"hh:mm:ss", "h:mm:ss", "hh:mm", "h:mm", "mm:ss", "m:ss"}
 
-_TIME_WORDS = {"time", "t", "elapsed", "clock", "duration"}
+_TIME_WORDS = {"time", "t", "elapsed", "clock", "duration", "timestamp", "datetime"}
 _IGNORED = {
     "set",
     "setpoint",
@@ -199,7 +199,7 @@ def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -
 
 def _is_clock(table: Table, index: int) -> bool:
     cells = [cell for cell in table.column(index) if cell]
-    return bool(cells) and sum(CLOCK.fullmatch(cell) is not None for cell in cells) * 2 > len(cells)
+    return bool(cells) and sum(is_clock(cell) for cell in cells) * 2 > len(cells)
 
 
 def _find_time(search: _Search) -> None:

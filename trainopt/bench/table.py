@@ -31,6 +31,7 @@ LARGE, HEAD = 4 << 20, 1 << 16
 DELIMITERS = (",", ";", "\t", "|")
 NUMBER = re.compile(r"[+-]?(\d+(\.\d*)?|\.\d+)([eE][+-]?\d+)?")
 CLOCK = re.compile(r"\d{1,4}:[0-5]?\d(:[0-5]?\d(\.\d+)?)?")
+STAMP = re.compile(r"\d{4}-\d{2}-\d{2}[ T]\d{2}:\d{2}(:\d{2}([.]\d+)?)?")
 _DECIMAL_COMMA = re.compile(r"[+-]?\d*,\d+([eE][+-]?\d+)?")
 _THOUSANDS = re.compile(r"[+-]?[1-9]\d{0,2}(,\d{3})+(\.\d*)?")
 
@@ -251,8 +252,13 @@ def is_number(cell: str) -> bool:
     return NUMBER.fullmatch(cell) is not None
 
 
+def is_clock(cell: str) -> bool:
+    """Whether a cell is a clock time (h:mm:ss) or a date with one (2026-03-01 09:30:00)."""
+    return CLOCK.fullmatch(cell) is not None or STAMP.fullmatch(cell) is not None
+
+
 def _is_value(cell: str) -> bool:
-    return is_number(cell) or CLOCK.fullmatch(cell) is not None
+    return is_number(cell) or is_clock(cell)
 
 
 def _table(file: str, rows: list[Row], assumed: list[str]) -> Table:
