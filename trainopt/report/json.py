@@ -40,7 +40,7 @@ def design_document(design: Design) -> Document:
         "currency": design.currency,
         "time_h": design.time,
         "cost_parts": _cost_parts(design.cost_parts),
-        "blocks": [_block(block) for block in design.blocks],
+        "blocks": [block_document(block) for block in design.blocks],
         "safety_factor": design.safety_factor,
         "even_split": _even_split(design.even_split),
         "saving": _saving(design.saving),
@@ -65,7 +65,8 @@ def _cost_parts(parts: CostParts | None) -> Document | None:
     }
 
 
-def _block(block: BlockDesign) -> Document:
+def block_document(block: BlockDesign) -> Document:
+    """One block of a design, an even split or a rating."""
     pressure = block.pressure
     return {
         "block": block.block,
@@ -112,7 +113,7 @@ def _even_split(even: EvenSplit | None) -> Document | None:
         "status": even.status,
         "area_m2": even.area,
         "cost": even.cost,
-        "blocks": [_block(block) for block in even.blocks],
+        "blocks": [block_document(block) for block in even.blocks],
     }
 
 
