@@ -82,6 +82,14 @@ _FACTORS: dict[str, dict[str, float]] = {
     "turbidity": {"NTU": 1.0},
 }
 
+
+def usual_units(dimension: str) -> tuple[str, ...]:
+    """The usual spellings of the units of a dimension, the canonical one first."""
+    if dimension == "temperature":
+        return ("degC", "degF", "K")
+    return tuple(_FACTORS.get(dimension, {CANONICAL[dimension]: 1.0}))
+
+
 DEFINITIONS = (
     "meter = [length] = m",
     "kilogram = [mass] = kg",
@@ -161,16 +169,16 @@ def quantity(text: str, dimension: str) -> float:
     return value
 
 
-def missing_unit(value: object, dimension: str) -> str:
+def missing_unit(value: object, dimension: str, example: str = "") -> str:
     """What is wrong with a bare number where a value with a unit belongs."""
-    return f"{value} has no unit; expected {expected(dimension)}"
+    return f"{value} has no unit; expected {expected(dimension, example)}"
 
 
-def expected(dimension: str) -> str:
+def expected(dimension: str, example: str = "") -> str:
     """What a value of the dimension should look like, for messages: "a pressure such as '2 bar'"."""
     name = dimension if not dimension.startswith("resistance_per_loading") else "coefficient"
     article = "an" if name[0] in "aeiou" else "a"
-    return f"{article} {_PHRASES.get(name, name)} such as '{EXAMPLES[dimension]}'"
+    return f"{article} {_PHRASES.get(name, name)} such as '{example or EXAMPLES[dimension]}'"
 
 
 _PHRASES = {

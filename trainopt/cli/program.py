@@ -10,6 +10,8 @@ import typer
 from trainopt.cli.check import check
 from trainopt.cli.curve import curve
 from trainopt.cli.design import design
+from trainopt.cli.fields import fields
+from trainopt.cli.new import new
 from trainopt.cli.report import report
 from trainopt.cli.sheet import sheet
 from trainopt.cli.status import guarded
@@ -48,5 +50,5 @@ def everywhere(
     """Options before any command."""
 
 
-for command in (design, curve, check, sheet, report):
+for command in (design, curve, check, sheet, report, new, fields):
     program.command()(guarded(command))

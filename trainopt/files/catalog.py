@@ -7,7 +7,18 @@ from typing import Annotated
 
 from pydantic import Field, PrivateAttr
 
-from trainopt.files.fields import Area, Count, Entry, HoldUp, Money, Name, Range, Words
+from trainopt.files.fields import (
+    NOT_NEGATIVE,
+    POSITIVE,
+    Amount,
+    Count,
+    Entry,
+    Name,
+    Number,
+    Price,
+    Range,
+    Words,
+)
 from trainopt.files.source import Source
 
 
@@ -16,11 +27,11 @@ class Module(Entry):
 
     medium: Annotated[str, Name()]
     """The medium it is built from."""
-    area: Area
+    area: Annotated[float, Amount("area", POSITIVE, "1.1 m2")]
     """Filter area of one module."""
-    price: Money
+    price: Price
     """Price of one module, used once, in the catalog's currency."""
-    hold_up: HoldUp = 0.0
+    hold_up: Annotated[float, Amount("volume", NOT_NEGATIVE, "3.2 L")] = 0.0
     """Liquid one module keeps at the end of a batch."""
     max_count: Annotated[int, Count(Range(least=1, most=10000), "40")]
     """Most modules that a stage may run in parallel."""
@@ -33,7 +44,7 @@ class Holder(Entry):
     """The module types it takes."""
     slots: Annotated[int, Count(example="10")]
     """How many modules it takes."""
-    price: Money
+    price: Annotated[float, Number(NOT_NEGATIVE, "4200")]
     """Price of one holder, spread over its batches."""
     batches: Annotated[int, Count(example="200")] = 1
     """Batches that its price is spread over."""

@@ -260,7 +260,7 @@ def _value(node: Any, loc: Loc) -> Any:
         if isinstance(node, BaseModel):
             node = getattr(node, str(part))
         else:
-            node = node[part] if isinstance(node, dict | tuple) else None
+            node = node[part] if isinstance(node, dict | tuple) else None  # type: ignore[index]
     return node
 
 

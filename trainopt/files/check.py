@@ -13,6 +13,7 @@ from trainopt.errors import InputError, Problem
 from trainopt.files.crosscheck import case_problems, case_warnings, unused_warnings
 from trainopt.files.load import (
     Found,
+    file_kind,
     find_root,
     finished,
     read_catalog,
@@ -22,7 +23,7 @@ from trainopt.files.load import (
 )
 from trainopt.files.medium import Medium
 from trainopt.files.scenario import Scenario
-from trainopt.files.source import read_source, shown_path
+from trainopt.files.source import shown_path
 
 BENCH_SUFFIXES = (".csv", ".xlsx", ".tsv", ".txt")
 YAML_SUFFIXES = (".yaml", ".yml")
@@ -123,7 +124,7 @@ def _bench_file(path: Path, checked: Checked) -> None:
 
 
 def _yaml_file(path: Path, checked: Checked) -> None:
-    kind = _kind(path, checked)
+    kind = file_kind(path)
     if kind == "scenario":
         try:
             found = _workspace_at(find_root(path), checked)
@@ -142,16 +143,3 @@ def _yaml_file(path: Path, checked: Checked) -> None:
         root = find_root(path)
         if (root / "models" / "catalog.yaml").resolve() == path.resolve():
             _workspace_at(root, checked)
-
-
-def _kind(path: Path, checked: Checked) -> str | None:
-    """What a YAML file is, by what it says."""
-    try:
-        source, _ = read_source(path)
-    except InputError as error:
-        checked.problems.update(error.problems)
-        return None
-    if "modules" in source.data or path.name == "catalog.yaml":
-        return "catalog"
-    by_name = path.absolute().parent.name == "media"
-    return "medium" if "curve" in source.data or "medium" in source.data or by_name else "scenario"

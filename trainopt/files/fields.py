@@ -104,7 +104,7 @@ class Range:
             or (self.below is not None and value >= self.below)
         )
 
-    def words(self, text: Any = lambda value: f"{value:g}") -> str:
+    def words(self, text: Any = lambda value: f"{value:.10g}") -> str:
         """The bounds in words, each value as `text` shows it."""
         parts = [
             f"{how} {text(bound)}"
@@ -125,9 +125,10 @@ class Amount(Rule):
 
     dimension: str
     range: Range = Range()
+    example: str = ""
 
     def _expected(self) -> str:
-        return expected(self.dimension)
+        return expected(self.dimension, self.example)
 
     @property
     def bounds(self) -> str:
@@ -148,7 +149,7 @@ class Amount(Rule):
         if isinstance(value, bool) or not isinstance(value, int | float):
             raise ValueError(f"{written(value)} is not a number with a unit; expected {self.expected}")
         if math.isfinite(value) and from_file(info) and self.dimension != "turbidity":
-            raise ValueError(missing_unit(written(value), self.dimension))
+            raise ValueError(missing_unit(written(value), self.dimension, self.example))
         return float(value)
 
 
@@ -299,22 +300,16 @@ POSITIVE = Range(above=0.0)
 NOT_NEGATIVE = Range(least=0.0)
 
 Volume = Annotated[float, Amount("volume", POSITIVE)]
-HoldUp = Annotated[float, Amount("volume", NOT_NEGATIVE)]
+HoldUp = Annotated[float, Amount("volume", NOT_NEGATIVE, "12 mL")]
 Time = Annotated[float, Amount("time", POSITIVE)]
-Setup = Annotated[float, Amount("time", NOT_NEGATIVE)]
 Pressure = Annotated[float, Amount("pressure", POSITIVE)]
-StaticHead = Annotated[float, Amount("pressure", NOT_NEGATIVE)]
 Area = Annotated[float, Amount("area", POSITIVE)]
 Flux = Annotated[float, Amount("flux", POSITIVE)]
-Flow = Annotated[float, Amount("flow", POSITIVE)]
-LeastFlow = Annotated[float, Amount("flow", NOT_NEGATIVE)]
 Loading = Annotated[float, Amount("loading", POSITIVE)]
 Temperature = Annotated[float, Amount("temperature", Range(least=0.0, most=100.0))]
 Density = Annotated[float, Amount("density", Range(least=0.5, most=3.0))]
-Line = Annotated[float, Amount("line", NOT_NEGATIVE)]
-Titer = Annotated[float, Amount("titer", NOT_NEGATIVE)]
-Turbidity = Annotated[float, Amount("turbidity", POSITIVE)]
-Money = Annotated[float, Number(NOT_NEGATIVE, "940")]
+Turbidity = Annotated[float, Amount("turbidity", POSITIVE, "8")]
+Price = Annotated[float, Number(NOT_NEGATIVE, "940")]
 Factor = Annotated[float, Number(POSITIVE, "1.0")]
 Spread = Annotated[float, Number(Range(least=0.0, most=3.0), "0.1")]
 Fraction = Annotated[float, Number(Range(least=0.0, most=1.0), "0.8")]

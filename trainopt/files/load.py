@@ -79,6 +79,15 @@ def find_root(path: Path) -> Path:
     raise InputError([Problem(shown_path(here), 0, text)])
 
 
+def file_kind(path: Path) -> str:
+    """What a YAML file is, by what it says: "medium", "catalog" or "scenario"."""
+    source, _ = read_source(path)
+    if "modules" in source.data or path.name == "catalog.yaml":
+        return "catalog"
+    in_media = path.absolute().parent.name == "media"
+    return "medium" if in_media or "curve" in source.data or "medium" in source.data else "scenario"
+
+
 def read_workspace(root: Path) -> Found:
     """Everything under `models/`, with the problems in it and between its files."""
     found = Found(root)

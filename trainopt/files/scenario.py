@@ -8,26 +8,22 @@ from typing import Annotated, Any, Literal
 from pydantic import Discriminator, PrivateAttr, Tag, ValidationInfo, model_validator
 
 from trainopt.files.fields import (
+    NOT_NEGATIVE,
+    POSITIVE,
+    Amount,
     Choice,
     Count,
     Entry,
     Flag,
-    Flow,
     Fraction,
-    LeastFlow,
-    Line,
-    Money,
     Name,
     Number,
     Pressure,
     Range,
     Rule,
-    Setup,
     Spread,
-    StaticHead,
     Temperature,
     Time,
-    Titer,
     Volume,
     Words,
     written,
@@ -55,9 +51,9 @@ class Batch(Entry):
 class Pump(Entry):
     """The range of a block's pump."""
 
-    min_flow: LeastFlow | None = None
+    min_flow: Annotated[float, Amount("flow", NOT_NEGATIVE, "50 L/h")] | None = None
     """Lowest flow it can hold (default: none)."""
-    max_flow: Flow | None = None
+    max_flow: Annotated[float, Amount("flow", POSITIVE, "1200 L/h")] | None = None
     """Highest flow it can give (default: no limit)."""
 
     @model_validator(mode="after")
@@ -131,11 +127,11 @@ class BlockSpec(Entry):
     """Pressure the pump and housings allow at the block's inlet."""
     operation: Annotated[str, Choice(OPERATIONS)] = "constant-flow"
     """How the block is driven: constant-flow or constant-pressure."""
-    setup: Setup = 0.0
+    setup: Annotated[float, Amount("time", NOT_NEGATIVE, "30 min")] = 0.0
     """Time for installing, flushing and blowing down, taken from the batch time."""
-    static: StaticHead = 0.0
+    static: Annotated[float, Amount("pressure", NOT_NEGATIVE, "0.05 bar")] = 0.0
     """Static head the pump works against."""
-    line: Line = 0.0
+    line: Annotated[float, Amount("line", NOT_NEGATIVE)] = 0.0
     """Resistance of the piping, pressure per flow."""
     pump: Pump | None = None
     """The range of the pump."""
@@ -153,9 +149,9 @@ class BlockSpec(Entry):
 class Product(Entry):
     """The product left behind in the modules' hold-up."""
 
-    titer: Titer
+    titer: Annotated[float, Amount("titer", NOT_NEGATIVE)]
     """Product per volume of feed."""
-    value: Money
+    value: Annotated[float, Number(NOT_NEGATIVE, "40")]
     """Worth of the product per g, in the catalog's currency."""
     recovered: Fraction = 0.0
     """Part of the hold-up that is recovered, 0 to 1."""
@@ -164,9 +160,9 @@ class Product(Entry):
 class Costs(Entry):
     """What a batch costs beside modules and holders, in the catalog's currency."""
 
-    hour: Money = 0.0
+    hour: Annotated[float, Number(NOT_NEGATIVE, "180")] = 0.0
     """Per hour of process time and setup."""
-    flush: Money = 0.0
+    flush: Annotated[float, Number(NOT_NEGATIVE, "0.02")] = 0.0
     """Per L of flush."""
     product: Product | None = None
     """The product left in the modules."""

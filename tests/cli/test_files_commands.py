@@ -1,0 +1,69 @@
+"""`check`, `new` and `fields`, and what the command line makes of every broken workspace."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+from typer.testing import CliRunner
+
+from tests.files.broken_cases import BROKEN, CASE_FILE, SOUND, Broken, write_workspace
+from trainopt.cli.program import program
+
+RUNNER = CliRunner()
+
+
+def test_check_of_a_sound_workspace(tmp_path: Path) -> None:
+    write_workspace(tmp_path)
+    result = RUNNER.invoke(program, ["check", str(tmp_path)])
+    assert (result.exit_code, result.stdout) == (0, "no problems\n")
+
+
+@pytest.mark.parametrize("command", ["check", "design"])
+@pytest.mark.parametrize("case", BROKEN, ids=lambda case: case.name)
+def test_wrong_input_is_status_2_with_place_and_words(
+    case: Broken, command: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    scenario = write_workspace(tmp_path, case)
+    if case.name == "case-rating-inlet":
+        scenario.write_text(SOUND[CASE_FILE].replace("operation: constant-flow", "operation: constant-pressure"))
+    result = RUNNER.invoke(program, [command, CASE_FILE])
+    assert result.exit_code == 2
+    assert result.stdout == ""
+    assert "Traceback" not in result.stderr
+    place = f"{case.at}:{case.line()}: " if case.mark is not None else case.at
+    lines = [line for line in result.stderr.splitlines() if line.startswith(place)]
+    for word in case.words:
+        assert any(word in line for line in lines), result.stderr
+
+
+def test_new_writes_a_workspace_that_works_and_says_what_is_next(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.chdir(tmp_path)
+    result = RUNNER.invoke(program, ["new", "mine"])
+    assert result.exit_code == 0
+    assert "invented" in result.stdout
+    (following,) = [line for line in result.stdout.splitlines() if line.startswith("next: trainopt design ")]
+    assert Path(following.removeprefix("next: trainopt design ")).is_file()
+    again = RUNNER.invoke(program, ["new", "mine"])
+    assert again.exit_code == 2
+    assert again.stderr.startswith("mine: exists already")
+
+
+def test_fields_of_everything_and_of_one_thing() -> None:
+    everything = RUNNER.invoke(program, ["fields"]).stdout
+    for heading in ("Medium: ", "Catalog: ", "Scenario: "):
+        assert everything.count(heading) == 1
+    one = RUNNER.invoke(program, ["fields", "blocks.pump.max_flow"]).stdout
+    assert "Highest flow it can give" in one
+    assert "example: 1200 L/h" in " ".join(one.split())
+    assert "volume" not in one
+    assert max(map(len, everything.splitlines())) <= 100
+
+
+def test_fields_of_nothing_known() -> None:
+    result = RUNNER.invoke(program, ["fields", "blocks.pumps"])
+    assert result.exit_code == 2
+    assert "did you mean 'blocks.pump'?" in result.stderr
