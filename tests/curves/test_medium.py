@@ -189,6 +189,20 @@ def test_little_fouling_and_early_end_are_said(tmp_path: Path) -> None:
     assert "ended-early" in codes
 
 
+def test_lots_of_a_medium_that_does_not_foul_stay_near_one(tmp_path: Path) -> None:
+    """Without fouling nothing tells κ; noise must not make it wild, for a design leans on the worst lot's."""
+    for seed in range(10):
+        runs = []
+        for index, rho in enumerate((0.9, 1.0, 1.1)):
+            lab = Lab(parameters=(1e-3, 1e-6), rho=rho, noise=0.03, seed=10 * seed + index, turbidity=(1.0, 0.0))
+            runs.append(RunEntry(lab.write(tmp_path / f"{index}.csv"), lot="abc"[index]))
+        curve = fitted(*runs, law="intermediate")
+        assert all(0.5 < lot.fouling < 2.0 for lot in curve.lots.values())
+        assert curve.lots["c"].resistance / curve.lots["a"].resistance == pytest.approx(1.1 / 0.9, rel=0.05)
+        assert "lot-fouling-open" in [flag.code for flag in curve.flags]
+    assert "lot-fouling-open" not in [flag.code for flag in fitted(*three_lots(tmp_path)).flags]
+
+
 def test_order_and_constant_trade_off_is_said(tmp_path: Path) -> None:
     curve = fitted(RunEntry(Lab(noise=0.02, n=31).write(tmp_path / "a.csv")), law="hermia")
     [flag] = [flag for flag in curve.flags if flag.code == "n-and-k"]

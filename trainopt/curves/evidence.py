@@ -27,6 +27,10 @@ part.
 BOUND = 4.0
 """Robust standard deviations beyond which an error counts linearly."""
 
+UNSURE, LIKELY = 0.1, 0.5
+"""Where ln κ of a lot is known to no better than the first, it is held near 0 as if by a standard deviation of the
+second: lots of one feed rarely foul more than some two times as fast as another (common practice, no source)."""
+
 ROUNDS = 100
 
 
@@ -35,6 +39,7 @@ class Evidence:
     """Readings with their final weights, every law's fit (best first), the chosen one, and laws that rival
     it.
 
+    `prior` holds the lots' ln κ near zero where the readings hardly tell them (see `fit_law`; 0: not needed).
     `spread` is the largest relative difference between the chosen law's resistance and a rival's on the
     tested range.
     """
@@ -44,6 +49,7 @@ class Evidence:
     chosen: Fit
     rivals: tuple[Fit, ...]
     spread: float
+    prior: float
 
     @property
     def decided(self) -> bool:
@@ -62,22 +68,34 @@ def weigh(readings: Readings, names: tuple[str, ...]) -> Evidence | None:
     close = [fit for fit in fits if fit.aicc <= fits[0].aicc + INDISTINGUISHABLE]
     best = min(close, key=lambda fit: (fit.count, fit.aicc, fit.law))
     final, chosen = settle(readings, best.law)
+    prior = _prior(chosen)
+    if prior > 0.0:
+        final, chosen = settle(readings, best.law, prior)
     rivals = tuple(fit for fit in close if fit.count == best.count and fit.law != best.law)
     spread = max((_difference(readings, chosen, rival) for rival in rivals), default=0.0)
-    return Evidence(final, fits, chosen, rivals, spread)
+    return Evidence(final, fits, chosen, rivals, spread, prior)
 
 
-def settle(readings: Readings, law: str) -> tuple[Readings, Fit]:
+def _prior(fit: Fit) -> float:
+    """How firmly ln κ must be held: not at all where every lot's is known well enough."""
+    lots = len(fit.log_kappa)
+    variance = np.diag(fit.covariance)[-lots:]
+    if lots < 2 or float(np.max(variance)) <= UNSURE**2:
+        return 0.0
+    return max(fit.error, SMALLEST_ERROR) / LIKELY
+
+
+def settle(readings: Readings, law: str, prior: float = 0.0) -> tuple[Readings, Fit]:
     """One law fitted with Huber's loss, by reweighting until no weight moves; the weights are returned
     with it.
     """
-    current, fit = readings, fit_law(readings, LAWS[law])
+    current, fit = readings, fit_law(readings, LAWS[law], prior=prior)
     for _ in range(ROUNDS):
         weight = _weights(readings, fit, current)
         if np.max(np.abs(weight - current.weight)) < 1e-12:
             break
         current = replace(readings, weight=weight)
-        fit = fit_law(current, LAWS[law])
+        fit = fit_law(current, LAWS[law], prior=prior)
     return current, fit
 
 

@@ -101,20 +101,21 @@ def contrasts(lots: int) -> Floats:
     return out
 
 
-def fit_law(readings: Readings, law: Law, tolerance: float = FINE, near: Fit | None = None) -> Fit:
+def fit_law(readings: Readings, law: Law, tolerance: float = FINE, near: Fit | None = None, prior: float = 0.0) -> Fit:
     """The law's parameters and the lots' ρ and κ that make the sum of squared relative errors least.
 
     A polynomial comes out positive and non-decreasing over the loadings seen, κ·l included. `near` is a fit
-    of the same law to much the same readings, to start from.
+    of the same law to much the same readings, to start from. `prior` holds the ln κ near zero: it counts as one reading
+    of each whose relative error is 1/prior times that of a real one.
     """
     reach = float(np.max(readings.loading))
-    best = _fit_within(readings, law, reach, tolerance, near)
+    best = _fit_within(readings, law, reach, tolerance, near, prior)
     for _ in range(4):
         stretched = _reach(readings, best)
         if not law.polynomial or stretched <= reach * (1.0 + 1e-6):
             break
         reach = stretched
-        best = _fit_within(readings, law, reach, tolerance, near)
+        best = _fit_within(readings, law, reach, tolerance, near, prior)
     return best
 
 
@@ -122,11 +123,11 @@ def _reach(readings: Readings, fit: Fit) -> float:
     return float(np.max(readings.loading * np.exp(fit.log_kappa)[readings.lot]))
 
 
-def _fit_within(readings: Readings, law: Law, reach: float, tolerance: float, near: Fit | None) -> Fit:
+def _fit_within(readings: Readings, law: Law, reach: float, tolerance: float, near: Fit | None, prior: float) -> Fit:
     """Try the law's forms in turn; later ones only where an earlier answer is not allowed (see `forms`)."""
     best: tuple[float, Form, Solution] | None = None
     for form in forms(law, reach, readings.loading, readings.resistance):
-        model = _Model(readings, law, form)
+        model = _Model(readings, law, form, prior)
         solution = model.solve(tolerance, None if near is None or law.polynomial else near.coordinates)
         if form.allows(solution.x[: form.size]):
             if best is None or solution.cost < best[0]:
@@ -134,14 +135,14 @@ def _fit_within(readings: Readings, law: Law, reach: float, tolerance: float, ne
             if form.final:
                 break
     assert best is not None, "every law has a form whose answers are all allowed"
-    return _Model(readings, law, best[1]).result(best[2])
+    return _Model(readings, law, best[1], prior).result(best[2])
 
 
 class _Model:
     """Residuals of one form of a law and of the lots: θ = (the form's, contrasts of ln ρ, of ln κ)."""
 
-    def __init__(self, readings: Readings, law: Law, form: Form) -> None:
-        self.readings, self.law, self.form = readings, law, form
+    def __init__(self, readings: Readings, law: Law, form: Form, prior: float) -> None:
+        self.readings, self.law, self.form, self.prior = readings, law, form, prior
         self.basis = contrasts(len(readings.lots))
         self.rows = self.basis[readings.lot]
         self.root = np.sqrt(readings.weight)
@@ -175,13 +176,23 @@ class _Model:
         log_rho, log_kappa = self._lots(theta)
         x = self.readings.loading * np.exp(log_kappa)
         if not form.law.polynomial and not np.max(x) < form.law.pole(*parameters):
-            return np.full(len(x), np.inf), np.zeros((len(x), len(theta)))
+            return self._held(theta, np.full(len(x), np.inf), np.zeros((len(x), len(theta))))
         value, by_parameter, by_log_kappa = self._logs(x, parameters)
         value = value + log_rho - np.where(self.readings.integral, log_kappa, 0.0)
         jacobian = np.concatenate(
             [by_parameter @ form.slopes(theta[:size]), self.rows, by_log_kappa[:, None] * self.rows], axis=1
         )
-        return self.root * (value - self.readings.log), self.root[:, None] * jacobian
+        return self._held(theta, self.root * (value - self.readings.log), self.root[:, None] * jacobian)
+
+    def _held(self, theta: Floats, residuals: Floats, jacobian: Floats) -> tuple[Floats, Floats]:
+        """Residuals and Jacobian with those of the prior on ln κ below them, where there is one."""
+        lots = self.basis.shape[1]
+        if self.prior == 0.0 or lots == 0:
+            return residuals, jacobian
+        rows = np.zeros((lots, len(theta)))
+        rows[:, len(theta) - lots :] = self.prior * np.eye(lots)
+        off = self.prior * theta[len(theta) - lots :]
+        return np.concatenate([residuals, off]), np.concatenate([jacobian, rows])
 
     def _lots(self, theta: Floats) -> tuple[Floats, Floats]:
         size, lots = self.form.size, self.basis.shape[1]
@@ -207,12 +218,14 @@ class _Model:
         count = len(parameters) + 2 * lots + 1
         n = len(self.readings)
         freedom = max(n - count + 1, 1)
-        error = float(np.sqrt(solution.cost / freedom))
+        residuals = solution.residuals[:n]
+        error = float(np.sqrt(residuals @ residuals / freedom))
         with np.errstate(all="ignore"):
             x = self.readings.loading * np.exp(self._lots(theta)[1])
             _, by_parameter, by_log_kappa = self._logs(x, parameters)
         jacobian = np.concatenate([by_parameter, self.rows, by_log_kappa[:, None] * self.rows], axis=1)
-        spread = covariance(self.root[:, None] * jacobian, error**2)
+        natural = np.concatenate([parameters, theta[size:]])
+        spread = covariance(self._held(natural, residuals, self.root[:, None] * jacobian)[1], error**2)
         widen = np.zeros((len(parameters) + 2 * len(self.readings.lots), len(spread)))
         k = len(parameters)
         widen[:k, :k] = np.eye(k)
@@ -223,7 +236,7 @@ class _Model:
             parameters,
             self.basis @ theta[size : size + lots],
             self.basis @ theta[size + lots :],
-            solution.residuals,
+            residuals,
             _spread(widen, spread),
             error,
             count,

@@ -30,6 +30,7 @@ def curve_flags(
     """
     yield from _ended_early(runs, min(endpoint or ENDPOINT, ENDPOINT), turbidity)
     yield from _little_fouling(medium, evidence)
+    yield from _open_lots(medium, evidence)
     yield from _rivals(medium, evidence)
     yield from _trade_off(medium, evidence)
     yield from _temperatures(medium, runs)
@@ -64,6 +65,17 @@ def _little_fouling(medium: str, evidence: Evidence) -> Iterator[Flag]:
             "another; a longer run would"
         )
         yield Flag("little-fouling", medium, None, text)
+
+
+def _open_lots(medium: str, evidence: Evidence) -> Iterator[Flag]:
+    if evidence.prior > 0.0:
+        text = (
+            "how fast each lot fouls can hardly be told from these runs, since the resistance grows little or is "
+            "noisy; "
+            "the lots' fouling multipliers are held near 1 (a standard deviation of 0.5 in ln κ); longer runs would "
+            "tell"
+        )
+        yield Flag("lot-fouling-open", medium, None, text)
 
 
 def _rivals(medium: str, evidence: Evidence) -> Iterator[Flag]:

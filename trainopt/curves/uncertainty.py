@@ -73,7 +73,7 @@ def _bootstrap(evidence: Evidence, draws: int, seed: int) -> Draws:
     runs = [np.flatnonzero(readings.run == run) for run in range(int(readings.run.max()) + 1)]
     errors = _inflated(readings, fit)
     model = readings.log + fit.residuals / np.sqrt(readings.weight)
-    refits = [_refit(readings, fit, _drawn_runs(readings, runs, rng), errors, model, rng) for _ in range(draws)]
+    refits = [_refit(evidence, _drawn_runs(readings, runs, rng), errors, model, rng) for _ in range(draws)]
     return Draws(
         fit.law,
         readings.lots,
@@ -101,19 +101,15 @@ def _drawn_runs(readings: Readings, runs: list[NDArray[np.intp]], rng: np.random
 
 
 def _refit(
-    readings: Readings,
-    fit: Fit,
-    runs: list[NDArray[np.intp]],
-    errors: Floats,
-    model: Floats,
-    rng: np.random.Generator,
+    evidence: Evidence, runs: list[NDArray[np.intp]], errors: Floats, model: Floats, rng: np.random.Generator
 ) -> Fit:
     """The law fitted again to new errors laid over the fitted curve; each run keeps the mean error it had."""
+    readings, fit = evidence.readings, evidence.chosen
     chosen = np.concatenate(runs)
     places = rng.random(len(chosen))
     noise = np.concatenate([_blocks(errors[run], places) for run in runs])
     part = replace(readings.at(chosen), log=model[chosen] + noise / np.sqrt(readings.weight[chosen]))
-    return fit_law(part, LAWS[fit.law], COARSE, near=fit)
+    return fit_law(part, LAWS[fit.law], COARSE, near=fit, prior=evidence.prior)
 
 
 def _blocks(errors: Floats, places: Floats) -> Floats:
