@@ -27,8 +27,13 @@ if TYPE_CHECKING:
     from trainopt.files import load_medium as load_medium
     from trainopt.files import load_workspace as load_workspace
     from trainopt.optimize import design as design
+    from trainopt.report.curve_figure import curve_figure as curve_figure
+    from trainopt.report.dossier import Dossier as Dossier
+    from trainopt.report.gather import gather as gather
     from trainopt.report.json import curve_document as curve_document
     from trainopt.report.json import design_document as design_document
+    from trainopt.report.render import report_bytes as report_bytes
+    from trainopt.report.render import report_figures as report_figures
     from trainopt.train.results import Design as Design
 
 _HOMES = {
@@ -41,13 +46,21 @@ _HOMES = {
     "Workspace": "trainopt.files",
     "check": "trainopt.curves.check",
     "curve_document": "trainopt.report.json",
+    "Dossier": "trainopt.report.dossier",
+    "curve_figure": "trainopt.report.curve_figure",
     "design": "trainopt.optimize",
+    "gather": "trainopt.report.gather",
+    "report_bytes": "trainopt.report.render",
+    "report_figures": "trainopt.report.render",
     "design_document": "trainopt.report.json",
     "fit_curve": "trainopt.curves.medium",
     "load_case": "trainopt.files",
     "load_medium": "trainopt.files",
     "load_workspace": "trainopt.files",
 }
+
+_SHOWN = {"Curve", "Design", "design", "fit_curve", "gather"}
+"""Names whose results show themselves as tables in a notebook."""
 
 __all__ = ["__version__", *sorted(_HOMES)]
 
@@ -57,6 +70,8 @@ def __getattr__(name: str) -> object:
         raise AttributeError(f"module 'trainopt' has no attribute {name!r}")
     value = getattr(import_module(_HOMES[name]), name)
     globals()[name] = value
+    if name in _SHOWN:
+        import_module("trainopt.report.notebook").install()
     return value
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from typing import TYPE_CHECKING
 
 from trainopt.report.content import Column, Picture, Section, Table, pressure_column, words
@@ -42,23 +43,28 @@ def curves_section(dossier: Dossier, units: str) -> Section | None:
         Column("Loading", "L/m²", "significant"),
         Column("Loading, derated", "L/m²", "significant"),
     )
-    parameters = tuple(
+    tables = (
+        Table("Curves and what the design asks of them", columns, rows),
+        parameter_table(_used_curves(dossier)),
+    )
+    return Section("curves", "Curves of the stages", (), pictures, tables)
+
+
+def parameter_table(curves: Mapping[str, Curve]) -> Table:
+    """Parameters of curves by medium, with their standard errors."""
+    rows = tuple(
         (medium, name, estimate.unit, estimate.value, estimate.se)
-        for medium, curve in sorted(_used_curves(dossier).items())
+        for medium, curve in sorted(curves.items())
         for name, estimate in curve.parameters.items()
     )
-    parameter_columns = (
+    columns = (
         words("Medium"),
         words("Parameter"),
         words("Unit"),
         Column("Value", "", "significant"),
         Column("Standard error", "", "significant"),
     )
-    tables = (
-        Table("Curves and what the design asks of them", columns, rows),
-        Table("Parameters of the curves", parameter_columns, parameters),
-    )
-    return Section("curves", "Curves of the stages", (), pictures, tables)
+    return Table("Parameters of the curves", columns, rows)
 
 
 def _used_curves(dossier: Dossier) -> dict[str, Curve]:

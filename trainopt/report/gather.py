@@ -14,7 +14,7 @@ import numpy as np
 from trainopt.optimize.design import Prepared, design, prepare
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
-from trainopt.report.numbers import limit_words, significant, trimmed
+from trainopt.report.numbers import limit_words, trimmed
 from trainopt.report.stage_figure import StageCurve
 from trainopt.study.axis import Axis
 from trainopt.study.sweep import sweep
@@ -159,7 +159,7 @@ def _assumptions(case: Case, prepared: Prepared) -> Iterator[str]:
         yield "No process temperature is given: resistances are taken as they were at the bench."
     else:
         yield (
-            f"At {significant(temperature)} °C resistances change with the viscosity of water "
+            f"At {trimmed(temperature)} °C resistances change with the viscosity of water "
             "(IAPWS R12-08 at 0.1 MPa), from the temperature of each medium's bench runs."
         )
     yield (

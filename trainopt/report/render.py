@@ -5,6 +5,8 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
     from trainopt.report.dossier import Dossier
 
 
@@ -24,3 +26,11 @@ def report_bytes(dossier: Dossier, suffix: str, units: str = "bar") -> bytes:
 
         return dumps(report_document(dossier)).encode("utf-8", errors="replace")
     raise ValueError(f"no report is written as {suffix!r}; expected .html, .xlsx or .json")
+
+
+def report_figures(dossier: Dossier, units: str = "bar") -> dict[str, Figure]:
+    """The report's pictures as matplotlib figures by name, in reading order."""
+    from trainopt.report.sections import sections
+
+    pictures = [picture for section in sections(dossier, units) for picture in section.pictures]
+    return {picture.name: picture.draw() for picture in pictures}

@@ -69,7 +69,7 @@ def _answer(dossier: Dossier) -> Section:
         paragraphs.append(
             f"At these times all areas could be derated by {fixed(design.safety_factor, 2)} before a limit is met."
         )
-    return Section("answer", "Answer", tuple(paragraphs), tables=(_bill(design),))
+    return Section("answer", "Answer", tuple(paragraphs), tables=(bill_table(design),))
 
 
 def _lots(lots: tuple[str, ...]) -> str:
@@ -78,7 +78,8 @@ def _lots(lots: tuple[str, ...]) -> str:
     return f"lot {lots[0]}" if len(lots) == 1 else f"the worst of lots {', '.join(lots)}"
 
 
-def _bill(design: Design) -> Table:
+def bill_table(design: Design) -> Table:
+    """What to buy, stage by stage, with the total."""
     rows = [
         (
             stage.stage,
@@ -107,8 +108,8 @@ def _bill(design: Design) -> Table:
     return Table("Bill of modules", columns, tuple(rows), total=True)
 
 
-def _train(dossier: Dossier, units: str) -> Section:
-    design = dossier.design
+def stage_table(design: Design, units: str = "bar") -> Table:
+    """What each stage carries, takes of the pressure, and is limited by."""
     factor = PRESSURE_UNITS[units]
     rows = tuple(
         (
@@ -135,6 +136,14 @@ def _train(dossier: Dossier, units: str) -> Section:
         Column("Share of pressure", "%", decimals=0),
         Column("Safety factor"),
     )
+    caption = (
+        "Stages: loading and flux at the installed area; pressure at the end of the batch, worst lot, derated area"
+    )
+    return Table(caption, columns, rows)
+
+
+def _train(dossier: Dossier, units: str) -> Section:
+    design = dossier.design
     route = ", then ".join(
         f"{block.block} ({' → '.join(stage.stage for stage in block.stages)})" for block in design.blocks
     )
@@ -146,12 +155,7 @@ def _train(dossier: Dossier, units: str) -> Section:
         "number is what a stage takes.",
         f"Drawing of the train: {route}, with the pressure falling along each block.",
     )
-    table = Table(
-        "Stages: loading and flux at the installed area; pressure at the end of the batch, worst lot, derated area",
-        columns,
-        rows,
-    )
-    return Section("train", "Train", (), (picture,), (table,))
+    return Section("train", "Train", (), (picture,), (stage_table(design, units),))
 
 
 def _cost(design: Design) -> Section | None:
