@@ -206,6 +206,15 @@ def test_check_takes_any_kind_of_path(tmp_path: Path, monkeypatch: pytest.Monkey
     assert {p.file for p in both} == {OAT_FILE, "models/bench/rye-b.csv"}
 
 
+def test_a_broken_run_is_told_with_the_faults_of_its_medium(tmp_path: Path) -> None:
+    write_workspace(tmp_path)
+    rye = tmp_path / RYE_FILE
+    rye.write_text(rye.read_text().replace("../bench/rye-b.csv", "../bench/rye-c.csv"))
+    (tmp_path / "models/bench/rye-a.csv").write_text("t [min],V [mL],P [psi]\n0,0,0\n5,x,1\n")
+    names = {Path(problem.file).name for problem in check_with_runs([tmp_path])[0]}
+    assert names == {"rye.yaml", "rye-a.csv"}
+
+
 def test_check_says_what_it_cannot_look_at(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
     Path("lost.yaml").write_text("scenario: x\n")

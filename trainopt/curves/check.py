@@ -25,8 +25,9 @@ def check(paths: Iterable[Path | str]) -> tuple[tuple[Problem, ...], tuple[Probl
     checked = examine(paths)
     faulty = {problem.file for problem in checked.problems}
     for medium in checked.media.values():
-        if medium.source.shown not in faulty:  # a curve can only be fitted as its file says, once that is right
-            checked.problems.update(_curve_problems(medium))
+        # A curve can only be fitted as its file says, once that is right; its runs can be read all the same.
+        sound = medium.source.shown not in faulty
+        checked.problems.update(_curve_problems(medium) if sound else _run_problems(medium))
     for file, media in checked.runs.items():
         for medium in media:
             checked.problems.update(_run_problems(medium, file))
@@ -34,8 +35,6 @@ def check(paths: Iterable[Path | str]) -> tuple[tuple[Problem, ...], tuple[Probl
 
 
 def _curve_problems(medium: Medium) -> tuple[Problem, ...]:
-    if not all(run.file.is_file() for run in medium.curve.runs):
-        return ()  # said already, at the run that names the file
     try:
         fit_curve(medium)
     except InputError as error:
@@ -43,15 +42,15 @@ def _curve_problems(medium: Medium) -> tuple[Problem, ...]:
     return ()
 
 
-def _run_problems(medium: Medium, file: Path) -> list[Problem]:
-    """Problems of one bench file."""
+def _run_problems(medium: Medium, only: Path | None = None) -> list[Problem]:
+    """Problems of a medium's bench files, or of one of them; a file that is not there is told by its medium."""
     out: list[Problem] = []
     for index, run in enumerate(medium.curve.runs):
 
         def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
             return medium.source.at(("curve", "runs", index, *loc), text)
 
-        if run.file == file:
+        if run.file.is_file() and only in (None, run.file):
             try:
                 reduce_run(run, where)
             except InputError as error:
