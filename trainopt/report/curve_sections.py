@@ -76,6 +76,7 @@ def _curve_picture(number: int, stage: StageCurve, units: str) -> Picture:
         f"curve-{number}",
         lambda: stage_figure(stage, units),
         f"Stage {stage.stage}: marks are bench readings, lines the curve as each lot meets it in the plant. "
+        "The band holds nine of ten refits of the runs; where they agree it hides behind the line. "
         "The dot is the batch at the installed area, the star the same derated by the safety factor; both "
         "belong inside the shade.",
         f"Resistance of {stage.curve.medium} against loading, law {stage.curve.law}, tested to "

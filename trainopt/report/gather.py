@@ -11,17 +11,20 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from trainopt.curves.uncertainty import band
 from trainopt.optimize.design import Prepared, design, prepare
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.numbers import limit_words, trimmed
-from trainopt.report.stage_figure import StageCurve
+from trainopt.report.stage_figure import Floats, StageCurve
 from trainopt.study.axis import Axis
 from trainopt.study.sweep import sweep
 from trainopt.train import march
+from trainopt.train.build import POOLED
 from trainopt.version import __version__
 
 if TYPE_CHECKING:
+    from trainopt.curves.curve import Curve
     from trainopt.files import Case
     from trainopt.train.problem import Block, Candidate, DesignProblem
     from trainopt.train.results import BlockDesign, Design, StageDesign
@@ -113,7 +116,19 @@ def _stage_curves(prepared: Prepared, found: Design) -> Iterator[StageCurve]:
             design_loading=problem.safety_factor * stage.loading / candidate.scale_up,
             cap=candidate.loading_cap,
             cap_words=limit_words(candidate.cap_reason),
+            band=_band(prepared.curves[stage.medium], shown.worst_lot, candidate, problem),
         )
+
+
+def _band(curve: Curve, lot: str, candidate: Candidate, problem: DesignProblem) -> tuple[Floats, Floats, Floats] | None:
+    """The 90 % band on a lot's curve in the plant; None where no runs can say."""
+    if curve.evidence is None or not (lot == POOLED or lot in curve.lots):
+        return None
+    name = None if lot == POOLED else lot
+    ratio = candidate.curves[problem.lots.index(lot)].resistance_factor / curve.lot_curve(name).resistance_factor
+    loading = np.linspace(0.0, curve.tested_loading, 60)
+    low, high = band(curve, loading, name)
+    return loading, ratio * low, ratio * high
 
 
 def _courses(problem: DesignProblem, found: Design) -> Iterator[Course]:

@@ -6,10 +6,11 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
+from numpy.typing import NDArray
 
 from trainopt.report.labels import short
 from trainopt.report.numbers import PRESSURE_UNITS
-from trainopt.report.style import BRICK, DASHES, INK, MARKS, MIST, PINE, QUIET, styled
+from trainopt.report.style import BAND, BRICK, DASHES, INK, MARKS, MIST, PINE, QUIET, styled
 
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
@@ -17,14 +18,17 @@ if TYPE_CHECKING:
 
     from trainopt.curves.curve import Curve, LotCurve
 
+Floats = NDArray[np.float64]
 
-@dataclass(frozen=True)
+
+@dataclass(frozen=True, eq=False)
 class StageCurve:
     """What a stage's picture needs.
 
     `curve` as fitted at the bench, `lots` each lot's curve in the plant by name (viscosity included),
     `worst_lot` the one that the design is held to, `loading` at the installed area and `design_loading`
-    with the safety factor (L/m²), `cap` the highest loading allowed and `cap_words` why.
+    with the safety factor (L/m²), `cap` the highest loading allowed and `cap_words` why; `band` the 90 % band
+    on the worst lot's curve (loading, low, high, each of shape (n,)), where there are runs to say.
     """
 
     stage: str
@@ -35,6 +39,7 @@ class StageCurve:
     design_loading: float
     cap: float | None = None
     cap_words: str = ""
+    band: tuple[Floats, Floats, Floats] | None = None
 
 
 def stage_figure(stage: StageCurve, units: str = "bar") -> Figure:
@@ -47,6 +52,10 @@ def stage_figure(stage: StageCurve, units: str = "bar") -> Figure:
         axes = figure.subplots()
         reach = max(stage.curve.tested_loading, stage.design_loading)
         axes.axvspan(0.0, stage.curve.tested_loading, facecolor=MIST, edgecolor="none", zorder=0)
+        if stage.band is not None:
+            l, low, high = stage.band
+            label = "90 % band, worst lot"
+            axes.fill_between(l, low * factor, high * factor, facecolor=BAND, edgecolor="none", label=label)
         _readings(axes, stage.curve, factor)
         _curves(axes, stage, reach, factor)
         _design_point(axes, stage, factor)

@@ -30,6 +30,9 @@ QUIET = "#4c5f66"
 MIST = "#e3eaeb"
 """Areas: tested ranges, bands, blocks."""
 
+BAND = "#9dbdbb"
+"""Uncertainty about the optimum's color."""
+
 PAPER = "#ffffff"
 
 STEPS = (PINE, "#d9c9a3", "#7fa7a3", "#f0e8d8", "#3f6f8f", "#b9cfcb")
