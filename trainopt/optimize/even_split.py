@@ -48,7 +48,7 @@ def least_area(problem: DesignProblem, node: Node, budget: float, time: float) -
 
 
 def sized_option(problem: DesignProblem, node: Node, budget: float, time: float) -> int | None:
-    """The option with the smallest objective whose area is at least the recommended; None where none is large enough."""
+    """The option of least objective with at least the recommended area; None where none is large enough."""
     options = node.candidate.options
     recommended = max(
         problem.safety_factor * least_area(problem, node, budget, time),
@@ -91,7 +91,7 @@ def even_split(problem: DesignProblem) -> EvenPick:
     best: tuple[float, tuple[str, ...], Route] | None = None
     failure = "no allowed route through the stages has modules inside the loading caps"
     for nodes in routes(index):
-        route, text = _sized_route(problem, index, nodes, times, sized)
+        route, text = _sized_route(problem, nodes, times, sized)
         if route is None:
             failure = text
             continue
@@ -103,7 +103,6 @@ def even_split(problem: DesignProblem) -> EvenPick:
 
 def _sized_route(
     problem: DesignProblem,
-    index: Index,
     nodes: tuple[Node, ...],
     times: tuple[float, ...],
     sized: dict[tuple[int, int], int | None],

@@ -7,7 +7,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 
@@ -16,16 +17,17 @@ from trainopt.optimize.roots import largest_where
 from trainopt.train.options import demand
 from trainopt.train.problem import Floats
 
-_POINTS = 2000
-_LEVELS = 3
+_POINTS = 100
+_LEVELS = 4
 
 
 @dataclass(frozen=True)
 class IdealStage:
     """One stage of the ideal split.
 
-    `loading_area` = F·V/φ in L, so that L = loading_area/A; `most` the highest design loading allowed, L/m² (caps, flux,
-    rating); `weight` of a m² in the objective; `suffix_budget` bar·h for this stage and those downstream (infinite: none).
+    `loading_area` = F·V/φ in L, so that L = loading_area/A; `most` the highest design loading allowed, L/m² (caps,
+    flux, rating); `weight` of a m² in the objective; `suffix_budget` bar·h for this stage and those downstream
+    (infinite: none).
     """
 
     curves: tuple[LotCurve, ...]
@@ -37,12 +39,12 @@ class IdealStage:
 
     def demand(self, loading: Floats, lots: Floats) -> Floats:
         """Σ_s p_s·D_s at each loading, bar·h, for the weights `lots` of the lots."""
-        return np.asarray(lots @ demand(self.curves, self.operation, loading))
+        counted = np.flatnonzero(lots)
+        curves = [self.curves[s] for s in counted.tolist()]
+        return np.asarray(lots[counted] @ demand(curves, self.operation, loading))
 
 
-def loading_limit(
-    curves: tuple[LotCurve, ...], operation: str, cap: float, rating_budget: float
-) -> float:
+def loading_limit(curves: tuple[LotCurve, ...], operation: str, cap: float, rating_budget: float) -> float:
     """Highest design loading in L/m² inside `cap` at which every lot's D stays within the stage's own rating, bar·h."""
     finite = min(cap, *(curve.pole * (1.0 - 1e-9) for curve in curves))
     if math.isinf(rating_budget):
@@ -75,8 +77,6 @@ def ideal_areas(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...
 
 
 def _freed(stages: Sequence[IdealStage]) -> list[IdealStage]:
-    from dataclasses import replace
-
     return [replace(stage, suffix_budget=math.inf) for stage in stages]
 
 
@@ -92,7 +92,9 @@ def _within(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...] | 
     """The split for the worst lot: one lot if its split holds for all, else the mixture of lots that binds."""
     count = len(stages[0].curves)
     best: tuple[float, ...] | None = None
-    for lot in range(count):
+    # The lot that asks most of the stages at their highest loadings is most likely the one that binds.
+    asked = sum(demand(s.curves, s.operation, np.array([s.most]))[:, 0] for s in stages)
+    for lot in np.argsort(-np.asarray(asked), kind="stable").tolist():
         areas = _equal_marginals(stages, budget, np.eye(count)[lot])
         if areas is None:
             return None
@@ -125,7 +127,7 @@ def _mixed(stages: Sequence[IdealStage], budget: float, start: tuple[float, ...]
         first = first * 1.05
     weights = np.array([s.weight for s in stages])
     scale = first.copy()
-    answer = minimize(
+    answer: Any = minimize(  # type: ignore[call-overload]
         lambda y: float(weights @ (y * scale)) / float(weights @ scale),
         np.ones(len(first)),
         jac=lambda _: weights * scale / float(weights @ scale),
@@ -151,45 +153,39 @@ def _equal_marginals(stages: Sequence[IdealStage], budget: float, lots: Floats) 
     spans = [(top * 1e-7, top) for top in tops]
     loadings = tops
     for _ in range(_LEVELS):
-        grids = [np.geomspace(low, high, _POINTS) for low, high in spans]
+        grids = [np.geomspace(low, high, 2 * _POINTS + 1) for low, high in spans]
         tables = [_table(s, grid, lots) for s, grid in zip(stages, grids, strict=True)]
         if sum(float(table[2][0]) for table in tables) > budget:
             return None
         level = _level(tables, budget)
-        loadings = [float(_at(table, level, 1)) for table in tables]
+        loadings = [float(np.interp(level, table[0], table[1])) for table in tables]
         spans = [_around(grid, loading) for grid, loading in zip(grids, loadings, strict=True)]
     return tuple(s.loading_area / loading for s, loading in zip(stages, loadings, strict=True))
 
 
 def _table(stage: IdealStage, grid: Floats, lots: Floats) -> tuple[Floats, Floats, Floats]:
-    """ln marginal (non-decreasing), loading and demand on the grid's midpoints, its ends included."""
+    """ln marginal (increasing), loading and demand at the grid's odd points, its ends included."""
     spent = stage.demand(grid, lots)
     area = stage.loading_area / grid
-    marginal = np.maximum.accumulate(np.diff(spent) / -np.diff(area) / stage.weight)
-    middle = np.sqrt(grid[:-1] * grid[1:])
-    loading = np.concatenate([grid[:1], middle, grid[-1:]])
+    marginal = np.maximum.accumulate(np.diff(spent[::2]) / -np.diff(area[::2]) / stage.weight)
+    places = np.concatenate([[0], np.arange(1, len(grid), 2), [len(grid) - 1]])
     log_marginal = np.log(np.maximum(np.concatenate([marginal[:1], marginal, marginal[-1:]]), 1e-300))
     # Strictly increasing, so that a level has one loading; the steps are below any that matters.
-    return log_marginal + 1e-13 * np.arange(len(loading)), loading, stage.demand(loading, lots)
-
-
-def _at(table: tuple[Floats, Floats, Floats], level: float, column: int) -> float:
-    return float(np.interp(level, table[0], table[column]))
+    return log_marginal + 1e-13 * np.arange(len(places)), grid[places], spent[places]
 
 
 def _level(tables: Sequence[tuple[Floats, Floats, Floats]], budget: float) -> float:
-    """The common ln marginal at which the demands add up to the budget, by bisection."""
-    low = min(float(table[0][0]) for table in tables)
-    high = max(float(table[0][-1]) for table in tables)
-    for _ in range(80):
-        middle = 0.5 * (low + high)
-        if sum(_at(table, middle, 2) for table in tables) > budget:
-            high = middle
-        else:
-            low = middle
-    return low
+    """The common ln marginal at which the demands, linear between the tables' points, add up to the budget."""
+    levels = np.sort(np.concatenate([table[0] for table in tables]))
+    total = sum(np.interp(levels, table[0], table[2]) for table in tables)
+    place = int(np.searchsorted(np.maximum.accumulate(total), budget, side="right"))
+    if place in (0, len(levels)):
+        return float(levels[min(place, len(levels) - 1)])
+    low, high = float(total[place - 1]), float(total[place])
+    part = (budget - low) / (high - low) if high > low else 0.0
+    return float(levels[place - 1] + part * (levels[place] - levels[place - 1]))
 
 
 def _around(grid: Floats, loading: float) -> tuple[float, float]:
     place = int(np.searchsorted(grid, loading))
-    return float(grid[max(place - 3, 0)]), float(grid[min(place + 3, len(grid) - 1)])
+    return float(grid[max(place - 6, 0)]), float(grid[min(place + 6, len(grid) - 1)])

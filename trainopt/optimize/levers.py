@@ -7,7 +7,7 @@ one exists with the largest areas on some allowed route: no solver is needed to 
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, replace
 from functools import cached_property
 
@@ -24,9 +24,9 @@ ROOM = 1e-9
 
 @dataclass(frozen=True)
 class Setting:
-    """The limits of a problem, any of which may be moved: volume L, time h, safety factor; per block the pressure in bar;
-    per node the area in m² on offer, the loading cap in L/m² and the flux limit in LMH; `lifted` names limits that are off:
-    ("pump", block), ("rating", node)."""
+    """The limits of a problem, any of which may be moved: volume L, time h, safety factor; by block pressure in bar;
+    per node the area in m² on offer, the loading cap in L/m² and the flux limit in LMH; `lifted` names limits that
+    are off: ("pump", block), ("rating", node)."""
 
     volume: float
     time: float
@@ -142,19 +142,21 @@ def all_candidates(problem: DesignProblem) -> Index:
 
 
 def moved(setting: Setting, name: str, key: int, value: float) -> Setting:
-    """The setting with one entry of a per-node or per-block limit replaced."""
-    table = getattr(setting, name)
-    if isinstance(table, tuple):
-        return replace(setting, **{name: tuple(value if k == key else v for k, v in enumerate(table))})  # type: ignore[arg-type]
-    return replace(setting, **{name: {**table, key: value}})  # type: ignore[arg-type]
+    """The setting with one entry replaced: of "pressure" by block, of "area", "cap" or "flux" by node."""
+    if name == "pressure":
+        return replace(setting, pressure=tuple(value if k == key else v for k, v in enumerate(setting.pressure)))
+    if name == "area":
+        return replace(setting, area={**setting.area, key: value})
+    if name == "cap":
+        return replace(setting, cap={**setting.cap, key: value})
+    return replace(setting, flux={**setting.flux, key: value})
 
 
-def nearest(levers: Levers, change: object, start: float, direction: int) -> float | None:
+def nearest(levers: Levers, change: Callable[[float], Setting], start: float, direction: int) -> float | None:
     """The value nearest to `start`, upward (+1) or downward (−1), at which a design exists; None where none does.
 
     `change(value)` is the setting with that value. Monotone: once possible, further is possible too.
     """
-    assert callable(change)
     near = start
     far = start
     for _ in range(80):

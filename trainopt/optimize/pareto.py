@@ -30,7 +30,7 @@ def undominated_points(points: Floats) -> NDArray[np.intp]:
 
 
 def _many(rows: Floats) -> NDArray[np.intp]:
-    """The same for points already sorted by a leading row: a point falls if an earlier one is at most equal in all rows."""
+    """The same for points sorted by a leading row: a point falls to an earlier one at most equal in all rows."""
     kept = np.zeros(0, dtype=np.intp)
     for start in range(0, rows.shape[1], _CHUNK):
         chunk = np.arange(start, min(start + _CHUNK, rows.shape[1]))
@@ -54,8 +54,8 @@ def _beaten(kept: Floats, chunk: Floats) -> NDArray[np.bool_]:
 def cheapest_by_time(weight: Floats, time: Floats, spent: Floats) -> NDArray[np.intp]:
     """Places, sorted by weight, that may be the answer within some time: least weight first, then least `spent`.
 
-    A point falls to one of strictly less weight and no more time, whatever it spends; among points of equal weight, to one
-    that is at most equal in both time and spent.
+    A point falls to one of strictly less weight and no more time, whatever it spends; among points of equal weight,
+    to one that is at most equal in both time and spent.
     """
     order = np.lexsort((spent, time, weight))
     w, t, s = weight[order], time[order], spent[order]

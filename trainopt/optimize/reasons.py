@@ -4,7 +4,8 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterator
-from dataclasses import replace
+from dataclasses import dataclass, replace
+from functools import partial
 
 from trainopt.optimize.levers import Levers, Setting, moved, nearest
 from trainopt.train.problem import DesignProblem, Stage
@@ -12,7 +13,7 @@ from trainopt.train.results import Reason
 
 
 def reasons(problem: DesignProblem) -> tuple[Reason, ...]:
-    """What stands in the way of any design, then each lever alone with the nearest value that works (or that none does).
+    """What stands in the way of any design, then each lever alone with the nearest value that works, if one does.
 
     Empty where a design exists.
     """
@@ -62,6 +63,19 @@ _CAPS = {
 }
 
 Change = Callable[[float], Setting]
+Lift = Callable[[Setting], Setting]
+BOUNDLESS = 1e12
+"""Stands for a limit that is not there, where infinity would make a product undefined."""
+
+
+@dataclass(frozen=True)
+class Lever:
+    """One thing a user may change: its field with the unit, its name, its unit, and the direction that helps."""
+
+    field: str
+    what: str
+    unit: str
+    direction: int
 
 
 def _conflict(levers: Levers) -> Reason:
@@ -79,78 +93,86 @@ def _conflict(levers: Levers) -> Reason:
     return Reason("these limits together admit no design: " + "; ".join(kept), {})
 
 
-def _limits(levers: Levers) -> Iterator[tuple[str, Callable[[Setting], Setting]]]:
+def _limits(levers: Levers) -> Iterator[tuple[str, Lift]]:
     """Every limit in words with how to lift it; the ones a user would rather not move come last, so that they stay."""
     problem, nodes = levers.problem, levers.index.nodes
     for b, block in enumerate(problem.blocks):
         if math.isfinite(block.max_flow) or block.min_flow > 0.0:
-            yield f"the pump's range of '{block.name}'", lambda s, b=b: replace(s, lifted=s.lifted | {("pump", b)})
+            yield f"the pump's range of '{block.name}'", partial(_lifted, keys=frozenset({("pump", b)}))
     for place, (_, stage) in enumerate(levers.index.stages):
         own = [n for n, node in enumerate(nodes) if node.place == place]
         name = stage.name
-        yield (
-            f"the pressure ratings of '{name}'",
-            lambda s, own=own: replace(s, lifted=s.lifted | {("rating", n) for n in own}),
-        )
-        yield f"the flux limit of '{name}'", lambda s, own=own: replace(s, flux={**s.flux, **dict.fromkeys(own, math.inf)})
-        yield (
-            f"the loading cap of '{name}'",
-            lambda s, own=own: replace(s, cap={**s.cap, **dict.fromkeys(own, math.inf)}),
-        )
-        yield (
-            f"the module counts of '{name}'",
-            lambda s, own=own: replace(s, area={**s.area, **{n: 1e12 for n in own}}),
-        )
+        yield f"the pressure ratings of '{name}'", partial(_lifted, keys=frozenset(("rating", n) for n in own))
+        for table, what in (("flux", "flux limit"), ("cap", "loading cap"), ("area", "module counts")):
+            yield f"the {what} of '{name}'", partial(_raised, table=table, own=own, value=BOUNDLESS)
     for b, block in enumerate(problem.blocks):
-        yield (
-            f"the pressure of '{block.name}', {block.pressure:.4g} bar",
-            lambda s, b=b: moved(s, "pressure", b, 1e12),
-        )
-    yield f"the time, {problem.time:.4g} h", lambda s: replace(s, time=math.inf)
+        text = f"the pressure of '{block.name}', {block.pressure:.4g} bar"
+        yield text, partial(_with_pressure, b=b, value=BOUNDLESS)
+    yield f"the time, {problem.time:.4g} h", partial(_with_time, value=math.inf)
+
+
+def _lifted(setting: Setting, keys: frozenset[tuple[str, int]]) -> Setting:
+    return replace(setting, lifted=setting.lifted | keys)
+
+
+def _raised(setting: Setting, table: str, own: list[int], value: float) -> Setting:
+    """The setting with a per-node limit of these nodes raised to at least `value`."""
+    for n in own:
+        setting = moved(setting, table, n, max(getattr(setting, table)[n], value))
+    return setting
+
+
+def _with_pressure(setting: Setting, b: int, value: float) -> Setting:
+    return moved(setting, "pressure", b, value)
+
+
+def _with_time(setting: Setting, value: float) -> Setting:
+    return replace(setting, time=value)
+
+
+def _with_factor(setting: Setting, value: float) -> Setting:
+    return replace(setting, safety_factor=value)
+
+
+def _with_volume(setting: Setting, value: float) -> Setting:
+    return replace(setting, volume=value)
 
 
 def _levers(levers: Levers) -> Iterator[Reason]:
     """Each lever alone: time, each block's pressure, each stage's counts, caps and flux, safety factor, volume."""
     problem, base = levers.problem, levers.setting
-    yield _single(
-        levers, "batch.time_h", "the time", "h", base.time, 1, lambda v: replace(base, time=v)
-    )
+    yield _single(levers, Lever("batch.time_h", "the time", "h", 1), base.time, partial(_with_time, base))
     for b, block in enumerate(problem.blocks):
-        yield _single(
-            levers, f"{block.name}.pressure_bar", f"the pressure of '{block.name}'", "bar", block.pressure, 1,
-            lambda v, b=b: moved(base, "pressure", b, v),
-        )  # fmt: skip
+        lever = Lever(f"{block.name}.pressure_bar", f"the pressure of '{block.name}'", "bar", 1)
+        yield _single(levers, lever, block.pressure, partial(_with_pressure, base, b))
     for place, (_, stage) in enumerate(levers.index.stages):
         own = [n for n, node in enumerate(levers.index.nodes) if node.place == place]
         yield _counts(levers, stage.name, own)
-        for name, field, what, unit in (
-            ("cap", "loading_limit_L_m2", "the loading limit", "L/m2"), ("flux", "flux_limit_LMH", "the flux limit", "LMH"),
-        ):  # fmt: skip
-            start = max(getattr(base, name)[n] for n in own)
-            yield _single(
-                levers, f"{stage.name}.{field}", f"{what} of '{stage.name}'", unit, start, 1,
-                lambda v, own=own, name=name: replace(
-                    base, **{name: {**getattr(base, name), **{n: max(getattr(base, name)[n], v) for n in own}}}
-                ),
-            )  # fmt: skip
-    yield _single(
-        levers, "safety_factor", "the safety factor", "", base.safety_factor, -1,
-        lambda v: replace(base, safety_factor=v),
-    )  # fmt: skip
-    yield _single(levers, "batch.volume_L", "the batch", "L", base.volume, -1, lambda v: replace(base, volume=v))
+        for table, field, what, unit in _NODE_LEVERS:
+            lever = Lever(f"{stage.name}.{field}", f"the {what} of '{stage.name}'", unit, 1)
+            start = max(getattr(base, table)[n] for n in own)
+            yield _single(levers, lever, start, partial(_raised, base, table, own))
+    lever = Lever("safety_factor", "the safety factor", "", -1)
+    yield _single(levers, lever, base.safety_factor, partial(_with_factor, base))
+    yield _single(levers, Lever("batch.volume_L", "the batch", "L", -1), base.volume, partial(_with_volume, base))
 
 
-def _single(
-    levers: Levers, field: str, what: str, unit: str, start: float, direction: int, change: Change
-) -> Reason:
-    value = nearest(levers, change, start, direction) if math.isfinite(start) else None
-    if value is not None and field == "safety_factor" and value < 1e-6:
+_NODE_LEVERS = (
+    ("cap", "loading_limit_L_m2", "loading limit", "L/m2"),
+    ("flux", "flux_limit_LMH", "flux limit", "LMH"),
+)
+
+
+def _single(levers: Levers, lever: Lever, start: float, change: Change) -> Reason:
+    value = nearest(levers, change, start, lever.direction) if math.isfinite(start) else None
+    if value is not None and lever.field == "safety_factor" and value < 1e-6:
         value = None
-    now, unit = f"{start:.4g}", f" {unit}" if unit else ""
+    unit = f" {lever.unit}" if lever.unit else ""
+    now = f"{lever.what} ({start:.4g}{unit})"
     if value is None:
-        return Reason(f"{what} ({now}{unit}): no value of it alone makes a design possible", {field: None})
-    verb = "would have to be at least" if direction > 0 else "could be at most"
-    return Reason(f"{what} ({now}{unit}) {verb} {_rounded(value, direction)}{unit}, all else as it is", {field: value})
+        return Reason(f"{now}: no value of it alone makes a design possible", {lever.field: None})
+    verb = "would have to be at least" if lever.direction > 0 else "could be at most"
+    return Reason(f"{now} {verb} {_rounded(value, lever.direction)}{unit}, all else as it is", {lever.field: value})
 
 
 def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
@@ -159,7 +181,7 @@ def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
     best: tuple[float, int, str] | None = None
     for n in own:
         area = base.area[n]
-        needed = nearest(levers, lambda v, n=n: moved(base, "area", n, v), area, 1) if area > 0.0 else None
+        needed = nearest(levers, partial(moved, base, "area", n), area, 1) if area > 0.0 else None
         for module in levers.index.nodes[n].candidate.modules if needed is not None else ():
             assert needed is not None
             count = math.ceil(needed / module.area * (1.0 - 1e-12))

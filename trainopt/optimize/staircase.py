@@ -1,4 +1,4 @@
-"""The staircase: every undominated design of a block or a train, by merging its stages one at a time (model.md, section 5).
+"""The staircase: all undominated designs of a block or train, merged one stage at a time (model.md, section 5).
 
 It finds what the MILP finds without a solver, so that each checks the other; and since it keeps all undominated
 designs, one staircase answers every what-if on the batch time (and, of one block, on its pressure).
@@ -29,8 +29,8 @@ _ANY = -3
 class BlockSteps:
     """Partial or whole designs of one block, arrays over n of them.
 
-    `weight`; `demand` Σ D of shape (lots, n) in bar·h for the lots that matter; `floor` the time in h that ratings and flux
-    limits ask for (0 where the pressure budget asks for more); `picks` the flat option of each stage of the
+    `weight`; `demand` Σ D of shape (lots, n) in bar·h for the lots that matter; `floor` the time in h that ratings
+    and flux limits ask for (0 where the pressure budget asks for more); `picks` the flat option of each stage of the
     train, −1 where unused, shape (stages, n).
     """
 
@@ -67,7 +67,7 @@ class Staircase:
     picks: Places
 
     def best(self, time: float | None = None) -> int | None:
-        """Place of the best design within `time` h (default: the problem's): least weight, most spare, then fixed order."""
+        """Place of the best design within `time` h (default: the problem's): least weight, then most spare."""
         allowed = self.index.problem.time if time is None else time
         fits = np.flatnonzero(self.time <= allowed * (1.0 + TIE))
         if not len(fits):
@@ -76,7 +76,8 @@ class Staircase:
         ties = fits[self.weight[fits] <= least + TIE * max(1.0, abs(least))]
         spare = float(self.spent[ties].min())
         ties = ties[self.spent[ties] <= spare * (1.0 + TIE)]
-        return min(ties.tolist(), key=lambda place: self.picks[:, place].tolist())
+        order: list[int] = ties.tolist()
+        return min(order, key=lambda place: tuple(self.picks[:, place].tolist()))
 
     def route(self, place: int) -> Route:
         """The design at a place as a pick."""
@@ -118,7 +119,8 @@ def block_steps(
 ) -> dict[int, BlockSteps]:
     """Undominated designs of one block by its first used node, given the node that is used next after it.
 
-    Where any medium may follow any, the key is one for all of them. A block none of whose stages is used keeps the exit as key.
+    Where any medium may follow any, the key is one for all of them. A block none of whose stages is used keeps the
+    exit as key.
     """
     problem, lots = index.problem, list(index.lots(b)) or [0]
     follows = followers(index) if follows is None else follows
@@ -168,7 +170,8 @@ def _own_floor(block: Block, node: Node) -> Floats:
     options = node.candidate.options
     if block.operation != "constant-flow":
         return options.shortest_time
-    return np.maximum(options.shortest_time, options.demand.max(axis=0) / node.candidate.differential_pressure)
+    rated = options.demand.max(axis=0) / node.candidate.differential_pressure
+    return np.asarray(np.maximum(options.shortest_time, rated))
 
 
 def _joined(parts: list[BlockSteps]) -> BlockSteps:

@@ -57,9 +57,7 @@ def build_problem(case: Case, curves: Mapping[str, Curve], objective: str | None
     )
 
 
-def _block(
-    case: Case, spec: BlockSpec, curves: Mapping[str, Curve], lots: tuple[str, ...], objective: str
-) -> Block:
+def _block(case: Case, spec: BlockSpec, curves: Mapping[str, Curve], lots: tuple[str, ...], objective: str) -> Block:
     scenario = case.scenario
     duty = Duty(scenario.batch.volume, scenario.safety_factor, objective, spec.operation)
     pump = spec.pump
@@ -76,9 +74,7 @@ def _block(
     )
 
 
-def _stage(
-    case: Case, spec: StageSpec, curves: Mapping[str, Curve], lots: tuple[str, ...], duty: Duty
-) -> Stage:
+def _stage(case: Case, spec: StageSpec, curves: Mapping[str, Curve], lots: tuple[str, ...], duty: Duty) -> Stage:
     choices = sorted(spec.media, key=lambda choice: choice.medium)
     candidates = tuple(_candidate(case, spec, choice, curves[choice.medium], lots, duty) for choice in choices)
     return Stage(spec.stage, spec.optional, candidates)
@@ -108,7 +104,12 @@ def _candidate(
     curves = plant_curves(curve, lots, case.scenario.batch.temperature)
     cap = loading_cap(medium, curve, curves)
     flux_limit = medium.limits.flux if medium.limits.flux is not None else curve.tested_flux
+    (pooled,) = plant_curves(curve, (POOLED,), case.scenario.batch.temperature)
+    further = math.inf if medium.limits.loading is None else medium.limits.loading
+    if curve.turbidity_loading is not None:
+        further = min(further, curve.turbidity_loading)
     parts: list[Options] = []
+    everything: list[Options] = []
     dropped: list[Dropped] = []
     sizes: list[ModuleSize] = []
     for name, module in sorted(catalog.modules.items()):
@@ -118,6 +119,7 @@ def _candidate(
         options = module_options(medium, name, catalog, case.scenario.costs, duty, counts)
         kept, left_out = inside_caps(options, cap, curves, duty.operation, flux_limit, duty.volume)
         parts.append(kept)
+        everything.append(options)
         sizes.append(ModuleSize(name, module.area, int(counts[0]), int(counts[-1])))
         dropped.extend(left_out)
     return Candidate(
@@ -133,11 +135,15 @@ def _candidate(
         options=_by_area(joined(parts)),
         dropped=tuple(dropped),
         modules=tuple(sizes),
+        on_offer=joined(everything),
+        pooled=pooled,
+        pooled_cap=loading_cap(medium, curve, (pooled,)).loading,
+        further_cap=further,
     )
 
 
 def _counts(stage: StageSpec, module: str, max_count: int) -> NDArray[np.int64] | None:
-    """The counts a module may be bought in for a stage (None: not at all), by the catalog and the stage's `fix` or `count`."""
+    """Counts a module may be bought in for a stage (None: not at all), by the catalog and `fix` or `count`."""
     low, high = 1, max_count
     if stage.fix is not None:
         if stage.fix.module not in (None, module):
@@ -161,9 +167,10 @@ def _by_area(options: Options) -> Options:
 
 
 def prune(problem: DesignProblem) -> DesignProblem:
-    """The same problem without options that cannot be in the best design: its optimum is the same (model.md, section 3).
+    """The same problem without options that no best design can have: its optimum is the same (model.md, section 3).
 
-    Left out are those that take the whole block's pressure or flux for longer than the block has, and then the dominated.
+    Left out are those that take the whole block's pressure or flux for longer than the block has, and then the
+    dominated.
     """
     return replace(problem, blocks=tuple(_pruned_block(problem, block) for block in problem.blocks))
 

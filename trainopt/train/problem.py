@@ -8,6 +8,7 @@ cannot depend on the order in which a file lists them.
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 import numpy as np
@@ -48,8 +49,8 @@ class Options:
 class Dropped:
     """Options that were left out before the model was built: why, how many, and the cap that did it."""
 
-    code: str          # "loading-tested" | "loading-limit" | "turbidity" | "pole" | "too-slow" | "dominated"
-    module: str        # "" where the reason holds for every module of the medium
+    code: str  # "loading-tested" | "loading-limit" | "turbidity" | "pole" | "too-slow" | "dominated"
+    module: str  # "" where the reason holds for every module of the medium
     options: int
     limit_L_m2: float | None
     text: str
@@ -73,7 +74,10 @@ class Candidate:
     Ratings in bar, `flux_limit` in LMH on the installed area, `loading_cap` the highest design loading L in L/m²
     with `cap_reason` ("loading-tested", "loading-limit", "turbidity") saying which limit it comes from.
     `curves`: the curve of each lot of the problem, in the problem's order of lots.
-    `modules` are the sizes on offer, `options` all those inside the caps, undominated ones only when the problem was pruned.
+    `modules` are the sizes on offer, `options` all those inside the caps, undominated ones only when the problem was
+    pruned. For what-ifs: `on_offer` every option, caps aside (`demand` and `shortest_time` not filled; None: not
+    known); `pooled` the curve that no lot's multipliers change, `pooled_cap` its loading cap, `further_cap` the cap
+    if bench runs had gone on for ever, L/m².
     """
 
     medium: str
@@ -88,6 +92,10 @@ class Candidate:
     options: Options
     dropped: tuple[Dropped, ...]
     modules: tuple[ModuleSize, ...] = ()
+    on_offer: Options | None = None
+    pooled: LotCurve | None = None
+    pooled_cap: float = math.inf
+    further_cap: float = math.inf
 
     @property
     def largest_area(self) -> float:
@@ -114,7 +122,7 @@ class Block:
     """
 
     name: str
-    operation: str     # "constant-flow" | "constant-pressure"
+    operation: str  # "constant-flow" | "constant-pressure"
     pressure: float
     static: float
     line: float
@@ -140,16 +148,16 @@ class DesignProblem:
     title: str
     volume: float
     time: float
-    schedule: str      # "sequential" | "side-by-side"
-    objective: str     # "area" | "cost"
-    hour_rate: float   # currency per hour of process time and setup (counts in the objective for "cost" only)
+    schedule: str  # "sequential" | "side-by-side"
+    objective: str  # "area" | "cost"
+    hour_rate: float  # currency per hour of process time and setup (counts in the objective for "cost" only)
     safety_factor: float
     lots: tuple[str, ...]
     blocks: tuple[Block, ...]
     currency: str
 
     def longest_time(self, block: Block) -> float:
-        """The most that a block's t_b can be, h: what all setups leave (its own, side by side), and the pump's least flow."""
+        """The most t_b can be, h: what all setups leave (side by side: its own), within the pump's least flow."""
         setups = sum(b.setup for b in self.blocks) if self.schedule == "sequential" else block.setup
         pump = self.volume / block.min_flow if block.min_flow > 0.0 else float("inf")
         return min(self.time - setups, pump)

@@ -35,8 +35,8 @@ class StageDesign:
     `loading` L/m² and `flux` LMH at the installed area; `demand` bar·h and `pressure` bar (end of batch) for the
     block's worst lot at the derated area; `pressure_share` of what the block's stages use; `safety_factor` the largest
     derating of this stage alone at the design's times; `limited_by` the binding limit
-    ("pressure", "differential-pressure", "inlet-pressure", "flux", "loading-tested", "loading-limit", "turbidity", "module-size").
-    `modules_cost` and `holders_cost` per batch, in the catalog's currency.
+    ("pressure", "differential-pressure", "inlet-pressure", "flux", "loading-tested", "loading-limit", "turbidity",
+    "module-size"). `modules_cost` and `holders_cost` per batch, in the catalog's currency.
     """
 
     stage: str
@@ -104,7 +104,7 @@ class CostParts:
 class Objective:
     """Objective of the picked design with HiGHS's proof: `gap` is relative, 0 when proven optimal."""
 
-    kind: str          # "area" | "cost"
+    kind: str  # "area" | "cost"
     value: float
     bound: float
     gap: float
@@ -149,13 +149,91 @@ class Saving:
 
 
 @dataclass(frozen=True)
+class AreaPart:
+    """One cause's share of what is installed: `area` m², `cost` per batch (below zero where it takes some off)."""
+
+    name: str
+    area: float
+    cost: float
+
+
+@dataclass(frozen=True)
+class AreaParts:
+    """Where a design's area and cost go: parts that add up to them, and beside them what the even split would add."""
+
+    parts: tuple[AreaPart, ...]
+    even_split_area: float | None
+    even_split_cost: float | None
+
+
+@dataclass(frozen=True)
+class Gain:
+    """The least change of one limit alone that makes a better design possible.
+
+    `field` the limit with its unit ("batch.time_h", "clarification.pressure_bar", "secondary.loading_limit_L_m2", …),
+    `now` and `needs` its values in `unit`; `objective` the better design's, `saves` how much less that is, `picks`
+    what it buys.
+    """
+
+    field: str
+    unit: str
+    now: float
+    needs: float
+    objective: float
+    saves: float
+    picks: tuple[Pick, ...]
+    text: str
+
+
+@dataclass(frozen=True)
+class LongerRun:
+    """What bench runs of a medium would be worth that went on further, if its fitted curve holds that far.
+
+    `tested` and `loading` L/m² say how far they went and should go, `pressure` bar is what they would reach there at
+    `flux` LMH, the flux tested; `objective` the best design's then, `saves` how much less that is, `picks` what it
+    buys.
+    """
+
+    medium: str
+    tested: float
+    loading: float
+    flux: float
+    pressure: float
+    objective: float
+    saves: float
+    picks: tuple[Pick, ...]
+    text: str
+
+
+@dataclass(frozen=True)
+class BlockLimit:
+    """What binds in a block: `limited_by` the limit its time comes closest to ("pressure", "pump", "flux", …), at which
+    `stage` ("" for the block's own); `used` of 1 that limit is; `stages` maps each stage to its own binding limit."""
+
+    block: str
+    limited_by: str
+    stage: str
+    used: float
+    stages: Mapping[str, str]
+
+
+@dataclass(frozen=True)
+class Limits:
+    """What limits a design and what a little more of each limit would gain, nearest changes first."""
+
+    blocks: tuple[BlockLimit, ...]
+    gains: tuple[Gain, ...]
+    longer_runs: tuple[LongerRun, ...]
+
+
+@dataclass(frozen=True)
 class Design:
     """A proven design, or the reasons why none exists.
 
     `status` "optimal" (proven), "limit" (best found when a limit stopped the solver) or "infeasible" (then numbers are
     None and `reasons` is filled). `area` m², `time` h (process time and setups), `cost` per batch.
     `safety_factor`: the largest common derating at the design's times that still meets every limit.
-    `inputs` maps each file read to "sha256:…".
+    `inputs` maps each file read to "sha256:…". `area_parts` is filled where it was asked for.
     """
 
     scenario: str
@@ -173,6 +251,7 @@ class Design:
     warnings: tuple[Notice, ...]
     reasons: tuple[Reason, ...] = ()
     inputs: Mapping[str, str] = field(default_factory=dict)
+    area_parts: AreaParts | None = None
 
     @property
     def picks(self) -> tuple[Pick, ...]:
