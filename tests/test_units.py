@@ -124,7 +124,7 @@ REFUSED = [
     ("2000", "volume", "2000 has no unit; expected a volume such as '2000 L'"),
     ("2000 bar", "volume", "'bar' is not a unit of volume"),
     ("2,000 L", "volume", "comma"),
-    ("3 ML", "volume", "unknown unit 'ML'"),
+    ("3 ML", "volume", "unknown unit 'ML' (did you mean 'mL'?)"),
     ("3 Bar", "pressure", "did you mean 'bar'?"),
     ("3 psia", "pressure", "absolute"),
     ("nan L", "volume", "is not a number with a unit"),

@@ -270,8 +270,8 @@ def _pint_unit(unit: str, dimension: str) -> Any:
         raise ValueError(f"{_quoted(unit)} is not a unit; expected {expected(dimension)}")
     for word in _WORD.findall(unit):
         if word not in _known_words():
-            near = difflib.get_close_matches(word, _nearby(dimension), n=1, cutoff=0.5)
-            hint = f" (did you mean '{near[0]}'?)" if near else ""
+            near = _nearest_word(word, dimension)
+            hint = f" (did you mean '{near}'?)" if near else ""
             raise ValueError(f"unknown unit '{word}'{hint}; expected {expected(dimension)}")
     try:
         found = _registry().parse_units(_spelled(unit))
@@ -292,10 +292,13 @@ def _measure(dimension: str) -> str:
     }.get(name, name)
 
 
-def _nearby(dimension: str) -> list[str]:
-    """Words of the usual units of a dimension first, for a better guess at a slip."""
+def _nearest_word(word: str, dimension: str) -> str | None:
+    """The unit that an unknown word is most likely a slip of, among the usual ones of the dimension."""
     usual = {word for unit in _FACTORS.get(dimension, {}) for word in _WORD.findall(unit)}
-    return sorted(usual or _known_words())
+    words = sorted(usual or _known_words())
+    same_letters = [known for known in words if known.casefold() == word.casefold()]
+    near = same_letters or difflib.get_close_matches(word, words, n=1, cutoff=0.5)
+    return near[0] if near else None
 
 
 _POWER = re.compile(r"(?<=[A-Za-z)])(?:\^|\*\*)?(-?[1-9])")

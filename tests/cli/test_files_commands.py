@@ -1,4 +1,4 @@
-"""`check`, `new` and `fields`, and what the command line makes of every broken workspace."""
+"""`check`, `new` and `fields`."""
 
 from __future__ import annotations
 
@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 from typer.testing import CliRunner
 
-from tests.files.broken_cases import BROKEN, CASE_FILE, SOUND, Broken, write_workspace
+from tests.files.broken_cases import write_workspace
 from trainopt.cli.program import program
 
 RUNNER = CliRunner()
@@ -17,25 +17,6 @@ def test_check_of_a_sound_workspace(tmp_path: Path) -> None:
     write_workspace(tmp_path)
     result = RUNNER.invoke(program, ["check", str(tmp_path)])
     assert (result.exit_code, result.stdout) == (0, "no problems\n")
-
-
-@pytest.mark.parametrize("command", ["check", "design"])
-@pytest.mark.parametrize("case", BROKEN, ids=lambda case: case.name)
-def test_wrong_input_is_status_2_with_place_and_words(
-    case: Broken, command: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
-) -> None:
-    monkeypatch.chdir(tmp_path)
-    scenario = write_workspace(tmp_path, case)
-    if case.name == "case-rating-inlet":
-        scenario.write_text(SOUND[CASE_FILE].replace("operation: constant-flow", "operation: constant-pressure"))
-    result = RUNNER.invoke(program, [command, CASE_FILE])
-    assert result.exit_code == 2
-    assert result.stdout == ""
-    assert "Traceback" not in result.stderr
-    place = f"{case.at}:{case.line()}: " if case.mark is not None else case.at
-    lines = [line for line in result.stderr.splitlines() if line.startswith(place)]
-    for word in case.words:
-        assert any(word in line for line in lines), result.stderr
 
 
 def test_new_writes_a_workspace_that_works_and_says_what_is_next(
