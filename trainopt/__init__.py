@@ -26,6 +26,7 @@ if TYPE_CHECKING:
     from trainopt.files import load_case as load_case
     from trainopt.files import load_medium as load_medium
     from trainopt.files import load_workspace as load_workspace
+    from trainopt.files import set_field as set_field
     from trainopt.optimize import design as design
     from trainopt.report.curve_figure import curve_figure as curve_figure
     from trainopt.report.dossier import Dossier as Dossier
@@ -57,6 +58,7 @@ _HOMES = {
     "load_case": "trainopt.files",
     "load_medium": "trainopt.files",
     "load_workspace": "trainopt.files",
+    "set_field": "trainopt.files",
 }
 
 _SHOWN = {"Curve", "Design", "design", "fit_curve", "gather"}

@@ -5,6 +5,8 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from tests.files.broken_cases import CASE, CATALOG, CATALOG_FILE, write_workspace
 from trainopt.errors import InputError
@@ -116,6 +118,25 @@ def test_refused_with_the_nearest_name_or_the_range(case: Case, path: str, text:
     assert words in problem.text
     assert f"field '{path}'" in problem.text
     assert problem.file.endswith("case.yaml")
+
+
+PIECES = sorted(
+    {part for path, *_ in PATHS for part in path.split(".")} | {"", "x", "runs", "coefficients", "after", "0"}
+)
+
+
+@settings(max_examples=300, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@given(
+    st.lists(st.sampled_from(PIECES), max_size=6).map(".".join) | st.text(max_size=20),
+    st.floats() | st.text(max_size=8),
+)
+def test_any_path_and_value_is_a_change_or_an_input_error(case: Case, path: str, value: float | str) -> None:
+    try:
+        changed = set_field(case, path, value)
+    except InputError as error:
+        assert error.problems
+    else:
+        assert find_field(changed, path).value(changed) is not None
 
 
 def test_a_field_that_is_not_given_yet(tmp_path: Path) -> None:

@@ -184,7 +184,7 @@ def _walk(model: type[BaseModel], here: Any, parts: Sequence[str]) -> Loc:
     rest = list(parts)
     while rest:
         inside, owner = items(annotation), entry(annotation)
-        if inside is not None and isinstance(here, dict | tuple | None) and not isinstance(here, BaseModel):
+        if inside is not None and isinstance(here, dict | tuple | None):
             here, step, rest = _into(annotation, here, rest)
             loc.append(step)
             annotation = inside
