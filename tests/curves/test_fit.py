@@ -34,7 +34,7 @@ def readings(
     log = np.log(value) + noise * rng.standard_normal(len(loading))
     kind = np.full(len(loading), integral)
     weight = np.ones(len(loading))
-    return Readings(loading, log, kind, weight, lot, lot, resistance, tuple(lots)), log_rho, log_kappa
+    return Readings(loading, log, kind, weight, lot, lot, resistance, 0.0 * loading, tuple(lots)), log_rho, log_kappa
 
 
 def off(fit: Fit, truth: np.ndarray) -> np.ndarray:
@@ -105,7 +105,7 @@ def dipping(seed: int) -> Readings:
     z = loading / 100.0
     resistance = 1e-3 * (1.0 - 0.8 * z + 2.2 * z**2) * np.exp(0.01 * rng.standard_normal(80))
     zeros = np.zeros(80, dtype=np.intp)
-    return Readings(loading, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, ("a",))
+    return Readings(loading, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, np.zeros(80), ("a",))
 
 
 def wavy(seed: int, sag: float) -> Readings:
@@ -114,7 +114,9 @@ def wavy(seed: int, sag: float) -> Readings:
     z = np.linspace(0.01, 1.0, 80)
     resistance = 1e-3 * (1.0 + 4.0 * z - sag * z**2 + sag * z**3 / 1.5) * np.exp(0.005 * rng.standard_normal(80))
     zeros = np.zeros(80, dtype=np.intp)
-    return Readings(100.0 * z, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, ("a",))
+    return Readings(
+        100.0 * z, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, np.zeros(80), ("a",)
+    )
 
 
 @pytest.mark.parametrize(
@@ -181,7 +183,7 @@ def test_a_medium_that_does_not_foul_leaves_the_fouling_of_lots_open() -> None:
     loading = np.tile(np.linspace(1.0, 100.0, 40), 2)
     lot = np.repeat([0, 1], 40)
     log = np.log(1e-3 * np.array([1.0, 1.1])[lot]) + 0.01 * rng.standard_normal(80)
-    data = Readings(loading, log, lot < 0, np.ones(80), lot, lot, np.exp(log), ("a", "b"))
+    data = Readings(loading, log, lot < 0, np.ones(80), lot, lot, np.exp(log), np.zeros(80), ("a", "b"))
     fit = fit_law(data, LAWS["intermediate"])
     assert np.exp(fit.log_rho[1] - fit.log_rho[0]) == pytest.approx(1.1, rel=0.02)
     assert np.all(np.isfinite(fit.parameters))

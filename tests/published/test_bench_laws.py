@@ -65,7 +65,7 @@ def exact(loading: np.ndarray, value: np.ndarray, integral: bool) -> Readings:
     zeros = np.zeros(len(loading), dtype=np.intp)
     local = value if not integral else np.gradient(value, loading)
     kind = np.full(len(loading), integral)
-    return Readings(loading, np.log(value), kind, np.ones(len(loading)), zeros, zeros, local, ("a",))
+    return Readings(loading, np.log(value), kind, np.ones(len(loading)), zeros, zeros, local, 0.0 * loading, ("a",))
 
 
 def test_constant_flow_on_an_incompressible_cake() -> None:

@@ -71,6 +71,7 @@ def weigh(readings: Readings, names: tuple[str, ...]) -> Evidence | None:
     prior = _prior(chosen)
     if prior > 0.0:
         final, chosen = settle(readings, best.law, prior)
+    chosen = replace(chosen, covariance=chosen.covariance * kinship(final, chosen) + _walked(final, chosen))
     rivals = tuple(fit for fit in close if fit.count == best.count and fit.law != best.law)
     spread = max((_difference(readings, chosen, rival) for rival in rivals), default=0.0)
     return Evidence(final, fits, chosen, rivals, spread, prior)
@@ -116,6 +117,40 @@ def _weights(base: Readings, fit: Fit, fitted: Readings) -> Floats:
         reference = reference or scale
         weight[kind] *= (reference / scale) ** 2
     return weight
+
+
+def kinship(readings: Readings, fit: Fit) -> float:
+    """Factor on variances for errors that hang together along a run: 1 + 2·Σ autocorrelation, at least 1.
+
+    Summed up to the first lag below 0.2, each run counting by its squared errors. Steps of a gauge and sums of a noisy
+    pressure make neighbors err alike, so that many readings say less than they seem to.
+    """
+    total = weighted = 0.0
+    for run in range(int(readings.run.max()) + 1):
+        errors = fit.residuals[readings.run == run]
+        errors = errors - errors.mean()
+        power = float(errors @ errors)
+        if power <= len(errors) * SMALLEST_ERROR**2:
+            continue
+        factor = 1.0
+        for lag in range(1, len(errors) // 4):
+            correlation = float(errors[lag:] @ errors[:-lag]) / power
+            if correlation < 0.2:
+                break
+            factor += 2.0 * correlation
+        total, weighted = total + power, weighted + power * factor
+    return weighted / total if total > 0.0 else 1.0
+
+
+def _walked(readings: Readings, fit: Fit) -> Floats:
+    """Covariance that the noise of the pressure adds by way of ∫ΔP dt, where it goes on summing up."""
+    out = np.zeros_like(fit.covariance)
+    for run in np.unique(readings.run[readings.walk > 0.0]):
+        mine = np.flatnonzero(readings.run == run)
+        by_integral = fit.influence[:, mine] / np.exp(readings.log[mine])
+        later = np.cumsum(by_integral[:, ::-1], axis=1)[:, ::-1] * readings.walk[mine]
+        out += later @ later.T
+    return out
 
 
 def _difference(readings: Readings, chosen: Fit, rival: Fit) -> float:

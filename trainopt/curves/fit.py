@@ -31,11 +31,11 @@ The sum of squares is off by the square of that, far less than any evidence.
 
 @dataclass(frozen=True, eq=False)
 class Readings:
-    """What a fit sees, arrays of shape (n,): `loading` L/m²; `log` ln(bar/LMH), or ln(bar·h) where
-    `integral`.
+    """What a fit sees, arrays of shape (n,): `loading` L/m²; `log` ln(bar/LMH), or ln(bar·h) where `integral`.
 
-    `lot` and `run` index the lots and runs; `weight` multiplies squared errors; `resistance` bar/LMH is the
-    local estimate, used for starting values only.
+    `walk` bar·h is the standard deviation by which one noisy pressure reading shifts ∫ΔP dt from there on (0 where
+    not `integral`). `lot` and `run` index the lots and runs; `weight` multiplies squared errors; `resistance` bar/LMH
+    is the local estimate, used for starting values only.
     """
 
     loading: Floats
@@ -45,6 +45,7 @@ class Readings:
     lot: NDArray[np.intp]
     run: NDArray[np.intp]
     resistance: Floats
+    walk: Floats
     lots: tuple[str, ...]
 
     def __len__(self) -> int:
@@ -52,7 +53,7 @@ class Readings:
 
     def at(self, index: NDArray[np.intp]) -> Readings:
         """The readings at these places, which may repeat; lots unchanged."""
-        columns = ("loading", "log", "integral", "weight", "lot", "run", "resistance")
+        columns = ("loading", "log", "integral", "weight", "lot", "run", "resistance", "walk")
         return replace(self, **{name: getattr(self, name)[index] for name in columns})
 
 
@@ -61,8 +62,9 @@ class Fit:
     """One law fitted: natural `parameters`, ln ρ and ln κ per lot (S,), weighted residuals (n,), and what
     they cost.
 
-    `covariance` (k + 2S)² is that of (parameters, ln ρ, ln κ); `error` the relative standard deviation of a
-    reading; `count` the number of fitted quantities, the error's own included.
+    `covariance` (k + 2S)² is that of (parameters, ln ρ, ln κ); `error` the relative standard deviation of a reading;
+    `count` the number of fitted quantities, the error's own included; `coordinates` the search's own (see `forms.py`);
+    `influence` (k + 2S, n) the derivatives of all of them by the logarithm of each reading.
     """
 
     law: str
@@ -75,6 +77,7 @@ class Fit:
     count: int
     converged: bool
     coordinates: Floats
+    influence: Floats
 
     @property
     def cost(self) -> float:
@@ -225,8 +228,9 @@ class _Model:
             _, by_parameter, by_log_kappa = self._logs(x, parameters)
         jacobian = np.concatenate([by_parameter, self.rows, by_log_kappa[:, None] * self.rows], axis=1)
         natural = np.concatenate([parameters, theta[size:]])
-        spread = covariance(self._held(natural, residuals, self.root[:, None] * jacobian)[1], error**2)
-        widen = np.zeros((len(parameters) + 2 * len(self.readings.lots), len(spread)))
+        held = self._held(natural, residuals, self.root[:, None] * jacobian)[1]
+        unit = covariance(held, 1.0)
+        widen = np.zeros((len(parameters) + 2 * len(self.readings.lots), len(unit)))
         k = len(parameters)
         widen[:k, :k] = np.eye(k)
         widen[k : k + len(self.basis), k : k + lots] = self.basis
@@ -237,11 +241,12 @@ class _Model:
             self.basis @ theta[size : size + lots],
             self.basis @ theta[size + lots :],
             residuals,
-            _spread(widen, spread),
+            _spread(widen, unit) * error**2,
             error,
             count,
             solution.converged,
             theta,
+            widen @ np.where(np.isfinite(unit), unit, 0.0) @ held[:n].T * self.root,
         )
 
 

@@ -36,6 +36,7 @@ def fit_readings(runs: Sequence[ReducedRun]) -> Readings:
         lot=np.repeat([lots.index(run.lot) for run in ordered], sizes),
         run=np.repeat(np.arange(len(ordered)), sizes),
         resistance=np.concatenate([_local(run) for run in ordered]),
+        walk=np.concatenate([_walk(run) for run in ordered]),
         lots=lots,
     )
 
@@ -58,6 +59,21 @@ def _local(run: ReducedRun) -> Floats:
     known = np.isfinite(resistance) & (resistance > 0.0)
     mean = np.abs(run.pressure_time[used]) / np.maximum(run.loading[used], 1e-9)
     return np.where(known, resistance, mean)
+
+
+def _walk(run: ReducedRun) -> Floats:
+    """What the noise of one pressure reading adds to ∫ΔP dt, bar·h: its standard deviation times the time it stands
+    for.
+
+    The noise is told from second differences of the recorded pressure.
+    """
+    used = run.used
+    if not is_integral(run) or used.sum() < 3:
+        return np.zeros(int(used.sum()))
+    time, pressure = run.time[used], run.pressure[used]
+    off = pressure[1:-1] - 0.5 * (pressure[:-2] + pressure[2:])
+    noise = 1.4826 * float(np.median(np.abs(off))) / np.sqrt(1.5)
+    return np.asarray(noise * np.diff(time, prepend=0.0))
 
 
 def _weight(run: ReducedRun) -> Floats:

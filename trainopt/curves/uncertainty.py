@@ -108,8 +108,18 @@ def _refit(
     chosen = np.concatenate(runs)
     places = rng.random(len(chosen))
     noise = np.concatenate([_blocks(errors[run], places) for run in runs])
-    part = replace(readings.at(chosen), log=model[chosen] + noise / np.sqrt(readings.weight[chosen]))
+    walk = np.concatenate([_walk(readings, run, rng) for run in runs])
+    log = model[chosen] + noise / np.sqrt(readings.weight[chosen]) + walk
+    part = replace(readings.at(chosen), log=log)
     return fit_law(part, LAWS[fit.law], COARSE, near=fit, prior=evidence.prior)
+
+
+def _walk(readings: Readings, run: NDArray[np.intp], rng: np.random.Generator) -> Floats:
+    """What the noise of the pressure may have added to ln ∫ΔP dt; it hides in the fit, so errors do not show it."""
+    steps = readings.walk[run]
+    if not steps.any():
+        return np.zeros(len(run))
+    return np.asarray(np.cumsum(steps * rng.standard_normal(len(run))) / np.exp(readings.log[run]))
 
 
 def _blocks(errors: Floats, places: Floats) -> Floats:
