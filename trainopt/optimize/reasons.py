@@ -172,7 +172,7 @@ def _single(levers: Levers, lever: Lever, start: float, change: Change) -> Reaso
     if value is None:
         return Reason(f"{now}: no value of it alone makes a design possible", {lever.field: None})
     verb = "would have to be at least" if lever.direction > 0 else "could be at most"
-    return Reason(f"{now} {verb} {_rounded(value, lever.direction)}{unit}, all else as it is", {lever.field: value})
+    return Reason(f"{now} {verb} {rounded(value, lever.direction)}{unit}, all else as it is", {lever.field: value})
 
 
 def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
@@ -194,9 +194,9 @@ def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
     return Reason(text, {field: count})
 
 
-def _rounded(value: float, direction: int) -> str:
-    """Four digits, rounded to the side that still works."""
-    digits = 3 - math.floor(math.log10(abs(value)))
-    scaled = value * 10.0**digits
+def rounded(value: float, direction: int, digits: int = 4) -> str:
+    """So many digits of a value above zero, rounded to the side that still works (+1 up, −1 down)."""
+    places = digits - 1 - math.floor(math.log10(abs(value)))
+    scaled = value * 10.0**places
     whole = math.ceil(scaled - 1e-7) if direction > 0 else math.floor(scaled + 1e-7)
-    return f"{whole / 10.0**digits:.4g}"
+    return f"{whole / 10.0**places:.{digits}g}"

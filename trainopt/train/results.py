@@ -215,6 +215,7 @@ class BlockLimit:
     stage: str
     used: float
     stages: Mapping[str, str]
+    text: str
 
 
 @dataclass(frozen=True)

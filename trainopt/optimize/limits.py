@@ -1,0 +1,187 @@
+"""What limits a design, what a little more of each limit would gain, and what a longer bench run would be worth."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator, Mapping
+from functools import partial
+
+from trainopt.curves.curve import Curve
+from trainopt.optimize.area_parts import pooled_curve
+from trainopt.optimize.nearest import TIE, Better, Lever, Picks, nearest_better, solved
+from trainopt.optimize.reasons import rounded
+from trainopt.optimize.restate import Move, route_of_picks
+from trainopt.optimize.times import Route, block_bounds
+from trainopt.train.problem import Block, Candidate, DesignProblem, Stage
+from trainopt.train.results import BlockLimit, Design, Gain, Limits, LongerRun, Pick
+
+CAPS = {
+    "loading-tested": "the loading tested",
+    "loading-limit": "the loading limit",
+    "turbidity": "the turbidity limit",
+}
+
+
+def limits(problem: DesignProblem, design: Design, curves: Mapping[str, Curve] | None = None) -> Limits | None:
+    """What limits a proven design of `problem` (with all its options), or None where there is none.
+
+    `curves` gives the flux and temperature that the media were tested at; without them their flux limits stand in.
+    """
+    route = route_of_picks(problem, design.picks)
+    if route is None or design.objective is None or not design.blocks:
+        return None
+    return Limits(
+        blocks=tuple(_block_limits(problem, design, route)),
+        gains=tuple(gains(problem, design)),
+        longer_runs=tuple(longer_runs(problem, design, curves or {})),
+    )
+
+
+def _block_limits(problem: DesignProblem, design: Design, route: Route) -> Iterator[BlockLimit]:
+    for block, choices, shown in zip(problem.blocks, route, design.blocks, strict=True):
+        needed = block_bounds(block, choices, problem.volume).limits
+        (stage, name), time = max(needed.items(), key=lambda item: item[1])
+        used = time / shown.time if shown.time > 0.0 else 0.0
+        stages = {one.stage: one.limited_by for one in shown.stages}
+        unused = shown.pressure.spare
+        held = [f"'{s}' by {CAPS[why]}" for s, why in stages.items() if why in CAPS]
+        text = f"'{block.name}' leaves {unused:.3g} of {block.head:.3g} bar unused" if unused > 0.0 else (
+            f"'{block.name}' uses all of its {block.head:.3g} bar")  # fmt: skip
+        if held:
+            text += "; held: " + ", ".join(held)
+        yield BlockLimit(block.name, name, stage, used, stages, text)
+
+
+def gains(problem: DesignProblem, design: Design) -> Iterator[Gain]:
+    """For time, each block's pressure and each used stage's limits: the least more that makes the design better.
+
+    Exact: the better design is proven best at that value, and that there is none just below. With hours paid for, where
+    more of a limit gains at once, what 10 % more gains. Limits that gain nothing, however high, are left out.
+    """
+    assert design.objective is not None
+    base = design.objective.value
+    found = [
+        _gain(problem, lever, better, base, design.picks)
+        for lever in _levers(problem, design.picks)
+        if (better := nearest_better(problem, lever, design.picks, base)) is not None
+    ]
+    yield from sorted(found, key=lambda gain: (gain.needs / gain.now, gain.field))
+
+
+def _levers(problem: DesignProblem, picks: Picks) -> Iterator[Lever]:
+    yield Lever("batch.time_h", "the batch", "h", problem.time, lambda v: Move(time=v))
+    used = {pick.stage: pick.medium for pick in picks}
+    for block in problem.blocks:
+        most = math.inf if block.operation == "constant-flow" else _rating(block)
+        move = partial(_pressure, block.name)
+        yield Lever(f"{block.name}.pressure_bar", f"'{block.name}'", "bar", block.pressure, move, most)
+        for stage in block.stages:
+            for one in stage.candidates:
+                if used.get(stage.name) == one.medium:
+                    yield from _stage_levers(block, stage, one)
+
+
+def _rating(block: Block) -> float:
+    """The most pressure that a constant-pressure block's media are rated for, bar."""
+    rated = [min(c.differential_pressure + block.static, c.inlet_pressure) for s in block.stages for c in s.candidates]
+    return min(rated, default=math.inf)
+
+
+def _stage_levers(block: Block, stage: Stage, one: Candidate) -> Iterator[Lever]:
+    key, name = (stage.name, one.medium), stage.name
+    what = f"{one.medium} in '{name}'"
+    cap, flux = one.loading_cap, one.flux_limit
+    yield Lever(f"{name}.loading_limit_L_m2", f"loading of {what}", "L/m2", cap, lambda v: Move(cap={key: v}))
+    yield Lever(f"{name}.flux_limit_LMH", f"flux of {what}", "LMH", flux, lambda v: Move(flux={key: v}))
+    if block.operation != "constant-flow":
+        return
+    if math.isfinite(one.differential_pressure):
+        yield Lever(
+            f"{name}.differential_pressure_bar", f"differential pressure of {what}", "bar", one.differential_pressure,
+            lambda v: Move(differential_pressure={key: v}),
+        )  # fmt: skip
+    if one.inlet_pressure < block.pressure:
+        yield Lever(
+            f"{name}.inlet_pressure_bar", f"inlet pressure of {what}", "bar", one.inlet_pressure,
+            lambda v: Move(inlet_pressure={key: v}), block.pressure,
+        )  # fmt: skip
+
+
+def _pressure(block: str, value: float) -> Move:
+    return Move(pressure={block: value})
+
+
+def _gain(problem: DesignProblem, lever: Lever, better: Better, base: float, before: Picks) -> Gain:
+    more, unit = better.needs - lever.now, lever.unit
+    if unit == "h" and more < 2.0:
+        more, unit = more * 60.0, "min"
+    saves = base - better.objective
+    text = (
+        f"{rounded(more, 1, 2)} {unit} more for {lever.what} ({rounded(better.needs, 1)} {lever.unit}) saves "
+        f"{_amount(problem, saves)}: {changes(before, better.picks)}"
+    )
+    return Gain(lever.field, lever.unit, lever.now, better.needs, better.objective, saves, better.picks, text)
+
+
+def _amount(problem: DesignProblem, saves: float) -> str:
+    unit = "m2" if problem.objective == "area" else f"{problem.currency or 'of the cost'} per batch"
+    return f"{saves:.3g} {unit}"
+
+
+def changes(before: Picks, after: Picks) -> str:
+    """What is bought otherwise, in words."""
+    old, new = {p.stage: p for p in before}, {p.stage: p for p in after}
+    texts = []
+    for stage in dict.fromkeys([*old, *new]):
+        one, other = old.get(stage), new.get(stage)
+        if one is None or other is None:
+            texts.append(f"'{stage}' is left out" if other is None else f"'{stage}' with {_many(other)}")
+        elif (one.medium, one.module) != (other.medium, other.module):
+            texts.append(f"{_many(other)} in place of {_many(one)} in '{stage}'")
+        elif one.count != other.count:
+            word = "fewer" if other.count < one.count else "more"
+            texts.append(f"{abs(other.count - one.count)} × {one.module} {word} in '{stage}'")
+    return ", ".join(texts) or "the same modules"
+
+
+def _many(pick: Pick) -> str:
+    return f"{pick.count} × {pick.module}"
+
+
+def longer_runs(problem: DesignProblem, design: Design, curves: Mapping[str, Curve]) -> Iterator[LongerRun]:
+    """For each medium held by the loading tested: what runs that went on further would be worth, most first."""
+    assert design.objective is not None
+    base = design.objective.value
+    places: dict[str, list[tuple[str, Candidate]]] = {}
+    for block in problem.blocks:
+        for stage in block.stages:
+            for one in stage.candidates:
+                if one.cap_reason == "loading-tested":
+                    places.setdefault(one.medium, []).append((stage.name, one))
+    found = []
+    for medium, held in sorted(places.items()):
+        move = Move(cap={(stage, medium): one.further_cap for stage, one in held})
+        better = solved(problem, move)
+        if better is not None and better[0] < base - TIE * max(1.0, abs(base)):
+            found.append(_longer_run(problem, held[0][1], better, base, curves.get(medium)))
+    yield from sorted(found, key=lambda run: (-run.saves, run.medium))
+
+
+def _longer_run(
+    problem: DesignProblem, one: Candidate, better: tuple[float, Picks], base: float, curve: Curve | None
+) -> LongerRun:
+    objective, picks = better
+    area = {m.name: m.area for m in one.modules}
+    worst = max(c.fouling_factor for c in one.curves)
+    loading = max(
+        worst * problem.safety_factor * problem.volume / (one.scale_up * area[p.module] * p.count)
+        for p in picks if p.medium == one.medium
+    )  # fmt: skip
+    seen = pooled_curve(one) if curve is None else curve.lot_curve(None)
+    flux = one.flux_limit if curve is None else curve.tested_flux
+    pressure, tested = seen.resistance(loading) * flux, worst * one.loading_cap
+    text = (
+        f"run {one.medium} to {rounded(loading, 1)} L/m2 (so far {tested:.4g}), about {pressure:.2g} bar at "
+        f"{flux:.3g} LMH: up to {_amount(problem, base - objective)} less, if the fitted curve holds that far"
+    )
+    return LongerRun(one.medium, tested, loading, flux, pressure, objective, base - objective, picks, text)
