@@ -215,6 +215,15 @@ def test_a_broken_run_is_told_with_the_faults_of_its_medium(tmp_path: Path) -> N
     assert names == {"rye.yaml", "rye-a.csv"}
 
 
+def test_a_tare_is_of_what_the_run_records(tmp_path: Path) -> None:
+    write_workspace(tmp_path)
+    rye = tmp_path / RYE_FILE
+    rye.write_text(rye.read_text().replace("tare: 5 mL", "tare: 5 g"))
+    (problem,) = check_with_runs([tmp_path])[0]
+    assert problem.line == 19
+    assert problem.text == "run 1: tare: is a mass, but the run records volume; expected the tare as a volume"
+
+
 def test_check_says_what_it_cannot_look_at(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.chdir(tmp_path)
     Path("lost.yaml").write_text("scenario: x\n")

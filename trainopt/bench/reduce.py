@@ -70,6 +70,10 @@ def _missing_settings(run: Run, found: Columns, where: Where) -> list[Problem]:
         if run.operation == "constant-pressure":
             text += ", or `pressure:` for a run at constant pressure"
         out.append(where(("file",), text))
+    recorded = "volume" if "volume" in columns else "mass"
+    tared = getattr(run.tare, "dimension", recorded)
+    if tared != recorded:
+        out.append(where(("tare",), f"is a {tared}, but the run records {recorded}; expected the tare as a {recorded}"))
     inlet, outlet = columns.get("pressure"), columns.get("outlet_pressure")
     for column, other in ((inlet, outlet), (outlet, inlet)):
         if _absolute(column) and not _absolute(other):

@@ -120,22 +120,32 @@ def _each(rules: dict[Key, Rule], values: dict[Key, Any], info: ValidationInfo) 
     return out
 
 
+class TareAmount(float):
+    """A tare in kg or L that remembers which: `dimension` is "mass" or "volume"."""
+
+    dimension: str
+
+
 @dataclass(frozen=True)
 class Tare(Rule):
     """What the balance or the cylinder showed before any filtrate: a mass (kg) or a volume (L)."""
 
     def _expected(self) -> str:
-        return "a mass or a volume such as '35 g' or '5 mL', as the run records it"
+        return "a mass or a volume, as the run records it, such as '35 g'"
 
     def _read(self, value: Any, info: ValidationInfo, /) -> float:
-        try:
-            return float(Amount("mass", Range(least=0.0)).read(value, info))
-        except ValueError:
-            pass
-        try:
-            return float(Amount("volume", Range(least=0.0)).read(value, info))
-        except ValueError:
-            raise ValueError(f"{written(value)} is no tare; expected {self.expected}") from None
+        faults = []
+        for dimension in ("mass", "volume"):
+            try:
+                tare = TareAmount(Amount(dimension, Range(least=0.0)).read(value, info))
+            except ValueError as error:
+                faults.append(str(error))
+            else:
+                tare.dimension = dimension
+                return tare
+        raise ValueError(
+            next((f for f in faults if "outside" in f), f"{written(value)} is no tare; expected {self.expected}")
+        )
 
 
 @dataclass(frozen=True)
