@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from tests.report import results
@@ -9,7 +11,19 @@ from trainopt.curves.curve import Curve
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.stage_figure import StageCurve
-from trainopt.train.results import Design, EvenSplit, Notice, Saving
+from trainopt.train.results import (
+    AreaPart,
+    AreaParts,
+    BlockLimit,
+    Design,
+    EvenSplit,
+    Gain,
+    Limits,
+    LongerRun,
+    Notice,
+    Pick,
+    Saving,
+)
 
 LONG = "a-name-that-goes-on-" * 10
 HOSTILE = (
@@ -82,6 +96,21 @@ def dossier(design: Design, curve: Curve | None = None) -> Dossier:
     )
 
 
+def _parts() -> AreaParts:
+    amounts = (20.1, 1.1, -0.4, 12.9, 0.5)
+    names = ("ideal split", "loading caps", "lots", "safety factor", "whole modules and holders")
+    return AreaParts(tuple(AreaPart(n, a, 800.0 * a) for n, a in zip(names, amounts, strict=True)), 1.8, None)
+
+
+def _limits(name: str = "secondary") -> Limits:
+    picks = (Pick("primary", "oat-coarse", "oat-coarse-09", 12),)
+    gain = Gain(
+        "clarification.pressure_bar", "bar", 1.4, 1.52, 33.3, 0.9, picks, f"0.12 bar more saves 0.9 m2 in {name}"
+    )
+    run = LongerRun("rye-fine", 160.0, 210.0, 150.0, 1.93, 32.0, 2.2, picks, "run rye-fine to 210 L/m2")
+    return Limits((BlockLimit("clarification", "pressure", "", 0.97, {"primary": "pressure"}),), (gain,), (run,))
+
+
 def _six_stages() -> Design:
     stages = [results.stage(f"stage-{n}", count=c, pressure=0.2) for n, c in enumerate((40, 1, 2, 7, 16, 3))]
     return results.design(
@@ -131,7 +160,7 @@ def hostile() -> Design:
 def shapes() -> dict[str, Dossier]:
     """Dossiers by name: usual, one stage, six stages, three blocks, no design, hostile names."""
     return {
-        "usual": dossier(results.design()),
+        "usual": replace(dossier(results.design()), area_parts=_parts(), limits=_limits()),
         "one-stage": dossier(_one_stage()),
         "six-stages": dossier(_six_stages()),
         "three-blocks": dossier(_many_blocks()),

@@ -94,5 +94,5 @@ def test_pictures_are_drawn(browser: Browser, pages: dict[str, Path]) -> None:
     shot = browser.picture()
     assert shot.startswith(b"\x89PNG")
     boxes = browser.evaluate("[...document.querySelectorAll('figure svg')].map(e => e.getBoundingClientRect().height)")
-    assert len(boxes) == 7
+    assert len(boxes) == 8
     assert min(boxes) > 100

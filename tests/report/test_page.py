@@ -13,11 +13,11 @@ with warnings.catch_warnings():
     warnings.simplefilter("ignore")
     import html5lib
 
-from tests.report import results
-from tests.report.dossiers import HOSTILE, LONG, dossier, shapes
+from tests.report.dossiers import HOSTILE, LONG, shapes
 from trainopt.report.cautions import CAUTIONS
 from trainopt.report.html import COLORS, breakable, report_html
 from trainopt.report.numbers import plain
+from trainopt.report.sections import sections
 from trainopt.report.style import INK, PAPER, STEPS, contrast, readable_on
 
 SHAPES = shapes()
@@ -60,7 +60,7 @@ def test_every_figure_has_a_caption_and_words_for_those_who_cannot_see_it(tree: 
 
 def test_text_in_pictures_is_text() -> None:
     figures = re.findall(r"<svg.*?</svg>", PAGES["usual"], flags=re.DOTALL)
-    assert len(figures) == 7
+    assert len(figures) == 8
     assert all("<text" in figure for figure in figures)
     assert "primary" in figures[0]
 
@@ -137,6 +137,8 @@ def test_sections_come_in_reading_order() -> None:
         "Where pressure and time go",
         "Curves of the stages",
         "Pressure over the batch",
+        "Where the area goes",
+        "What limits, and what more buys",
         "Other batch volumes",
         "Cost per batch",
         "Assumptions and warnings",
@@ -163,7 +165,7 @@ def test_no_design_says_what_would_do() -> None:
 
 
 def test_the_same_dossier_gives_the_same_page() -> None:
-    assert report_html(dossier(results.design())) == PAGES["usual"]
+    assert report_html(shapes()["usual"]) == PAGES["usual"]
 
 
 def test_pressure_in_the_unit_asked_for() -> None:
@@ -177,3 +179,16 @@ def test_pressure_in_the_unit_asked_for() -> None:
 def test_long_words_may_break() -> None:
     assert str(breakable("<b>" * 8)) == "&lt;b&gt;&lt;b&gt;&lt;b&gt;&lt;b&gt;&lt;b&gt;&lt;<wbr>b&gt;&lt;b&gt;&lt;b&gt;"
     assert str(breakable("oat-coarse sheet")) == "oat-coarse sheet"
+
+
+def test_parts_add_up_and_gains_are_named() -> None:
+    (parts,) = [s for s in sections(SHAPES["usual"]) if s.key == "parts"]
+    *rows, total = parts.tables[0].rows
+    assert sum(row[1] for row in rows) == pytest.approx(total[1])  # type: ignore[misc, arg-type]
+    text = words(TREES["usual"])
+    assert "0.12 bar more saves 0.9 m2 in secondary" in text
+    assert "clarification: pressure" in text
+    assert "12 × oat-coarse-09" in text
+    psi = report_html(SHAPES["usual"], "psi")
+    assert "0.12 bar more" not in psi  # words in bar are left to the table, which has psi
+    assert "22.0" in psi

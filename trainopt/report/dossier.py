@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from trainopt.report.course_figure import Course
@@ -11,7 +11,7 @@ from trainopt.report.stage_figure import StageCurve
 
 if TYPE_CHECKING:
     from trainopt.curves.curve import Curve
-    from trainopt.train.results import Design
+    from trainopt.train.results import AreaParts, Design, Limits
 
 
 @dataclass(frozen=True)
@@ -46,4 +46,5 @@ class Dossier:
     options: Mapping[str, str]
     date: str
     volumes: tuple[VolumePoint, ...] = ()
-    titles: Mapping[str, str] = field(default_factory=dict)
+    area_parts: AreaParts | None = None
+    limits: Limits | None = None

@@ -12,6 +12,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from trainopt.curves.uncertainty import band
+from trainopt.optimize.area_parts import area_parts
 from trainopt.optimize.design import Prepared, design, prepare
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
@@ -55,6 +56,7 @@ def gather(case: Case, objective: str | None = None, time_limit: float | None = 
         options=options,
         date=now(),
         volumes=tuple(_volumes(case, found)),
+        area_parts=area_parts(problem, found),
     )
 
 

@@ -16,7 +16,7 @@ from trainopt.version import __version__
 if TYPE_CHECKING:
     from trainopt.curves.curve import Curve
     from trainopt.report.dossier import Dossier
-    from trainopt.train.results import BlockDesign, CostParts, Design, EvenSplit, Saving, StageDesign
+    from trainopt.train.results import AreaParts, BlockDesign, CostParts, Design, EvenSplit, Limits, Saving, StageDesign
 
 Document = dict[str, Any]
 
@@ -48,6 +48,8 @@ def design_document(design: Design) -> Document:
         "trainopt": __version__,
         "inputs": dict(design.inputs),
     }
+    if design.area_parts is not None:
+        document["area_parts"] = _area_parts(design.area_parts)
     if design.status == "infeasible":
         document["reasons"] = [{"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons]
     return document
@@ -205,6 +207,55 @@ def _curve_document(curve: Curve) -> Document:
     }
 
 
+def _area_parts(parts: AreaParts) -> list[Document]:
+    """Parts of the installed area (and cost), and last what the even split would add beside them."""
+    rows = [{"name": part.name, "area_m2": part.area, "cost": part.cost} for part in parts.parts]
+    even = {"area_m2": parts.even_split_area, "cost": parts.even_split_cost}
+    return [*rows, {"name": "even split, beside", **even}]
+
+
+def _limits(limits: Limits) -> Document:
+    return {
+        "blocks": [
+            {
+                "block": block.block,
+                "limited_by": block.limited_by,
+                "stage": block.stage,
+                "used": block.used,
+                "stages": dict(block.stages),
+            }
+            for block in limits.blocks
+        ],
+        "gains": [
+            {
+                "field": gain.field,
+                "unit": gain.unit,
+                "now": gain.now,
+                "needs": gain.needs,
+                "objective": gain.objective,
+                "saves": gain.saves,
+                "picks": [[pick.stage, pick.medium, pick.module, pick.count] for pick in gain.picks],
+                "text": gain.text,
+            }
+            for gain in limits.gains
+        ],
+        "longer_runs": [
+            {
+                "medium": run.medium,
+                "tested_L_m2": run.tested,
+                "loading_L_m2": run.loading,
+                "flux_LMH": run.flux,
+                "pressure_bar": run.pressure,
+                "objective": run.objective,
+                "saves": run.saves,
+                "picks": [[pick.stage, pick.medium, pick.module, pick.count] for pick in run.picks],
+                "text": run.text,
+            }
+            for run in limits.longer_runs
+        ],
+    }
+
+
 def report_document(dossier: Dossier) -> Document:
     """A design with its curves and the course of its batch, as the document `trainopt.report/1`."""
     return {
@@ -228,6 +279,8 @@ def report_document(dossier: Dossier) -> Document:
             }
             for stage in dossier.stage_curves
         ],
+        "area_parts": None if dossier.area_parts is None else _area_parts(dossier.area_parts),
+        "limits": None if dossier.limits is None else _limits(dossier.limits),
         "volumes": [
             {"volume_L": point.volume, "objective": point.objective, "even_split": point.even_split}
             for point in dossier.volumes

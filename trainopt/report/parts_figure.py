@@ -19,7 +19,9 @@ def parts_figure(parts: Sequence[tuple[str, float]], unit: str, beside: tuple[st
 
     total = sum(amount for _, amount in parts)
     names = [name for name, _ in parts] + ["installed"] + ([beside[0]] if beside else [])
-    numbers = aligned([*(amount for _, amount in parts), total, *([beside[1]] if beside else [])], 1)
+    numbers = aligned(
+        [*(amount for _, amount in parts), total, *([beside[1]] if beside else [])], 1 if total < 1000.0 else 0
+    )
     starts, ends = [], []
     level = 0.0
     for _, amount in parts:
@@ -42,7 +44,7 @@ def parts_figure(parts: Sequence[tuple[str, float]], unit: str, beside: tuple[st
                 axes.plot([end, end], [row, row + 1], color=INK, linewidth=0.7)
         axes.set_yticks(range(len(names)), [wrapped(name, 34) for name in names])
         axes.set_ylim(len(names) - 0.5, -0.5)
-        axes.set_xlim(0.0, 1.12 * max(*ends, *starts))
+        axes.set_xlim(0.0, 1.15 * max(*ends, *starts))
         axes.set_xlabel(unit)
         axes.tick_params(left=False)
     return figure

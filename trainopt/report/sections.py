@@ -35,7 +35,7 @@ def sections(dossier: Dossier, units: str = "bar") -> tuple[Section, ...]:
             budget_section(dossier, units),
             curves_section(dossier, units),
             course_section(dossier, units),
-            *insight_sections(dossier),
+            *insight_sections(dossier, units),
             _cost(dossier.design),
         ]
     found += [_assumptions(dossier), _cautions(dossier.design), _provenance(dossier)]
