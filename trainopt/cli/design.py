@@ -49,7 +49,7 @@ def design(
         if target is None:
             from trainopt.optimize import design as find_design
 
-            result, dossier = find_design(case, objective=kind, time_limit=time_limit), None
+            result, dossier = find_design(case, objective=kind, time_limit=time_limit, parts=json), None
         else:
             from trainopt.report.gather import gather
 

@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
 from trainopt.curves.medium import fit_curve
 from trainopt.errors import InputError, Problem
+from trainopt.optimize.area_parts import area_parts
 from trainopt.optimize.describe import Picked, cost_parts, describe, total_area, total_time
 from trainopt.optimize.even_split import even_split
 from trainopt.optimize.margins import common_safety_factor
@@ -52,7 +53,7 @@ def prepare(case: Case, objective: str | None = None) -> Prepared:
     """Fit the curves of a case and build its problem."""
     curves = fit_curves(case)
     problem = build_problem(case, curves, objective)
-    return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs)
+    return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs())
 
 
 def design(
@@ -60,11 +61,13 @@ def design(
     objective: str | None = None,
     time_limit: float | None = None,
     solver: SolverOptions | None = None,
+    parts: bool = False,
 ) -> Design:
     """The least area or cost that meets every limit, proven, marched through its batch, beside the even split.
 
-    `objective` ("area", "cost") overrides the scenario's, for a case; `time_limit` in s. Raises `InputError` for what is wrong
-    in the files and `DefectError` where the design fails its re-check.
+    `objective` ("area", "cost") overrides the scenario's, for a case; `time_limit` in s; `parts` asks for the
+    decomposition of the area too. Raises `InputError` for what is wrong in the files and `DefectError` where the
+    design fails its re-check.
     """
     if isinstance(what, DesignProblem):
         prepared = Prepared({}, what, (), {})
@@ -79,28 +82,29 @@ def design(
         return _no_design(prepared, found)
     recheck(problem, found.route, found.times)
     picked = Picked(full, problem, found.route, found.times)
-    parts, area = cost_parts(problem, found.route, found.times), total_area(found.route)
+    cost, area = cost_parts(problem, found.route, found.times), total_area(found.route)
     blocks = describe(picked)
     even = even_design(full)
-    return Design(
+    result = Design(
         scenario=full.title,
         status=found.status,
         objective=Objective(full.objective, found.objective, found.bound, _gap(found)),
         area=area,
-        cost=parts.total,
+        cost=cost.total,
         currency=full.currency,
         time=total_time(problem, found.times),
-        cost_parts=parts,
+        cost_parts=cost,
         blocks=blocks,
         safety_factor=common_safety_factor(problem, found.route, found.times),
         even_split=even,
-        saving=_saving(area, parts.total, even),
+        saving=_saving(area, cost.total, even),
         warnings=(
             *prepared.notices,
             *(design_notices(full, prepared.curves, blocks) if prepared.curves else ()),
         ),
         inputs=prepared.inputs,
     )
+    return replace(result, area_parts=area_parts(full, result)) if parts else result
 
 
 def even_design(full: DesignProblem) -> EvenSplit:
@@ -154,7 +158,7 @@ def _saving(area: float, cost: float, even: EvenSplit) -> Saving | None:
         return None
     return Saving(
         area=even.area - area,
-        area_percent=100.0 * (even.area - area) / even.area,
+        area_percent=100.0 * (even.area - area) / even.area if even.area > 0.0 else 0.0,
         cost=even.cost - cost,
         cost_percent=100.0 * (even.cost - cost) / even.cost if even.cost > 0.0 else None,
     )

@@ -50,6 +50,10 @@ def design_document(design: Design) -> Document:
     }
     if design.area_parts is not None:
         document["area_parts"] = _area_parts(design.area_parts)
+    if design.area_parts is not None:
+        document["area_parts"] = [
+            {"name": part.name, "m2": part.area, "cost": part.cost} for part in design.area_parts.parts
+        ]
     if design.status == "infeasible":
         document["reasons"] = [{"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons]
     return document
@@ -223,6 +227,7 @@ def _limits(limits: Limits) -> Document:
                 "stage": block.stage,
                 "used": block.used,
                 "stages": dict(block.stages),
+                "text": block.text,
             }
             for block in limits.blocks
         ],
