@@ -64,14 +64,6 @@ def test_flow_off_its_set_point(tmp_path: Path) -> None:
     assert run.used.sum() >= 57
 
 
-def test_outlier_is_flagged_and_kept(tmp_path: Path) -> None:
-    rows = Lab(noise=0.01, n=61).table()
-    rows[31][2] = f"{float(rows[31][2]) * 2.0:.6f}"
-    run = reduced(write_rows(tmp_path / "a.csv", rows))
-    assert flag(run, "outlier").rows == (32, 32)
-    assert run.used.all()
-
-
 def test_volume_that_shrinks_a_little(tmp_path: Path) -> None:
     rows = Lab(n=200).table()
     rows[101][1] = f"{float(rows[100][1]) - 1.5:.6f}"

@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from scipy.optimize import least_squares as reference_least_squares
 
+from tests.curves.plain import plain
 from tests.curves.test_laws import PARAMETERS
 from trainopt.curves.fit import Fit, Readings, contrasts, fit_law, fit_laws
 from trainopt.curves.laws import LAWS
@@ -32,9 +33,11 @@ def readings(
     resistance = rho * law.resistance(kappa * loading, *p)
     value = rho / kappa * law.integral(kappa * loading, *p) if integral else resistance
     log = np.log(value) + noise * rng.standard_normal(len(loading))
-    kind = np.full(len(loading), integral)
-    weight = np.ones(len(loading))
-    return Readings(loading, log, kind, weight, lot, lot, resistance, 0.0 * loading, tuple(lots)), log_rho, log_kappa
+    return (
+        plain(loading, log, resistance, integral, lot, tuple(lots)),
+        log_rho,
+        log_kappa,
+    )
 
 
 def off(fit: Fit, truth: np.ndarray) -> np.ndarray:
@@ -104,8 +107,7 @@ def dipping(seed: int) -> Readings:
     loading = np.linspace(1.0, 100.0, 80)
     z = loading / 100.0
     resistance = 1e-3 * (1.0 - 0.8 * z + 2.2 * z**2) * np.exp(0.01 * rng.standard_normal(80))
-    zeros = np.zeros(80, dtype=np.intp)
-    return Readings(loading, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, np.zeros(80), ("a",))
+    return plain(loading, np.log(resistance), resistance)
 
 
 def wavy(seed: int, sag: float) -> Readings:
@@ -113,10 +115,7 @@ def wavy(seed: int, sag: float) -> Readings:
     rng = np.random.default_rng(seed)
     z = np.linspace(0.01, 1.0, 80)
     resistance = 1e-3 * (1.0 + 4.0 * z - sag * z**2 + sag * z**3 / 1.5) * np.exp(0.005 * rng.standard_normal(80))
-    zeros = np.zeros(80, dtype=np.intp)
-    return Readings(
-        100.0 * z, np.log(resistance), zeros > 0, np.ones(80), zeros, zeros, resistance, np.zeros(80), ("a",)
-    )
+    return plain(100.0 * z, np.log(resistance), resistance)
 
 
 @pytest.mark.parametrize(
@@ -183,7 +182,7 @@ def test_a_medium_that_does_not_foul_leaves_the_fouling_of_lots_open() -> None:
     loading = np.tile(np.linspace(1.0, 100.0, 40), 2)
     lot = np.repeat([0, 1], 40)
     log = np.log(1e-3 * np.array([1.0, 1.1])[lot]) + 0.01 * rng.standard_normal(80)
-    data = Readings(loading, log, lot < 0, np.ones(80), lot, lot, np.exp(log), np.zeros(80), ("a", "b"))
+    data = plain(loading, log, np.exp(log), lot=lot, lots=("a", "b"))
     fit = fit_law(data, LAWS["intermediate"])
     assert np.exp(fit.log_rho[1] - fit.log_rho[0]) == pytest.approx(1.1, rel=0.02)
     assert np.all(np.isfinite(fit.parameters))

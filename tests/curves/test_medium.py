@@ -162,6 +162,24 @@ def test_an_outlier_pulls_little(tmp_path: Path) -> None:
         assert estimate.se is not None
         assert abs(dirty.parameters[name].value - estimate.value) < 1.5 * estimate.se
     assert all(point.excluded is None for point in dirty.points)
+    [flag] = [flag for flag in dirty.flags if flag.code == "outlier"]
+    assert (flag.run, flag.rows) == ("b.csv", (51, 51))
+    assert "off the curve; kept, its pull on the fit bounded to" in flag.text
+    assert "outlier" not in [flag.code for flag in clean.flags]
+
+
+def test_a_misread_volume_of_a_pressure_run_is_said(tmp_path: Path) -> None:
+    path = pressure_run(tmp_path / "a.csv", "cake", (1e-3, 0.02), 0.4, 110.0)
+    lines = path.read_text().splitlines()
+    time, mass = lines[20].split(",")
+    lines[20] = f"{time},{float(mass) * 1.05:.3f}"
+    rng = np.random.default_rng(0)
+    noisy = [line.split(",") for line in lines[1:]]
+    noisy = [[t, f"{float(m) * (1.0 + 0.001 * rng.standard_normal()):.4f}"] for t, m in noisy]
+    write_rows(path, [lines[0].split(","), *noisy])
+    run = RunEntry(path, operation="constant-pressure", pressure=0.4, density=1.0)
+    [flag] = [flag for flag in fitted(run, law="cake").flags if flag.code == "outlier"]
+    assert flag.rows == (21, 21)
 
 
 def test_auto_refuses_where_laws_fit_alike_but_differ(tmp_path: Path) -> None:

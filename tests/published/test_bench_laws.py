@@ -6,6 +6,7 @@ import numpy as np
 import pytest
 from scipy.optimize import brentq
 
+from tests.curves.plain import plain
 from trainopt.curves.fit import Readings, fit_law
 from trainopt.curves.laws import LAWS
 from trainopt.curves.solver import covariance, least_squares
@@ -62,10 +63,8 @@ def test_certified_regressions_are_the_general_law_at_constant_pressure(name: st
 
 
 def exact(loading: np.ndarray, value: np.ndarray, integral: bool) -> Readings:
-    zeros = np.zeros(len(loading), dtype=np.intp)
     local = value if not integral else np.gradient(value, loading)
-    kind = np.full(len(loading), integral)
-    return Readings(loading, np.log(value), kind, np.ones(len(loading)), zeros, zeros, local, 0.0 * loading, ("a",))
+    return plain(loading, np.log(value), local, integral)
 
 
 def test_constant_flow_on_an_incompressible_cake() -> None:

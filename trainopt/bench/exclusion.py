@@ -7,7 +7,7 @@ from __future__ import annotations
 import numpy as np
 from numpy.typing import NDArray
 
-from trainopt.bench.run import Floats, ReducedRun
+from trainopt.bench.run import ReducedRun
 
 FLOW_STEP = 0.15
 """Change of flux over two readings, of the run's median, from which the reading between belongs to neither
@@ -68,22 +68,4 @@ def start_up(run: ReducedRun, usable: NDArray[np.bool_]) -> NDArray[np.bool_]:
         if not (purging or lagging):
             break
         out[at[index]] = True
-    return out
-
-
-def local_outliers(loading: Floats, resistance: Floats) -> NDArray[np.bool_]:
-    """Readings far off the running median of ln R over seven: over six robust deviations and over 10 %.
-
-    They are flagged, not left out: the fit's loss bounds their pull.
-    """
-    n = len(loading)
-    out = np.zeros(n, dtype=bool)
-    if n < 9:
-        return out
-    log = np.log(resistance)
-    windows = np.lib.stride_tricks.sliding_window_view(log, 7)
-    middle = np.concatenate([[np.nan] * 3, np.median(windows, axis=1), [np.nan] * 3])
-    off = np.abs(log - middle)
-    scale = 1.4826 * float(np.nanmedian(off))
-    out[3:-3] = off[3:-3] > max(6.0 * scale, 0.1)
     return out

@@ -49,7 +49,6 @@ def checked(run: ReducedRun, keep: bool) -> ReducedRun:
         flags.extend(_pump_slip(run, slipping, stepping, keep))
         flags.extend(_off_set_point(run, usable & ~starting & ~stepping & ~slipping))
     marked = replace(run, excluded=tuple(reasons))
-    flags.extend(_outliers(marked))
     flags.extend(_shrinking(marked))
     flags.extend(_breakthrough(marked))
     flags.extend(_mass_balance(marked))
@@ -131,19 +130,6 @@ def _off_set_point(run: ReducedRun, steady: NDArray[np.bool_]) -> Iterator[Flag]
             "resistances use the measured flux and stay in the fit"
         )
         yield Flag("off-set-point", run.name, _place(run, first, last), text)
-
-
-def _outliers(run: ReducedRun) -> Iterator[Flag]:
-    at = np.flatnonzero(run.used & (run.resistance > 0.0))
-    if run.operation != "constant-flow" or len(at) < 9:
-        return
-    for index in at[exclusion.local_outliers(run.loading[at], run.resistance[at])]:
-        text = (
-            f"outlier: resistance {run.resistance[index]:.3g} bar/LMH at {run.loading[index]:.1f} L/m2 is "
-            f"off its "
-            "neighbors; kept, with bounded pull on the fit; check the reading"
-        )
-        yield Flag("outlier", run.name, _place(run, int(index), int(index)), text)
 
 
 def _shrinking(run: ReducedRun) -> Iterator[Flag]:

@@ -36,12 +36,11 @@ ROUNDS = 100
 
 @dataclass(frozen=True, eq=False)
 class Evidence:
-    """Readings with their final weights, every law's fit (best first), the chosen one, and laws that rival
-    it.
+    """Readings with their final weights, every law's fit (best first), the chosen one, and laws that rival it.
 
-    `prior` holds the lots' ln κ near zero where the readings hardly tell them (see `fit_law`; 0: not needed).
-    `spread` is the largest relative difference between the chosen law's resistance and a rival's on the
-    tested range.
+    `pull` (n,) is the part of its full weight that each reading was left by the loss. `prior` holds the lots' ln κ
+    near zero where the readings hardly tell them (see `fit_law`; 0: not needed). `spread` is the largest relative
+    difference between the chosen law's resistance and a rival's on the tested range.
     """
 
     readings: Readings
@@ -50,6 +49,7 @@ class Evidence:
     rivals: tuple[Fit, ...]
     spread: float
     prior: float
+    pull: Floats
 
     @property
     def decided(self) -> bool:
@@ -74,7 +74,8 @@ def weigh(readings: Readings, names: tuple[str, ...]) -> Evidence | None:
     chosen = replace(chosen, covariance=chosen.covariance * kinship(final, chosen) + _walked(final, chosen))
     rivals = tuple(fit for fit in close if fit.count == best.count and fit.law != best.law)
     spread = max((_difference(readings, chosen, rival) for rival in rivals), default=0.0)
-    return Evidence(final, fits, chosen, rivals, spread, prior)
+    pull = _pull(readings, chosen, final)
+    return Evidence(final, fits, chosen, rivals, spread, prior, pull)
 
 
 def _prior(fit: Fit) -> float:
@@ -101,22 +102,37 @@ def settle(readings: Readings, law: str, prior: float = 0.0) -> tuple[Readings, 
 
 
 def _weights(base: Readings, fit: Fit, fitted: Readings) -> Floats:
-    """The base weights times Huber's, each kind of run scaled by its own spread about `fit` (made on
-    `fitted`).
-    """
-    errors = np.sqrt(base.weight) * fit.residuals / np.sqrt(fitted.weight)
-    weight, reference = base.weight.copy(), 0.0
+    """The base weights times Huber's, each kind of run scaled by its own spread about `fit` (made on `fitted`)."""
+    errors = _errors(base, fit, fitted)
+    weight, reference = base.weight * _pull(base, fit, fitted), 0.0
     for kind in (base.integral, ~base.integral):
-        if not kind.any():
-            continue
-        scale = 1.4826 * float(np.median(np.abs(errors[kind])))
-        if scale <= SMALLEST_ERROR:
-            continue
-        with np.errstate(divide="ignore"):
-            weight[kind] *= np.minimum(1.0, BOUND * scale / np.abs(errors[kind]))
-        reference = reference or scale
-        weight[kind] *= (reference / scale) ** 2
+        scale = _scale(errors[kind])
+        if scale > SMALLEST_ERROR:
+            reference = reference or scale
+            weight[kind] *= (reference / scale) ** 2
     return weight
+
+
+def _errors(base: Readings, fit: Fit, fitted: Readings) -> Floats:
+    """Errors about a fit made on `fitted`, in the base weights."""
+    return np.asarray(np.sqrt(base.weight) * fit.residuals / np.sqrt(fitted.weight))
+
+
+def _scale(errors: Floats) -> float:
+    """Robust standard deviation; 0 for none."""
+    return 1.4826 * float(np.median(np.abs(errors))) if len(errors) else 0.0
+
+
+def _pull(base: Readings, fit: Fit, fitted: Readings) -> Floats:
+    """The part of its full weight that Huber's loss leaves each reading, (n,)."""
+    errors = _errors(base, fit, fitted)
+    out = np.ones(len(errors))
+    for kind in (base.integral, ~base.integral):
+        scale = _scale(errors[kind])
+        if scale > SMALLEST_ERROR:
+            with np.errstate(divide="ignore"):
+                out[kind] = np.minimum(1.0, BOUND * scale / np.abs(errors[kind]))
+    return out
 
 
 def kinship(readings: Readings, fit: Fit) -> float:

@@ -34,8 +34,8 @@ class Readings:
     """What a fit sees, arrays of shape (n,): `loading` L/m²; `log` ln(bar/LMH), or ln(bar·h) where `integral`.
 
     `walk` bar·h is the standard deviation by which one noisy pressure reading shifts ∫ΔP dt from there on (0 where
-    not `integral`). `lot` and `run` index the lots and runs; `weight` multiplies squared errors; `resistance` bar/LMH
-    is the local estimate, used for starting values only.
+    not `integral`). `lot` and `run` index `lots` and `runs`, `row` is the line in the run's file; `weight` multiplies
+    squared errors; `resistance` bar/LMH is the local estimate, used for starting values only.
     """
 
     loading: Floats
@@ -46,14 +46,16 @@ class Readings:
     run: NDArray[np.intp]
     resistance: Floats
     walk: Floats
+    row: NDArray[np.int64]
     lots: tuple[str, ...]
+    runs: tuple[str, ...]
 
     def __len__(self) -> int:
         return len(self.loading)
 
     def at(self, index: NDArray[np.intp]) -> Readings:
         """The readings at these places, which may repeat; lots unchanged."""
-        columns = ("loading", "log", "integral", "weight", "lot", "run", "resistance", "walk")
+        columns = ("loading", "log", "integral", "weight", "lot", "run", "resistance", "walk", "row")
         return replace(self, **{name: getattr(self, name)[index] for name in columns})
 
 

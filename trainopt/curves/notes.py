@@ -29,6 +29,7 @@ def curve_flags(
     has one.
     """
     yield from _ended_early(runs, min(endpoint or ENDPOINT, ENDPOINT), turbidity)
+    yield from _outliers(evidence)
     yield from _little_fouling(medium, evidence)
     yield from _open_lots(medium, evidence)
     yield from _rivals(medium, evidence)
@@ -51,6 +52,21 @@ def _ended_early(runs: Sequence[ReducedRun], endpoint: float, turbidity: float |
                 f"endpoint"
             )
             yield Flag("ended-early", run.name, None, text)
+
+
+def _outliers(evidence: Evidence) -> Iterator[Flag]:
+    """Readings whose pull on the fit was halved at least: eight robust standard deviations off."""
+    readings, fit = evidence.readings, evidence.chosen
+    for index in np.flatnonzero(evidence.pull < 0.5):
+        off = np.expm1(-fit.residuals[index] / np.sqrt(readings.weight[index]))
+        what = "∫ΔP dt" if readings.integral[index] else "resistance"
+        text = (
+            f"outlier: {what} at {readings.loading[index]:.1f} L/m2 is {off:+.0%} off the curve; kept, its pull on "
+            f"the fit "
+            f"bounded to {evidence.pull[index]:.0%} of a normal reading's; check it"
+        )
+        row = int(readings.row[index])
+        yield Flag("outlier", readings.runs[int(readings.run[index])], (row, row), text)
 
 
 def _little_fouling(medium: str, evidence: Evidence) -> Iterator[Flag]:

@@ -37,7 +37,9 @@ def fit_readings(runs: Sequence[ReducedRun]) -> Readings:
         run=np.repeat(np.arange(len(ordered)), sizes),
         resistance=np.concatenate([_local(run) for run in ordered]),
         walk=np.concatenate([_walk(run) for run in ordered]),
+        row=np.concatenate([run.rows[run.used] for run in ordered]),
         lots=lots,
+        runs=tuple(run.name for run in ordered),
     )
 
 

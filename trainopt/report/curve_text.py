@@ -57,8 +57,15 @@ def flag_words(run: str, rows: tuple[int, int] | None, text: str) -> str:
     return f"{run}, {place}: {text}"
 
 
+MOST_READINGS = 100
+
+
 def _readings(page: Page, run: str, points: Sequence[Point], units: str) -> None:
+    every = -(-len(points) // MOST_READINGS)
     page.heading(f"{run}, lot {points[0].lot}")
+    if every > 1:
+        page.line(f"{len(points)} readings, one in {every} shown; --json has them all.")
+        points = points[::every]
     rows = [
         (
             point.excluded or "",
