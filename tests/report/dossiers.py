@@ -108,7 +108,11 @@ def _limits(name: str = "secondary") -> Limits:
         "clarification.pressure_bar", "bar", 1.4, 1.52, 33.3, 0.9, picks, f"0.12 bar more saves 0.9 m2 in {name}"
     )
     run = LongerRun("rye-fine", 160.0, 210.0, 150.0, 1.93, 32.0, 2.2, picks, "run rye-fine to 210 L/m2")
-    return Limits((BlockLimit("clarification", "pressure", "", 0.97, {"primary": "pressure"}),), (gain,), (run,))
+    return Limits(
+        (BlockLimit("clarification", "pressure", "", 0.97, {"primary": "pressure"}, "leaves 0.04 bar unused"),),
+        (gain,),
+        (run,),
+    )
 
 
 def _six_stages() -> Design:

@@ -14,6 +14,7 @@ import numpy as np
 from trainopt.curves.uncertainty import band
 from trainopt.optimize.area_parts import area_parts
 from trainopt.optimize.design import Prepared, design, prepare
+from trainopt.optimize.limits import limits
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.numbers import limit_words, trimmed
@@ -57,6 +58,7 @@ def gather(case: Case, objective: str | None = None, time_limit: float | None = 
         date=now(),
         volumes=tuple(_volumes(case, found)),
         area_parts=area_parts(problem, found),
+        limits=limits(problem, found, prepared.curves),
     )
 
 

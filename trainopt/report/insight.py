@@ -70,7 +70,11 @@ def _limits(limits: Limits, dossier: Dossier, units: str) -> Section:
         tables.append(_gains(limits, unit, units))
     if limits.longer_runs:
         tables.append(_longer_runs(limits, unit, units))
-    texts = (*(gain.text for gain in limits.gains), *(run.text for run in limits.longer_runs))
+    texts = (
+        *(block.text for block in limits.blocks),
+        *(gain.text for gain in limits.gains),
+        *(run.text for run in limits.longer_runs),
+    )
     nothing = "" if limits.gains or limits.longer_runs else "No single limit, moved a little, gives a better design."
     return Section(
         "limits",
