@@ -141,6 +141,10 @@ BROKEN = {
     "wrong-unit": (GOOD.replace("pressure (psi)", "pressure (mL)"), "has no pressure column"),
     "two-times": (GOOD.replace("pressure (psi)", "time (s)"), "could each be the time"),
     "two-volumes": (GOOD.replace("pressure (psi)", "vol (L)"), "could each be the volume"),
+    "same-header": (
+        GOOD.replace("time (min),volume (mL)", "time (min),time (min)"),
+        "several columns are headed 'time (min)'",
+    ),
     "absolute": (GOOD.replace("(psi)", "(psia)"), "is absolute; expected gauge pressure"),
     "few": ("\n".join(GOOD.splitlines()[:4]), "holds 3 complete readings; expected at least 5"),
     "wide-row": (

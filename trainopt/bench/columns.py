@@ -108,7 +108,9 @@ class _Search:
 
     def take(self, role: str, candidates: list[_Header]) -> None:
         """Give the role to its only candidate; several are a problem, none is none."""
-        if len(candidates) > 1:
+        if len({header.text for header in candidates}) < len(candidates):
+            self.wrong(f"several columns are headed '{candidates[0].text}'; expected headers that differ")
+        elif len(candidates) > 1:
             names = " and ".join(f"'{header.text}'" for header in candidates)
             example = f'columns: {{{role}: "{candidates[0].text}"}}'
             what = role.replace("_", " ")
