@@ -91,6 +91,9 @@ class Staircase:
 def staircase(problem: DesignProblem) -> Staircase:
     """The staircase of a whole train (usually pruned before). Exact: a design falls only to one that is never worse."""
     index = index_problem(problem)
+    served = {node.place for node in index.nodes}
+    if any(not stage.optional and place not in served for place, (_, stage) in enumerate(index.stages)):
+        return _nothing(index).take(np.zeros(0, dtype=np.intp))
     follows = followers(index)
     # By the next used stage downstream: all that the train from there on may be.
     trains: dict[int, Staircase] = {SINK: _nothing(index)}
