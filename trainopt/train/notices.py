@@ -25,9 +25,7 @@ def case_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
         yield from _medium_notices(medium, curve, temperature, lots)
 
 
-def _medium_notices(
-    medium: Medium, curve: Curve, temperature: float | None, lots: tuple[str, ...]
-) -> Iterator[Notice]:
+def _medium_notices(medium: Medium, curve: Curve, temperature: float | None, lots: tuple[str, ...]) -> Iterator[Notice]:
     name = medium.medium
     for flag in curve.flags:
         rows = f" rows {flag.rows[0]} to {flag.rows[1]}:" if flag.rows else ""
@@ -47,8 +45,12 @@ def _medium_notices(
             "lot-not-tested",
             f"{name}: lot {', '.join(untested)} was not run on it; the worst of its own lots stands in",
         )
-    if medium.limits.turbidity is not None and curve.turbidity_loading is None and curve.source == "parameters":
-        yield Notice("turbidity-not-tested", f"{name}: the turbidity limit cannot be held against a curve by parameters")
+    held = medium.curve.origin is not None and medium.curve.origin.turbidity == medium.limits.turbidity
+    given = curve.source == "parameters" and curve.turbidity_loading is None
+    if medium.limits.turbidity is not None and given and not held:
+        yield Notice(
+            "turbidity-not-tested", f"{name}: the turbidity limit cannot be held against a curve by parameters"
+        )
 
 
 def design_notices(
