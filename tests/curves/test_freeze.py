@@ -102,3 +102,10 @@ def test_only_runs_can_be_frozen_and_only_as_yaml(workspace: Path) -> None:
     again = trainopt.load_medium(path)
     with pytest.raises(InputError, match="is given by its parameters already"):
         frozen_text(again, trainopt.fit_curve(again), path)
+
+
+def test_a_frozen_curve_answers_for_its_turbidity_limit(workspace: Path) -> None:
+    for medium in (workspace / "models" / "media").glob("*.yaml"):
+        freeze(medium)
+    design = trainopt.design(trainopt.load_case(workspace / "scenarios" / "harvest.yaml"))
+    assert "turbidity-not-tested" not in [notice.code for notice in design.warnings]
