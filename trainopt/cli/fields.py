@@ -21,9 +21,9 @@ def fields(
         ),
     ] = None,
 ) -> Status:
-    """Explain the fields of the files: meaning, unit, default, example.
+    """Explain every field of the files.
 
-    [] stands for an item of a list, NAME for a name of your own.
+    Its meaning, unit, default and an example. [] stands for an item of a list, NAME for a name of your own.
     """
     from trainopt.files.reference import FILES
     from trainopt.files.reference import fields as find_fields
