@@ -55,17 +55,18 @@ def _roots(descending: Floats) -> np.ndarray[tuple[int], np.dtype[np.complex128]
     return np.roots(descending).astype(complex)
 
 
-def maxima(coefficients: tuple[float, ...]) -> list[float]:
+@lru_cache(maxsize=1024)
+def maxima(coefficients: tuple[float, ...]) -> tuple[float, ...]:
     """Loadings above zero where a polynomial of degree 3 or less has a local maximum, in closed form."""
     c1, c2, c3 = (*coefficients[1:], 0.0, 0.0, 0.0)[:3]
     a, b, c = 3.0 * c3, 2.0 * c2, c1
     if a == 0.0:
-        return [-c / b] if b < 0.0 < c and c < -1e300 * b else []
+        return (-c / b,) if b < 0.0 < c and c < -1e300 * b else ()
     discriminant = b * b - 4.0 * a * c
     if discriminant <= 0.0:
-        return []
+        return ()
     q = -0.5 * (b + np.copysign(np.sqrt(discriminant), b))
     roots = [q / a] if abs(q) < 1e300 * abs(a) else []  # else it lies beyond any loading
     if q != 0.0 and abs(c) < 1e300 * abs(q):
         roots.append(c / q)
-    return [float(x) for x in roots if x > 0.0 and 2.0 * a * x + b < 0.0]
+    return tuple(float(x) for x in roots if x > 0.0 and 2.0 * a * x + b < 0.0)
