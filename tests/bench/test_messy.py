@@ -186,6 +186,16 @@ def test_two_part_times_need_their_form(tmp_path: Path, form: str, per: float) -
     np.testing.assert_allclose(reduced(write_rows(tmp_path / "a.csv", rows)).time, np.arange(9) / 2.0 / per)
 
 
+def test_a_file_that_may_not_be_read(tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def refuse(_: Path) -> bytes:
+        raise PermissionError(13, "Permission denied")
+
+    path = write_rows(tmp_path / "a.csv", LAB.table())
+    monkeypatch.setattr(Path, "read_bytes", refuse)
+    with pytest.raises(InputError, match=r"a.csv: cannot be read: Permission denied"):
+        reduced(path)
+
+
 def test_balance_with_a_tare(tmp_path: Path) -> None:
     rows = LAB.table()
     clean = reduced(write_rows(tmp_path / "clean.csv", rows))

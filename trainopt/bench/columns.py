@@ -176,9 +176,7 @@ def _header(table: Table, index: int) -> _Header:
 
 
 def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -> None:
-    """The column that the run names for a role: its header, perhaps with the unit it lacks, or none at
-    all.
-    """
+    """The column that the run names for a role: its header, perhaps with the unit it lacks, or none at all."""
     if role not in DIMENSIONS:
         search.wrong(f"`columns:` names the role '{role}'; expected one of {', '.join(DIMENSIONS)}")
         return
@@ -276,9 +274,7 @@ def _find_pressures(search: _Search) -> None:
 
 
 def _downstream(search: _Search, gauges: list[_Header]) -> list[_Header]:
-    """Numbered gauges that stand after the one given as the pressure: in an inline run one of them is its
-    outlet.
-    """
+    """Numbered gauges that stand after the one given as the pressure: in an inline run one of them is its outlet."""
     given = search.found.get("pressure")
     if given is None or "pressure" not in search.given:
         return []

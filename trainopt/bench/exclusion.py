@@ -1,6 +1,4 @@
-"""The stated rules by which a reading is left out of a fit; `keep: true` keeps all but the impossible
-ones.
-"""
+"""The stated rules by which a reading is left out of a fit; `keep: true` keeps all but the impossible ones."""
 
 from __future__ import annotations
 
@@ -10,17 +8,13 @@ from numpy.typing import NDArray
 from trainopt.bench.run import ReducedRun
 
 FLOW_STEP = 0.15
-"""Change of flux over two readings, of the run's median, from which the reading between belongs to neither
-side.
-"""
+"""Change of flux over two readings, of the run's median, from which the reading between belongs to neither side."""
 
 START_SHARE = 0.1
 """Air is purged and the pump settles within this part of the run's loading."""
 
 START_EXCESS, START_LACK = 1.15, 0.5
-"""A start-up reading resists this much more than the least after it, or less than this part of what
-follows.
-"""
+"""A start-up reading resists this much more than the least after it, or less than this part of what follows."""
 
 Reasons = list[str | None]
 
@@ -50,9 +44,7 @@ def flow_steps(run: ReducedRun) -> NDArray[np.bool_]:
 
 
 def start_up(run: ReducedRun, usable: NDArray[np.bool_]) -> NDArray[np.bool_]:
-    """Readings before air is purged (resistance falls to its least) or the pressure has built up (it lags
-    behind).
-    """
+    """Readings before air is purged (resistance falls to its least) or the pressure has built up (it lags behind)."""
     out = np.zeros(len(run.time), dtype=bool)
     at = np.flatnonzero(usable)
     if len(at) < 10:

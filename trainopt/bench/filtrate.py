@@ -93,9 +93,7 @@ def tare(time: Floats, amount: Floats, given: float | None, what: str) -> tuple[
 
 
 def pressure_time(time: Floats, volume: Floats, pressure: Floats) -> Floats:
-    """∫ΔP dt in bar·h from the first filtrate (volume 0) to each reading, by trapezoids; negative before
-    it.
-    """
+    """∫ΔP dt in bar·h from the first filtrate (volume 0) to each reading, by trapezoids; negative before it."""
     area = np.concatenate([[0.0], np.cumsum(0.5 * (pressure[1:] + pressure[:-1]) * np.diff(time))])
     before = np.flatnonzero(volume <= 0.0)
     if not len(before):

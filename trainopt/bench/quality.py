@@ -31,9 +31,7 @@ SENSIBLE_RESISTANCE = (1e-6, 1.0)
 
 
 def checked(run: ReducedRun, keep: bool) -> ReducedRun:
-    """The run with its readings excluded by rule and every check's flags added; `keep` keeps what can be
-    kept.
-    """
+    """The run with its readings excluded by rule and every check's flags added; `keep` keeps what can be kept."""
     reasons = exclusion.impossible(run)
     usable = np.array([reason is None for reason in reasons], dtype=bool)
     flags = [*run.flags]

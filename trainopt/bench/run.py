@@ -61,9 +61,7 @@ class ReducedRun:
 
     @property
     def pool_turbidity(self) -> Floats:
-        """Turbidity of the pooled filtrate so far (volume-weighted, by trapezoids), NaN where it was not
-        read.
-        """
+        """Turbidity of the pooled filtrate so far (volume-weighted, by trapezoids), NaN where it was not read."""
         out = np.full(len(self.time), np.nan)
         read = np.flatnonzero(np.isfinite(self.turbidity) & (self.volume > 0.0))
         if len(read):

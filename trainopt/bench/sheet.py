@@ -1,6 +1,4 @@
-"""Plan of a bench run, and the sheet to record it in, which is then read as a run without any further
-setting.
-"""
+"""Plan of a bench run, and the sheet to record it in, which is then read as a run without any further setting."""
 
 from __future__ import annotations
 
@@ -69,9 +67,7 @@ class RunPlan:
 
 
 def plan_run(area: float, flux: float, loading: float, medium: Medium | None = None) -> RunPlan:
-    """Plan a run of `loading` L/m² at `flux` LMH on `area` m²; a medium brings its flush, hold-up and
-    limits.
-    """
+    """Plan a run of `loading` L/m² at `flux` LMH on `area` m²; a medium brings its flush, hold-up and limits."""
     bad = [name for name, value in (("area", area), ("flux", flux), ("loading", loading)) if not value > 0.0]
     if bad:
         raise InputError([Problem(f"--{name}", 0, "expected a value above zero") for name in bad])
@@ -105,9 +101,7 @@ def plan_run(area: float, flux: float, loading: float, medium: Medium | None = N
 
 
 def _readings(duration: float) -> tuple[tuple[float, ...], tuple[bool, ...]]:
-    """Reading times in h, every couple of minutes or so that there are not too many, and where turbidity
-    is read.
-    """
+    """Reading times in h, every couple of minutes or so that there are not too many, and where turbidity is read."""
     minutes = duration * 60.0
     steps = (0.5, 1.0, 2.0, 5.0, 10.0, 15.0, 30.0, 60.0)
     step = next((step for step in steps if minutes / step <= MOST_READINGS), minutes / MOST_READINGS)

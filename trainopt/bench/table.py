@@ -67,6 +67,13 @@ def read_table(path: Path, sheet: str | None = None) -> Table:
     file = shown_path(path)
     if not path.is_file():
         raise InputError([Problem(file, 0, "no such file; expected a bench run as CSV or XLSX")])
+    try:
+        return _table_of(path, file, sheet)
+    except OSError as error:
+        raise InputError([Problem(file, 0, f"cannot be read: {error.strerror or error}")]) from None
+
+
+def _table_of(path: Path, file: str, sheet: str | None) -> Table:
     assumed: list[str] = []
     if path.suffix.lower() in {".xlsx", ".xlsm"}:
         rows = list(_spreadsheet_rows(path, file, sheet))
@@ -80,8 +87,7 @@ def read_table(path: Path, sheet: str | None = None) -> Table:
 
 
 def _large_table(path: Path, file: str) -> Table | None:
-    """A large CSV of plain numbers by pandas' reader; None where it holds anything else, for the careful
-    reader.
+    """A large CSV of plain numbers by pandas' reader; None, for the careful reader, where it holds anything else.
 
     Header, delimiter and decimal mark are found in the first lines, as for a small file.
     """
@@ -189,7 +195,7 @@ def _decimal_points(rows: list[Row], file: str, assumed: list[str]) -> list[Row]
         return [(line, [_swap(cell) for cell in cells]) for line, cells in rows]
     if all(grouped) and not all(decimal):
         assumed.append("a comma in a number groups thousands")
-        return [(line, [c.replace(",", "") if _THOUSANDS.fullmatch(c) else c for c in cells]) for line, cells in rows]
+        return [(line, [_ungrouped(cell) for cell in cells]) for line, cells in rows]
     line, cell = commas[0]
     text = f"'{cell}': the comma may mark decimals or thousands; expected numbers with a decimal point"
     raise InputError([Problem(file, line, text)])

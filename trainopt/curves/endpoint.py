@@ -1,6 +1,4 @@
-"""Where the filtrate stops being clean enough: the loading at a turbidity limit, instantaneous or of the
-pool.
-"""
+"""Where the filtrate stops being clean enough: the loading at a turbidity limit, instantaneous or of the pool."""
 
 from __future__ import annotations
 
@@ -34,9 +32,7 @@ def _endpoints(run: ReducedRun, limit: float | None, pool_limit: float | None) -
 
 
 def crossing(loading: Floats, turbidity: Floats, limit: float) -> float | None:
-    """Loading at which the turbidity first reaches the limit, interpolated between the readings that have
-    one.
-    """
+    """Loading at which the turbidity first reaches the limit, interpolated between the readings that have one."""
     read = np.flatnonzero(np.isfinite(turbidity) & (loading >= 0.0))
     over = read[turbidity[read] >= limit]
     if not len(over):

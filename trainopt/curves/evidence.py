@@ -20,9 +20,7 @@ INDISTINGUISHABLE = 2.0
 """AICc units within which two laws cannot be told apart."""
 
 DIFFERENT = 0.1
-"""Laws that cannot be told apart matter where their resistances inside the tested range differ by this
-part.
-"""
+"""Laws that cannot be told apart matter where their resistances inside the tested range differ by this part."""
 
 BOUND = 4.0
 """Robust standard deviations beyond which an error counts linearly."""
@@ -88,9 +86,7 @@ def _prior(fit: Fit) -> float:
 
 
 def settle(readings: Readings, law: str, prior: float = 0.0) -> tuple[Readings, Fit]:
-    """One law fitted with Huber's loss, by reweighting until no weight moves; the weights are returned
-    with it.
-    """
+    """One law fitted with Huber's loss, by reweighting until no weight moves; the weights are returned with it."""
     current, fit = readings, fit_law(readings, LAWS[law], prior=prior)
     for _ in range(ROUNDS):
         weight = _weights(readings, fit, current)

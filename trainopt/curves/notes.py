@@ -25,9 +25,7 @@ def curve_flags(
     endpoint: float | None,
     turbidity: float | None,
 ) -> Iterator[Flag]:
-    """Flags of the fit as a whole; `endpoint` bar is the medium's differential pressure rating, where it
-    has one.
-    """
+    """Flags of the fit as a whole; `endpoint` bar is the medium's differential pressure rating, where it has one."""
     yield from _ended_early(runs, min(endpoint or ENDPOINT, ENDPOINT), turbidity)
     yield from _outliers(evidence)
     yield from _little_fouling(medium, evidence)

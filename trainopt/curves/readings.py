@@ -15,9 +15,7 @@ from trainopt.bench.run import Floats, ReducedRun
 from trainopt.curves.fit import Readings
 
 READING_ERROR = 0.01
-"""Relative error of a pressure reading beside the gauge's resolution, for weights (common practice, no
-source).
-"""
+"""Relative error of a pressure reading beside the gauge's resolution, for weights (common practice, no source)."""
 
 LEAST_STEP = 1e-4
 """Volume error of a run whose volumes show no resolution, as part of its filtrate."""
@@ -54,9 +52,7 @@ def _log(run: ReducedRun) -> Floats:
 
 
 def _local(run: ReducedRun) -> Floats:
-    """Local resistance, for starting values; where a noisy volume gives none, the mean resistance up to
-    there.
-    """
+    """Local resistance, for starting values; where a noisy volume gives none, the mean resistance up to there."""
     resistance, used = run.resistance[run.used], run.used
     known = np.isfinite(resistance) & (resistance > 0.0)
     mean = np.abs(run.pressure_time[used]) / np.maximum(run.loading[used], 1e-9)
@@ -79,9 +75,7 @@ def _walk(run: ReducedRun) -> Floats:
 
 
 def _weight(run: ReducedRun) -> Floats:
-    """Weight of each squared error: the less, the more of a reading is the step of a gauge, cylinder or
-    clock.
-    """
+    """Weight of each squared error: the less, the more of a reading is the step of a gauge, cylinder or clock."""
     if is_integral(run):
         return _integral_weight(run)
     coarse = run.pressure_step / np.sqrt(12.0) / run.pressure[run.used]
@@ -89,9 +83,7 @@ def _weight(run: ReducedRun) -> Floats:
 
 
 def _integral_weight(run: ReducedRun) -> Floats:
-    """Inverse variance of ln ∫ΔP dt, mean 1: R times the error of the loading, and ΔP times that of the
-    clock.
-    """
+    """Inverse variance of ln ∫ΔP dt, mean 1: R times the error of the loading, and ΔP times that of the clock."""
     used = run.used
     loading, value = run.loading[used], run.pressure_time[used]
     volume_error = max(run.volume_step / np.sqrt(12.0), LEAST_STEP * float(run.volume[used].max()))

@@ -85,9 +85,7 @@ def _small(moved: Floats, x: Floats, tolerance: float) -> bool:
 
 
 def _polished(function: Residuals, found: Solution, lower: Floats, upper: Floats, tolerance: float) -> Solution:
-    """A few undamped steps on the gradient alone: the sum of squares is flat to rounding long before x is
-    settled.
-    """
+    """A few undamped steps on the gradient alone: the sum of squares is flat to rounding long before x is settled."""
     best = found
     for _ in range(12 if tolerance < 1e-6 else 0):
         gradient = best.jacobian.T @ best.residuals

@@ -84,9 +84,7 @@ def _bootstrap(evidence: Evidence, draws: int, seed: int) -> Draws:
 
 
 def _inflated(readings: Readings, fit: Fit) -> Floats:
-    """Weighted errors about the fit, widened for the freedom that the fit took; sign as in data minus
-    model.
-    """
+    """Weighted errors about the fit, widened for the freedom that the fit took; sign as in data minus model."""
     n = len(readings)
     return np.asarray(-fit.residuals * np.sqrt(n / max(n - fit.count + 1, 1)))
 
@@ -137,9 +135,7 @@ def _blocks(errors: Floats, places: Floats) -> Floats:
 
 
 def _memory(errors: Floats) -> int:
-    """How many neighbors hang together: twice the first lag at which their correlation is below 0.2, n/4
-    at most.
-    """
+    """How many neighbors hang together: twice the first lag at which their correlation is below 0.2, n/4 at most."""
     n = len(errors)
     power = float(errors @ errors)
     for lag in range(1, n // 8):
@@ -212,9 +208,7 @@ def _reach(name: str, parameters: tuple[float, ...], resistance: float) -> float
 
 @dataclass(frozen=True)
 class LotSpread:
-    """Standard deviations of ln ρ and ln κ between lots, less what the fit's own errors explain (0 at
-    least).
-    """
+    """Standard deviations of ln ρ and ln κ between lots, less what the fit's own errors explain (0 at least)."""
 
     lots: int
     log_resistance: float

@@ -20,9 +20,7 @@ _DENSE = {
 
 
 def viscosity_at_density(temperature: float, density: float) -> float:
-    """Viscosity of water in µPa·s at `temperature` in K and `density` in kg/m³ (IAPWS R12-08, eq. 10
-    without μ̄2).
-    """
+    """Viscosity of water in µPa·s at `temperature` in K and `density` in kg/m³ (IAPWS R12-08, eq. 10 without μ̄2)."""
     t, d = temperature / 647.096, density / 322.0
     dilute = 100.0 * math.sqrt(t) / sum(h / t**i for i, h in enumerate(_DILUTE))
     return dilute * math.exp(d * sum(h * (1.0 / t - 1.0) ** i * (d - 1.0) ** j for (i, j), h in _DENSE.items()))
@@ -49,9 +47,7 @@ def water_viscosity(temperature: float) -> float:
 
 
 def viscosity_ratio(process: float | None, test: float | None) -> float:
-    """What a resistance measured at `test` degC is multiplied with at `process` degC; 1 where either is
-    not known.
-    """
+    """What a resistance measured at `test` degC is multiplied with at `process` degC; 1 where either is not known."""
     if process is None or test is None or process == test:
         return 1.0
     return water_viscosity(process) / water_viscosity(test)
