@@ -94,8 +94,9 @@ def _candidate(m: Medium) -> Candidate:
     offer = _offer(m)
     curves = tuple(LotCurve(m.law, m.parameters, rho, kappa) for rho, kappa in m.lots)
     return Candidate(
-        m.name, None if m.after is None else frozenset(m.after), m.differential_pressure, m.inlet_pressure, m.flux, m.cap,
-        m.cap_reason, m.scale_up, curves, offer, (), tuple(ModuleSize(n, a, 1, most) for n, a, _, most in m.sizes), offer,
+        m.name, None if m.after is None else frozenset(m.after), m.differential_pressure, m.inlet_pressure, m.flux,
+        m.cap, m.cap_reason, m.scale_up, curves, offer, (),
+        tuple(ModuleSize(n, a, 1, most) for n, a, _, most in m.sizes), offer,
         LotCurve(m.law, m.parameters), m.cap * max(kappa for _, kappa in m.lots), m.further_cap,
     )  # fmt: skip
 
@@ -132,15 +133,18 @@ def random_problem(
     made, seen = [], []
     for b in range(number):
         chosen = []
+        operation = "constant-pressure" if pressure and r.random() < 0.5 else "constant-flow"
         for s in range(r.randint(1, stages)):
             media = []
             for k in range(r.randint(1, 2)):
                 after = tuple(r.sample(seen, r.randint(1, len(seen)))) if routes and seen and r.random() < 0.3 else None
                 spread = [(x * r.uniform(0.9, 1.1), y * r.uniform(0.9, 1.1)) for x, y in factors]
-                media.append(_random_medium(r, f"w{b}{s}{k}", tuple(spread), most, after))
+                one = _random_medium(r, f"w{b}{s}{k}", tuple(spread), most, after)
+                if operation == "constant-pressure":  # ratings below its pressure are an error in the input
+                    one = replace(one, differential_pressure=math.inf, inlet_pressure=math.inf)
+                media.append(one)
             chosen.append(stage(f"s{b}{s}", *media, optional=routes and r.random() < 0.2))
             seen += [m.name for m in media]
-        operation = "constant-pressure" if pressure and r.random() < 0.5 else "constant-flow"
         made.append(
             block(
                 f"b{b}", *chosen, pressure=r.uniform(0.6, 2.5), operation=operation, static=r.choice([0.0, 0.05]),
@@ -161,7 +165,8 @@ def random_law(r: Random, tested: float) -> tuple[str, tuple[float, ...]]:
     law = r.choice(["cake", "intermediate", "standard", "complete", "quadratic", "hermia"])
     if law == "quadratic":  # dips first in some
         return law, (R0, R0 * r.uniform(-0.3, 1.0) / tested, R0 * r.uniform(0.3, 3.0) / tested**2)
-    k = r.uniform(0.05, 1.0) * {"cake": 5.0, "intermediate": 2.0, "standard": 1.2, "complete": 0.7}.get(law, 0.6) / tested
+    reach = {"cake": 5.0, "intermediate": 2.0, "standard": 1.2, "complete": 0.7}
+    k = r.uniform(0.05, 1.0) * reach.get(law, 0.6) / tested
     return law, (R0, k, r.uniform(0.2, 1.8)) if law == "hermia" else (R0, k)
 
 

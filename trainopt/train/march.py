@@ -141,12 +141,12 @@ def _needed(stages: Sequence[MarchStage], v: Floats, flow: float, line: float, s
     return np.asarray((train_resistance(stages, v).sum(axis=0) + line) * flow + static)
 
 
-def _course(
-    stages: Sequence[MarchStage], v: Floats, time: Floats, flow: Floats, line: float, static: float
-) -> Course:
+def _course(stages: Sequence[MarchStage], v: Floats, time: Floats, flow: Floats, line: float, static: float) -> Course:
     with np.errstate(invalid="ignore"):
         pressure = train_resistance(stages, v) * flow
-        total = pressure.sum(axis=0) + line * flow + static
+        # Nothing resists a block without stages and line: its flow is infinite and costs no pressure.
+        drop = line * flow if line > 0.0 else np.zeros_like(flow)
+        total = pressure.sum(axis=0) + drop + static
     area = np.array([[s.area] for s in stages]).reshape(len(stages), 1)
     return Course(
         stages=tuple(s.name for s in stages),
@@ -154,7 +154,7 @@ def _course(
         volume=v,
         flow=flow,
         pressure=pressure,
-        line=line * flow,
+        line=drop,
         total=total,
         loading=v / area,
         flux=flow / area,
@@ -183,4 +183,6 @@ def end_pressures(stages: Sequence[MarchStage], volume: float, pressure: float, 
     """Each stage's share of a constant total pressure at the end of the batch, bar, shape (stages,)."""
     resistance = train_resistance(stages, np.array([volume]))[:, 0]
     total = float(resistance.sum()) + line
-    return np.asarray(resistance * ((pressure - static) / total)) if math.isfinite(total) else np.full(len(stages), np.nan)
+    return (
+        np.asarray(resistance * ((pressure - static) / total)) if math.isfinite(total) else np.full(len(stages), np.nan)
+    )
