@@ -36,6 +36,7 @@ DESIGN = {
     "saving": {"area_m2": NUMBER, "area_percent": NUMBER, "cost": NUMBER, "cost_percent": MAYBE},
     "warnings": [{"code": TEXT, "text": TEXT}], "trainopt": TEXT, "inputs": {"*": TEXT},
 }  # fmt: skip
+AREA_PARTS = [{"name": TEXT, "m2": NUMBER, "cost": NUMBER}]
 CURVE = {
     "schema": TEXT, "medium": TEXT, "law": TEXT,
     "parameters": {"*": {"value": NUMBER, "se": MAYBE, "unit": TEXT}},

@@ -50,10 +50,6 @@ def design_document(design: Design) -> Document:
     }
     if design.area_parts is not None:
         document["area_parts"] = _area_parts(design.area_parts)
-    if design.area_parts is not None:
-        document["area_parts"] = [
-            {"name": part.name, "m2": part.area, "cost": part.cost} for part in design.area_parts.parts
-        ]
     if design.status == "infeasible":
         document["reasons"] = [{"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons]
     return document
@@ -212,10 +208,8 @@ def _curve_document(curve: Curve) -> Document:
 
 
 def _area_parts(parts: AreaParts) -> list[Document]:
-    """Parts of the installed area (and cost), and last what the even split would add beside them."""
-    rows = [{"name": part.name, "area_m2": part.area, "cost": part.cost} for part in parts.parts]
-    even = {"area_m2": parts.even_split_area, "cost": parts.even_split_cost}
-    return [*rows, {"name": "even split, beside", **even}]
+    """Parts that add up to the installed area in m² and to the cost per batch."""
+    return [{"name": part.name, "m2": part.area, "cost": part.cost} for part in parts.parts]
 
 
 def _limits(limits: Limits) -> Document:
