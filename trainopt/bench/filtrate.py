@@ -23,10 +23,10 @@ def time_faults(time: Floats, swaps: NDArray[np.bool_], rows: NDArray[np.int64])
 
 
 def swapped(amount: Floats) -> NDArray[np.bool_]:
-    """Readings at which a new cylinder (or a tared balance) starts: it falls to near nothing and grows from
-    there.
+    """Readings at which a new cylinder (or a tared balance) starts: it falls to near nothing and grows on from there.
 
-    Near nothing: at most a fifth of the reading before, or one and a half of the run's usual steps.
+    Near nothing: at most a fifth of the reading before, or one and a half of the run's usual steps; and the reading
+    after it must be within five usual steps, or the small one is a slip of the pen.
     """
     out = np.zeros(len(amount), dtype=bool)
     if len(amount) < 2:
@@ -36,7 +36,8 @@ def swapped(amount: Floats) -> NDArray[np.bool_]:
     for index in np.flatnonzero(step < -NOISE * max(float(np.ptp(amount)), 1e-12)):
         after = amount[index + 1]
         small = after <= max(0.2 * amount[index], 1.5 * growth) and after < 0.5 * amount[index]
-        out[index + 1] = small and (index + 2 >= len(amount) or amount[index + 2] > after)
+        follows = index + 2 >= len(amount) or after < amount[index + 2] <= after + 5.0 * growth
+        out[index + 1] = small and follows
     return out
 
 
@@ -70,9 +71,8 @@ def joined(
         end = int(index + 1 + later[0]) if len(later) else len(out)
         out[index:end] = volume[index:end] + added
         text = (
-            f"the volume restarts at {volume[index] * 1000.0:.4g} mL: taken as a new cylinder, "
-            f"{added * 1000.0:.4g} mL "
-            "added from here on (flow of the readings before, over the time between)"
+            f"the volume restarts at {volume[index] * 1000.0:.4g} mL: taken as a new cylinder, {added * 1000.0:.4g} "
+            "mL added from here on (flow of the readings before, over the time between)"
         )
         flags.append(Flag("cylinder-swap", name, (int(rows[index - 1]), int(rows[index])), text))
     return out, flags

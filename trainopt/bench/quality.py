@@ -68,8 +68,8 @@ def _start_up(run: ReducedRun, starting: NDArray[np.bool_], keep: bool) -> Itera
         settled = run.resistance[min(int(at[-1]) + 1, len(run.time) - 1)]
         text = (
             f"start-up or air purge: {len(at)} reading(s) up to {run.loading[at[-1]]:.3g} L/m2 resist "
-            f"{run.resistance[at[0]] / settled:.2g} times the first settled one; {_left_out(keep)}; purge "
-            f"before loading"
+            f"{run.resistance[at[0]] / settled:.2g} times the first settled one; {_left_out(keep)}; purge before "
+            "loading"
         )
         yield Flag("start-up", run.name, _place(run, int(at[0]), int(at[-1])), text)
 
@@ -83,8 +83,8 @@ def _flow_steps(
             continue
         around = run.flux[[max(first - 1, 0), min(last + 1, len(run.flux) - 1)]]
         text = (
-            f"the flow steps from {around[0]:.0f} to {around[1]:.0f} LMH; "
-            f"{last - first + 1} reading(s) {_left_out(keep)}"
+            f"the flow steps from {around[0]:.0f} to {around[1]:.0f} LMH; {last - first + 1} reading(s) "
+            f"{_left_out(keep)}"
         )
         yield Flag("flow-step", run.name, _place(run, first, last), text)
 
@@ -106,12 +106,10 @@ def _pump_slip(run: ReducedRun, slipping: NDArray[np.bool_], stepping: NDArray[n
         highest = float(np.max(run.pressure[: first + 1]))
         edges = int(stepping[max(first - 1, 0) : last + 2].sum())
         text = (
-            f"pump slip: flux falls to {lowest:.0f} LMH ({lowest / set_point:.0%} of {set_point:.0f}) as "
-            f"pressure "
-            f"backs off from {highest:.2f} to {run.pressure[first : last + 1].min():.2f} bar; resistances "
-            f"there use "
-            f"the measured flux; {edges} reading(s) where the flow changes {_left_out(keep)}; check the "
-            f"pump head and tubing"
+            f"pump slip: flux falls to {lowest:.0f} LMH ({lowest / set_point:.0%} of {set_point:.0f}) as pressure "
+            f"backs off from {highest:.2f} to {run.pressure[first : last + 1].min():.2f} bar; resistances there use "
+            f"the measured flux; {edges} reading(s) where the flow changes {_left_out(keep)}; check the pump head "
+            "and tubing"
         )
         yield Flag("pump-slip", run.name, _place(run, first, last), text)
 
@@ -124,8 +122,8 @@ def _off_set_point(run: ReducedRun, steady: NDArray[np.bool_]) -> Iterator[Flag]
     for first, last in _stretches(off, shortest=3):
         mean = float(np.mean(run.flux[first : last + 1]))
         text = (
-            f"flow off its set point: {mean:.0f} LMH on average against {set_point:.0f} for the run; "
-            "resistances use the measured flux and stay in the fit"
+            f"flow off its set point: {mean:.0f} LMH on average against {set_point:.0f} for the run; resistances "
+            "use the measured flux and stay in the fit"
         )
         yield Flag("off-set-point", run.name, _place(run, first, last), text)
 
@@ -135,9 +133,8 @@ def _shrinking(run: ReducedRun) -> Iterator[Flag]:
     at = np.flatnonzero(fall > max(2.0 * run.volume_step, 1e-9))
     if len(at):
         text = (
-            f"the filtrate shrinks {len(at)} time(s), by up to {fall[at].max() * 1000.0:.3g} mL: taken as "
-            f"reading noise; "
-            "check balance and tubing"
+            f"the filtrate shrinks {len(at)} time(s), by up to {fall[at].max() * 1000.0:.3g} mL: taken as reading "
+            "noise; check balance and tubing"
         )
         yield Flag("volume-falls", run.name, _place(run, int(at[0]), int(at[-1]) + 1), text)
 
@@ -177,8 +174,7 @@ def _breakthrough(run: ReducedRun) -> Iterator[Flag]:
     first = breakthrough(run)
     if first is not None:
         text = (
-            f"breakthrough: from {run.loading[first]:.1f} L/m2 on the pressure levels off while turbidity "
-            f"rises to "
+            f"breakthrough: from {run.loading[first]:.1f} L/m2 on the pressure levels off while turbidity rises to "
             f"{np.nanmax(run.turbidity[first:]):.3g} NTU; that loading is the turbidity endpoint"
         )
         yield Flag("breakthrough", run.name, _place(run, first, len(run.rows) - 1), text)
@@ -194,9 +190,8 @@ def _mass_balance(run: ReducedRun) -> Iterator[Flag]:
     if fed > 0.0 and abs(fed - out) > BALANCE * fed:
         text = (
             f"mass balance: {fed * 1000.0:.0f} mL fed against {out * 1000.0:.0f} mL of filtrate "
-            f"({out / fed - 1.0:+.0%}) "
-            "between the same readings; look for a leak, a wrong density or tare, or a vessel that was "
-            "not read"
+            f"({out / fed - 1.0:+.0%}) between the same readings; look for a leak, a wrong density or tare, or a "
+            "vessel that was not read"
         )
         yield Flag("mass-balance", run.name, _place(run, int(read[0]), last), text)
 

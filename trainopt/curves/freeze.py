@@ -32,8 +32,8 @@ def frozen_text(medium: Medium, curve: Curve, target: Path) -> str:
     about = {"about": kept.pop("about")} if "about" in kept else {}
     document = {"medium": target.stem, **about, "curve": _curve(medium, curve, target), **kept}
     head = (
-        f"# Frozen by trainopt from {medium.source.shown}: the curve by its parameters, as the runs named "
-        f"below gave it.\n"
+        f"# Frozen by trainopt from {medium.source.shown}: the curve by its parameters, as the runs named below "
+        "gave it.\n"
     )
     return head + yaml.dump(document, Dumper=_Dumper, sort_keys=False, allow_unicode=True, width=110)
 

@@ -82,8 +82,7 @@ def _origin_flags(medium: Medium, origin: Origin) -> Iterator[Flag]:
     limits = medium.limits
     if (limits.turbidity, limits.pool_turbidity) != (origin.turbidity, origin.pool_turbidity):
         text = (
-            "the turbidity limits have changed since the curve was frozen: the loading where they are "
-            "reached still "
-            "is that of the old ones; fit and freeze again"
+            "the turbidity limits have changed since the curve was frozen: the loading where they are reached "
+            "still is that of the old ones; fit and freeze again"
         )
         yield Flag("turbidity-limit-changed", "", None, text)

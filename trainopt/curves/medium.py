@@ -62,11 +62,9 @@ def _undecided(evidence: Evidence) -> str:
     """Why `auto` refuses to pick, and what would let it."""
     names = ", ".join(sorted({evidence.chosen.law, *(rival.law for rival in evidence.rivals)}))
     return (
-        f"auto cannot tell between {names}: they fit the runs equally well (within 2 AICc units) but "
-        f"differ by up to "
-        f"{evidence.spread:.0%} in resistance inside the tested range; expected a longer run, more "
-        f"readings or a second "
-        "lot, or one of these laws by name"
+        f"auto cannot tell between {names}: they fit the runs equally well (within 2 AICc units) but differ by up "
+        f"to {evidence.spread:.0%} in resistance inside the tested range; expected a longer run, more readings or a "
+        "second lot, or one of these laws by name"
     )
 
 

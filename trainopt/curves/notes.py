@@ -44,10 +44,9 @@ def _ended_early(runs: Sequence[ReducedRun], endpoint: float, turbidity: float |
         )
         if run.operation == "constant-flow" and highest < 0.9 * endpoint and not stopped_by_turbidity:
             text = (
-                f"ended at {highest:.2f} bar and {run.loading[run.used].max():.0f} L/m2, below the "
-                f"pressure endpoint of "
-                f"{endpoint:.2f} bar: the medium may take more loading than this run shows; run to the "
-                f"endpoint"
+                f"ended at {highest:.2f} bar and {run.loading[run.used].max():.0f} L/m2, below the pressure "
+                f"endpoint of {endpoint:.2f} bar: the medium may take more loading than this run shows; run to the "
+                "endpoint"
             )
             yield Flag("ended-early", run.name, None, text)
 
@@ -60,8 +59,7 @@ def _outliers(evidence: Evidence) -> Iterator[Flag]:
         what = "∫ΔP dt" if readings.integral[index] else "resistance"
         text = (
             f"outlier: {what} at {readings.loading[index]:.1f} L/m2 is {off:+.0%} off the curve; kept, its pull on "
-            f"the fit "
-            f"bounded to {evidence.pull[index]:.0%} of a normal reading's; check it"
+            f"the fit bounded to {evidence.pull[index]:.0%} of a normal reading's; check it"
         )
         row = int(readings.row[index])
         yield Flag("outlier", readings.runs[int(readings.run[index])], (row, row), text)
@@ -74,9 +72,8 @@ def _little_fouling(medium: str, evidence: Evidence) -> Iterator[Flag]:
     growth = law.peak(top, *fit.parameters) / law.resistance(0.0, *fit.parameters)
     if growth < LITTLE_FOULING:
         text = (
-            f"little fouling: the resistance grows {growth:.2f} times over {top:.0f} L/m2, too little to "
-            f"tell one law from "
-            "another; a longer run would"
+            f"little fouling: the resistance grows {growth:.2f} times over {top:.0f} L/m2, too little to tell one "
+            "law from another; a longer run would"
         )
         yield Flag("little-fouling", medium, None, text)
 
@@ -85,9 +82,8 @@ def _open_lots(medium: str, evidence: Evidence) -> Iterator[Flag]:
     if evidence.prior > 0.0:
         text = (
             "how fast each lot fouls can hardly be told from these runs, since the resistance grows little or is "
-            "noisy; "
-            "the lots' fouling multipliers are held near 1 (a standard deviation of 0.5 in ln κ); longer runs would "
-            "tell"
+            "noisy; the lots' fouling multipliers are held near 1 (a standard deviation of 0.5 in ln κ); longer "
+            "runs would tell"
         )
         yield Flag("lot-fouling-open", medium, None, text)
 
@@ -97,8 +93,7 @@ def _rivals(medium: str, evidence: Evidence) -> Iterator[Flag]:
         names = ", ".join(sorted(rival.law for rival in evidence.rivals))
         text = (
             f"{names} fit(s) as well as {evidence.chosen.law} (within 2 AICc units) and differ(s) by at most "
-            f"{evidence.spread:.1%} inside the tested range; a longer run or a second lot would tell them "
-            f"apart"
+            f"{evidence.spread:.1%} inside the tested range; a longer run or a second lot would tell them apart"
         )
         yield Flag("law-not-unique", medium, None, text)
 
@@ -120,9 +115,8 @@ def _trade_off(medium: str, evidence: Evidence) -> Iterator[Flag]:
     if abs(correlation) > TRADE_OFF:
         text = (
             f"n and k trade off (correlation {correlation:+.2f}): n is {fit.parameters[j]:.2f} ± "
-            f"{np.sqrt(variance[j]):.2f}, "
-            "and other pairs draw nearly the same curve inside the tested range; do not read a mechanism "
-            "from n alone"
+            f"{np.sqrt(variance[j]):.2f}, and other pairs draw nearly the same curve inside the tested range; do "
+            "not read a mechanism from n alone"
         )
         yield Flag("n-and-k", medium, None, text)
 
