@@ -7,14 +7,18 @@ from __future__ import annotations
 
 import typer
 
+from trainopt.cli.audit import audit
 from trainopt.cli.check import check
 from trainopt.cli.curve import curve
 from trainopt.cli.design import design
 from trainopt.cli.fields import fields
 from trainopt.cli.new import new
+from trainopt.cli.rate import rate
 from trainopt.cli.report import report
 from trainopt.cli.sheet import sheet
+from trainopt.cli.simulate import simulate
 from trainopt.cli.status import guarded
+from trainopt.cli.sweep import sweep
 
 EXIT_STATUSES = (
     "Exit status: 0 done, 1 a defect of the program, 2 the input is wrong, 3 no design exists, "
@@ -50,5 +54,5 @@ def everywhere(
     """Options before any command."""
 
 
-for command in (design, curve, check, sheet, report, new, fields):
+for command in (design, sweep, rate, simulate, audit, curve, check, sheet, report, new, fields):
     program.command()(guarded(command))

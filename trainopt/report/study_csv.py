@@ -1,4 +1,5 @@
-"""Sweeps and courses as CSV: one line per cell or reading, units in the headings, an empty field where a number does not exist."""
+"""Sweeps and courses as CSV: one line per cell or reading, units in the headings, an empty field where a number
+does not exist."""
 
 from __future__ import annotations
 
@@ -43,7 +44,12 @@ def simulate_csv(simulation: Simulation) -> str:
     stages = [name for block in simulation.blocks for name in block.lots[0].course.stages]
     heading = ["block", "lot", "time (h)", "volume (L)", "flow (L/h)", "total (bar)", "line (bar)"]
     for stage in stages:
-        heading += [f"{stage} pressure (bar)", f"{stage} loading (L/m2)", f"{stage} flux (LMH)", f"{stage} turbidity (NTU)"]
+        heading += [
+            f"{stage} pressure (bar)",
+            f"{stage} loading (L/m2)",
+            f"{stage} flux (LMH)",
+            f"{stage} turbidity (NTU)",
+        ]
     rows: list[list[object]] = []
     for block in simulation.blocks:
         for lot in block.lots:

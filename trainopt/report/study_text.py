@@ -33,9 +33,13 @@ if TYPE_CHECKING:
 MOST_ROWS = 60
 """Rows of a table on a terminal: JSON and CSV hold them all."""
 
+MOST_CHANGES = 20
+"""Changes listed on a terminal: JSON holds them all."""
+
 
 def sweep_text(sweep: Sweep, width: int = WIDTH, color: bool = False) -> str:
-    """A sweep of one axis as a table of cells, of two as a summary; where the pick changes; why cells have no design."""
+    """A sweep of one axis as a table of cells, of two as a summary; where the pick changes; why cells have no
+    design."""
     page = Page()
     page.line(sweep.scenario, "bold")
     page.line(_sweep_headline(sweep))
@@ -69,8 +73,9 @@ def _cells(page: Page, sweep: Sweep) -> None:
     page.heading("Designs")
     axis = sweep.axes[0]
     cells = _thinned(sweep.cells)
-    areas, evens = aligned(cell.area for cell in cells), aligned(
-        None if cell.even_split is None else cell.even_split.area for cell in cells
+    areas, evens = (
+        aligned(cell.area for cell in cells),
+        aligned(None if cell.even_split is None else cell.even_split.area for cell in cells),
     )
     rows = [
         (
@@ -98,9 +103,9 @@ def _thinned(items: Sequence[SweepCell]) -> Sequence[SweepCell]:
     return [items[round(k * step)] for k in range(MOST_ROWS)]
 
 
-def _left_out(page: Page, total: int, shown: int, what: str) -> None:
+def _left_out(page: Page, total: int, shown: int, what: str, where: str = "--json and --csv hold all") -> None:
     if shown < total:
-        page.line(f"  {shown} of {total} {what} shown; --json and --csv hold all.")
+        page.line(f"  {shown} of {total} {what} shown; {where}.")
 
 
 def picks_text(picks: Sequence[Pick]) -> str:
@@ -113,9 +118,7 @@ def _map_rows(page: Page, sweep: Sweep) -> None:
     first, second = sweep.axes
     page.heading(f"By {first.field}, over {second.field}")
     rows = []
-    groups = [
-        [cell for cell in sweep.cells if cell.at[0] == value] for value in first.values
-    ]
+    groups = [[cell for cell in sweep.cells if cell.at[0] == value] for value in first.values]
     for value, cells in list(zip(first.values, groups, strict=True))[:MOST_ROWS]:
         solved = [cell for cell in cells if cell.status == "optimal" and cell.objective is not None]
         best = [cell.objective for cell in solved if cell.objective is not None]
@@ -137,12 +140,12 @@ def _map_rows(page: Page, sweep: Sweep) -> None:
 
 def _changes(page: Page, sweep: Sweep) -> None:
     page.heading(f"Where the pick changes ({len(sweep.changes)} times)")
-    rows = [_change_row(sweep, change) for change in sweep.changes[:MOST_ROWS]]
+    rows = [_change_row(sweep, change) for change in sweep.changes[:MOST_CHANGES]]
     headings = ["Field", "Changes between", "To"]
     if len(sweep.axes) > 1:
         headings.insert(2, "At")
     page.table(headings, rows, len(headings))
-    _left_out(page, len(sweep.changes), len(rows), "changes")
+    _left_out(page, len(sweep.changes), len(rows), "changes", "--json holds all")
 
 
 def _change_row(sweep: Sweep, change: Change) -> list[str]:
@@ -151,7 +154,9 @@ def _change_row(sweep: Sweep, change: Change) -> list[str]:
     row = [change.axis, f"{low} and {high} {axis.unit}".rstrip()]
     others = [other for other in sweep.axes if other is not axis]
     if others:
-        row.append(", ".join(f"{o.field} {_value(o, v)} {o.unit}".rstrip() for o, v in zip(others, change.others, strict=True)))
+        row.append(
+            ", ".join(f"{o.field} {_value(o, v)} {o.unit}".rstrip() for o, v in zip(others, change.others, strict=True))
+        )
     row.append(_difference(change.before, change.after))
     return row
 
@@ -191,7 +196,8 @@ def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: boo
     page.line(rating.scenario, "bold")
     page.line(_rate_headline(rating))
     page.line(
-        f"Largest batch in {duration(rating.time)}: {fixed(rating.largest_volume, 1)} L, held by {limit_text(rating.limited_by)}. "
+        f"Largest batch in {duration(rating.time)}: {fixed(rating.largest_volume, 1)} L, "
+        f"held by {limit_text(rating.limited_by)}. "
         f"Shortest time for {trimmed(rating.volume)} L: {duration(rating.shortest_time)}."
     )
     page.line(
@@ -203,7 +209,12 @@ def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: boo
     page.table(
         ("Lot", "Largest batch\nL", "Shortest time\nh", *names),
         [
-            (lot.lot, fixed(lot.largest_volume, 1), fixed(lot.shortest_time, 2), *(pressure.number(p) for p in lot.pressures))
+            (
+                lot.lot,
+                fixed(lot.largest_volume, 1),
+                fixed(lot.shortest_time, 2),
+                *(pressure.number(p) for p in lot.pressures),
+            )
             for lot in rating.lots
         ],
     )
@@ -215,7 +226,13 @@ def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: boo
         page.table(
             ("Batch\nL", "Limited by", "Goes through", "Shortest time\nh", "Safety\nfactor"),
             [
-                (trimmed(b.volume), limit_text(b.limited_by), "yes" if b.passes else "no", fixed(b.shortest_time, 2), fixed(b.safety_factor, 2))
+                (
+                    trimmed(b.volume),
+                    limit_text(b.limited_by),
+                    "yes" if b.passes else "no",
+                    fixed(b.shortest_time, 2),
+                    fixed(b.safety_factor, 2),
+                )
                 for b in rating.batches
             ],
             2,
@@ -275,16 +292,20 @@ def simulate_text(simulation: Simulation, units: str = "bar", width: int = WIDTH
     page, pressure = Page(), Pressure(units)
     page.line(simulation.scenario, "bold")
     page.line(
-        f"{trimmed(simulation.volume)} L through {picks_text(simulation.picks)}, areas divided by {trimmed(simulation.derated_by)}."
+        f"{trimmed(simulation.volume)} L through {picks_text(simulation.picks)}, "
+        f"areas divided by {trimmed(simulation.derated_by)}."
     )
     if math.isinf(simulation.needed):
         page.line("A stage plugs before the batch is through.")
     elif simulation.over_run > 0.0:
         page.line(
-            f"The worst lot takes {duration(simulation.needed)} with setups, {duration(simulation.over_run)} more than allowed."
+            f"The worst lot takes {duration(simulation.needed)} with setups, "
+            f"{duration(simulation.over_run)} more than allowed."
         )
     else:
-        page.line(f"The worst lot takes {duration(simulation.needed)} with setups; {duration(simulation.time)} are allowed.")
+        page.line(
+            f"The worst lot takes {duration(simulation.needed)} with setups; {duration(simulation.time)} are allowed."
+        )
     for block in simulation.blocks:
         flow = "" if block.flow is None else f", set to {significant(block.flow)} L/h"
         page.heading(f"{block.block}: {_MODES.get(block.mode, block.mode)}{flow}; limit {pressure.text(block.limit)}")
@@ -302,7 +323,16 @@ def simulate_text(simulation: Simulation, units: str = "bar", width: int = WIDTH
         ]
         stages = [f"{name}\n{pressure.unit}" for name in block.lots[0].course.stages]
         page.table(
-            ("Lot", "Time\nh", "Over-run\nh", "Limit met at\nL", f"Highest\n{pressure.unit}", "Last flow\nL/h", *stages), rows
+            (
+                "Lot",
+                "Time\nh",
+                "Over-run\nh",
+                "Limit met at\nL",
+                f"Highest\n{pressure.unit}",
+                "Last flow\nL/h",
+                *stages,
+            ),
+            rows,
         )
     page.heading("Cautions")
     page.items(CAUTIONS)
@@ -312,7 +342,9 @@ def simulate_text(simulation: Simulation, units: str = "bar", width: int = WIDTH
 def audit_text(audit: Audit, units: str = "bar", width: int = WIDTH, color: bool = False) -> str:
     """An audit: a summary of all cases, then each case's verdict and where the pressure went."""
     page, pressure = Page(), Pressure(units)
-    page.line(f"The even split beside the optimum, {len(audit.cases)} case{'' if len(audit.cases) == 1 else 's'}", "bold")
+    page.line(
+        f"The even split beside the optimum, {len(audit.cases)} case{'' if len(audit.cases) == 1 else 's'}", "bold"
+    )
     if audit.cases:
         page.table(
             ("Case", "Area\nm²", "Even\nm²", "Saved", "Cost\nper batch", "Even", "Saved", "Modules", "Even"),
@@ -323,8 +355,8 @@ def audit_text(audit: Audit, units: str = "bar", width: int = WIDTH, color: bool
         page.line(case.verdict)
         if case.waste is not None:
             bound = (
-                f"With modules of any size the even split could waste at most {percent(case.waste.percent)} on this route; "
-                f"for stages that do not foul never more than a factor {trimmed(case.waste.factor)}."
+                f"With modules of any size the even split could waste at most {percent(case.waste.percent)} "
+                f"on this route; for stages that do not foul never more than a factor {trimmed(case.waste.factor)}."
             )
             page.line(bound)
         if case.shifts:

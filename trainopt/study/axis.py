@@ -1,9 +1,9 @@
 """An axis of a sweep as a user writes it: a field and the values that it takes.
 
-    batch.volume=500 L..5000 L/19          19 values, evenly spaced, ends included
-    batch.volume=500 L..5000 L/19 log      the same, each a fixed factor above the last
-    batch.volume=1000 L, 2000 L, 2500 L    these values
-    safety_factor=1..2/11                  a bare number where the field has no unit
+batch.volume=500 L..5000 L/19          19 values, evenly spaced, ends included
+batch.volume=500 L..5000 L/19 log      the same, each a fixed factor above the last
+batch.volume=1000 L, 2000 L, 2500 L    these values
+safety_factor=1..2/11                  a bare number where the field has no unit
 """
 
 from __future__ import annotations

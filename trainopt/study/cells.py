@@ -1,7 +1,7 @@
 """One cell of a sweep after another: what `design` would pick, from tables that many cells share.
 
-Cells that differ in the batch time alone share one frontier and one table of the even split. Where the frontier would be too large,
-or the basis is one that it does not serve, each cell is picked by the solver itself.
+Cells that differ in the batch time alone share one frontier and one table of the even split. Where the frontier
+would be too large, or the basis is one that it does not serve, each cell is picked by the solver itself.
 """
 
 from __future__ import annotations
@@ -23,7 +23,6 @@ from trainopt.train.build import prune
 from trainopt.train.options import take
 from trainopt.train.problem import Candidate, DesignProblem
 from trainopt.train.results import Pick
-
 
 SHORTEST = 1e-9
 """A block time in h that stands for none at all (a block that neither filters nor resists)."""
@@ -110,7 +109,8 @@ class Cells:
         if self._fastest is None:
             self._fastest = _fastest(self.full)
         if math.isfinite(self._fastest):
-            return f"the batch takes at least {self._fastest:.4g} h with the largest options; {problem.time:.4g} h are allowed"
+            least = f"the batch takes at least {self._fastest:.4g} h with the largest options"
+            return f"{least}; {problem.time:.4g} h are allowed"
         return "no pick holds every pressure, flow and loading limit, however long the batch may take"
 
 
@@ -144,7 +144,12 @@ def _bought(problem: DesignProblem, route: Route) -> _Bought:
         area=total_area(route),
         cost=cost_of(choices),
         picks=tuple(
-            Pick(c.stage.name, c.candidate.medium, c.candidate.options.module[c.option], int(c.candidate.options.count[c.option]))
+            Pick(
+                c.stage.name,
+                c.candidate.medium,
+                c.candidate.options.module[c.option],
+                int(c.candidate.options.count[c.option]),
+            )
             for c in choices
         ),
         weight=math.fsum(c.weight for c in choices),

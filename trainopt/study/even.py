@@ -1,7 +1,9 @@
-"""The even split for any time allowed, without a root to find: a table of the times from which each option is large enough.
+"""The even split for any time allowed, without a root to find: a table of the times from which each option is
+large enough.
 
-An option's area is at least the recommended one (`optimize/even_split.py`) exactly if its own demand fits its even share:
-n·D + r·V ≤ (P − Pstatic)·t, D ≤ ΔPmax·t and τ ≤ t, for D falls with area. A test holds this against the rule itself.
+An option's area is at least the recommended one (`optimize/even_split.py`) exactly if its own demand fits its
+even share: n·D + r·V ≤ (P − Pstatic)·t, D ≤ ΔPmax·t and τ ≤ t, for D falls with area. A test holds this against
+the rule itself.
 """
 
 from __future__ import annotations
@@ -36,7 +38,8 @@ class _Ladder:
 
 @dataclass(frozen=True)
 class _Sized:
-    """One route sized: what it weighs and costs (hours left out), its area, the times its inlet ratings ask for, by block."""
+    """One route sized: what it weighs and costs (hours left out), its area, the times its inlet ratings ask
+    for, by block."""
 
     weight: float
     media: tuple[str, ...]
@@ -96,7 +99,8 @@ class EvenTable:
     def _size(self, nodes: tuple[Node, ...], picked: tuple[int, ...]) -> _Sized:
         choices = [Choice(n.spec, n.candidate, k - n.options.start) for n, k in zip(nodes, picked, strict=True)]
         route: Route = tuple(
-            tuple(c for c, n in zip(choices, nodes, strict=True) if n.block == b) for b in range(len(self.problem.blocks))
+            tuple(c for c, n in zip(choices, nodes, strict=True) if n.block == b)
+            for b in range(len(self.problem.blocks))
         )
         inlet = []
         for block, own in zip(self.problem.blocks, route, strict=True):

@@ -1,15 +1,15 @@
 """Every best design of a problem at once, for any time allowed: exact, by joining the stages' options.
 
-Within a block the labels of model.md, section 5 (the staircase), are joined from the last stage upstream, one demand per lot, so that
-inlet ratings and the worst lot are exact; then block after block under the shared time. What limits a pick
-is its shortest block time, as in `optimize/times.py`, so that the tables hold for every batch time: a sweep over time
-reads them, where a solver would start again. A test holds them against the solver and against full enumeration.
+Within a block the labels of model.md, section 5 (the staircase), are joined from the last stage upstream, one
+demand per lot, so that inlet ratings and the worst lot are exact; then block after block under the shared time.
+What limits a pick is its shortest block time, as in `optimize/times.py`, so that the tables hold for every
+batch time: a sweep over time reads them, where a solver would start again. A test holds them against the solver
+and against full enumeration.
 """
 
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
 from dataclasses import dataclass
 
 import numpy as np
@@ -67,8 +67,8 @@ def frontier(problem: DesignProblem) -> Frontier:
     tables = [_block_table(index, b, arcs) for b in range(len(problem.blocks))]
     highest = sum(max((float(t.objective.max()) for t in table.values() if len(t)), default=0.0) for table in tables)
     tie = 2.0 * TIE * max(1.0, highest)
-    for b, table in enumerate(tables):
-        states = _after_block(index, b, states, table, arcs, tie)
+    for table in tables:
+        states = _after_block(index.problem, states, table, arcs, tie)
     done = [labels for node, labels in states.items() if (node, SINK) in arcs]
     labels = thinned(_stacked(done), tie)
     labels = labels.take(np.lexsort((labels.objective, labels.finish)))
@@ -81,16 +81,16 @@ def _nothing() -> Complete:
 
 
 def _after_block(
-    index: Index, b: int, states: dict[int, Complete], table: dict[Ends | None, Complete], arcs: set[Ends], tie: float
+    problem: DesignProblem, states: dict[int, Complete], table: dict[Ends | None, Complete], arcs: set[Ends], tie: float
 ) -> dict[int, Complete]:
     """The labels after one more block, by the last used node."""
     reached: dict[int, list[Complete]] = {}
     for tail, labels in states.items():
         for ends, block in table.items():
             if ends is None:
-                reached.setdefault(tail, []).append(_joined(index.problem, labels, block))
+                reached.setdefault(tail, []).append(_joined(problem, labels, block))
             elif (tail, ends[0]) in arcs:
-                reached.setdefault(ends[1], []).append(_joined(index.problem, labels, block))
+                reached.setdefault(ends[1], []).append(_joined(problem, labels, block))
     return {node: thinned(_stacked(parts), tie) for node, parts in reached.items()}
 
 
@@ -156,7 +156,9 @@ def _block_table(index: Index, b: int, arcs: set[Ends]) -> dict[Ends | None, Com
     return {ends: labels for ends, labels in table.items() if len(labels)}
 
 
-def _alone(index: Index, block: Block, node: Node, order: Floats, lots: np.ndarray[tuple[int], np.dtype[np.intp]]) -> Partial:
+def _alone(
+    index: Index, block: Block, node: Node, order: Floats, lots: np.ndarray[tuple[int], np.dtype[np.intp]]
+) -> Partial:
     """A node's options as labels: nothing downstream of it yet."""
     one, options = node.candidate, node.candidate.options
     demand = options.demand[lots].T
@@ -210,7 +212,7 @@ def _stacked_partial(parts: list[Partial]) -> Partial:
 def _shortest(problem: DesignProblem, block: Block, labels: Partial) -> Floats:
     """The shortest block time of each label, h: its own, the pressure budget's, the pump's."""
     pressure = (labels.demand.max(axis=1, initial=0.0) + block.line * problem.volume) / block.head
-    return np.maximum(np.maximum(labels.least, pressure), problem.volume / block.max_flow)
+    return np.asarray(np.maximum(np.maximum(labels.least, pressure), problem.volume / block.max_flow))
 
 
 def _in_time(problem: DesignProblem, block: Block, labels: Partial) -> Partial:
@@ -239,8 +241,3 @@ def _highest(index: Index) -> float:
     problem = index.problem
     hours = problem.hour_rate * problem.time * len(problem.blocks) if problem.objective == "cost" else 0.0
     return sum(dearest.values()) + (hours if math.isfinite(hours) else 0.0)
-
-
-def picks_of(index: Index, places: Iterator[int]) -> tuple[tuple[str, str, str, int], ...]:
-    """(stage, medium, module, count) of each option picked, in flow order."""
-    return tuple(index.names[k] for k in places if k >= 0)

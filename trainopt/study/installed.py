@@ -1,4 +1,5 @@
-"""A train that stands: its stages with fixed areas, and how long its blocks take at any batch volume (model.md, section 1).
+"""A train that stands: its stages with fixed areas, and how long its blocks take at any batch volume (model.md,
+section 1).
 
 The volume is an array throughout, so that the largest batch is found in a few calls.
 """
@@ -26,7 +27,8 @@ Bools = NDArray[np.bool_]
 
 @dataclass(frozen=True, eq=False)
 class Train:
-    """A fixed train: `problem` with one option per used stage (nothing left out for its loading), and that pick as a route."""
+    """A fixed train: `problem` with one option per used stage (nothing left out for its loading), and that pick
+    as a route."""
 
     problem: DesignProblem
     route: Route
@@ -152,7 +154,7 @@ def fixed_train(
     route: list[tuple[Choice, ...]] = []
     for block, spec in zip(problem.blocks, scenario.blocks, strict=True):
         choices = tuple(
-            _fixed(case, problem, block, stage, spec, installed[stage.name], len(lots))
+            _fixed(case, problem, stage, spec, installed[stage.name], len(lots))
             for stage in block.stages
             if stage.name in installed
         )
@@ -167,7 +169,7 @@ def fixed_train(
 
 
 def _fixed(
-    case: Case, problem: DesignProblem, block: Block, stage: Stage, spec: BlockSpec, bought: tuple[str, int], lots: int
+    case: Case, problem: DesignProblem, stage: Stage, spec: BlockSpec, bought: tuple[str, int], lots: int
 ) -> Choice:
     """A stage with its one option; the option table says nothing yet of its demand, which is the volume's to say."""
     module, count = bought
@@ -175,6 +177,8 @@ def _fixed(
     medium = workspace.media[workspace.catalog.modules[module].medium]
     own: Candidate = next(c for c in stage.candidates if c.medium == medium.medium)
     duty = Duty(problem.volume, problem.safety_factor, problem.objective, spec.operation)
-    options = module_options(medium, module, workspace.catalog, case.scenario.costs, duty, np.array([count], dtype=np.int64))
+    options = module_options(
+        medium, module, workspace.catalog, case.scenario.costs, duty, np.array([count], dtype=np.int64)
+    )
     candidate = replace(own, options=replace(options, demand=np.zeros((lots, 1))), dropped=())
     return Choice(replace(stage, optional=False, candidates=(candidate,)), candidate, 0)

@@ -1,4 +1,5 @@
-"""The journal of a sweep: what is done, one line per job, so that a sweep that was killed goes on where it stopped."""
+"""The journal of a sweep: what is done, one line per job, so that a sweep that was killed goes on where it
+stopped."""
 
 from __future__ import annotations
 
@@ -89,7 +90,13 @@ def _found(entry: dict[str, Any]) -> Found:
     return Found(
         cells=tuple(_cell(cell) for cell in entry["cells"]),
         changes=tuple(
-            Change(c["axis"], (c["between"][0], c["between"][1]), _picks(c["before"]), _picks(c["after"]), tuple(c["others"]))
+            Change(
+                c["axis"],
+                (c["between"][0], c["between"][1]),
+                _picks(c["before"]),
+                _picks(c["after"]),
+                tuple(c["others"]),
+            )
             for c in entry["changes"]
         ),
     )

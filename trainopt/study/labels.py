@@ -1,8 +1,9 @@
 """Tables of partial picks ("labels") and how they are joined and thinned without losing a best design.
 
-A label is what is left to know about a pick of a block or train: what it costs, how long it takes at least, what
-pressure–time it spends, and where it stands in the fixed order that breaks the last ties (model.md, section 4). Thinning drops only labels
-that another one beats or equals in everything a design is chosen by, so that the best of what is left is the best of all.
+A label is what is left to know about a pick of a block or train: what it costs, how long it takes at least,
+what pressure–time it spends, and where it stands in the fixed order that breaks the last ties (model.md,
+section 4). Thinning drops only labels that another one beats or equals in everything a design is chosen by, so
+that the best of what is left is the best of all.
 """
 
 from __future__ import annotations
@@ -29,8 +30,9 @@ class TooManyLabelsError(Exception):
 class Partial:
     """Picks of the last stages of a block: arrays of shape (n,), `demand` (n, lots), `picks` (n, stages used).
 
-    `weight` what the objective counts, `least` the shortest block time in h that flux and the stages' own ratings ask for,
-    `demand` Σ D in bar·h per lot, `order` the place in the fixed order, `picks` places in the flat list of options.
+    `weight` what the objective counts, `least` the shortest block time in h that flux and the stages' own
+    ratings ask for, `demand` Σ D in bar·h per lot, `order` the place in the fixed order, `picks` places in the
+    flat list of options.
     """
 
     weight: Floats
@@ -53,8 +55,8 @@ class Partial:
 class Complete:
     """Picks of whole blocks: arrays of shape (n,), `picks` (n, stages), -1 where a stage is not used.
 
-    `objective` (hours included where they cost), `finish` the shortest time in h with setups, `spent` Σ_b D_b/(P_b − Pstatic_b)
-    for each block's worst lot in h, `order` as above.
+    `objective` (hours included where they cost), `finish` the shortest time in h with setups, `spent` Σ_b
+    D_b/(P_b − Pstatic_b) for each block's worst lot in h, `order` as above.
     """
 
     objective: Floats
@@ -117,8 +119,9 @@ def _running_argmin(values: Floats) -> NDArray[np.intp]:
 def thinned(labels: Complete, tie: float) -> Complete:
     """Labels that are the best design for some time allowed, ties included; objectives within `tie` may tie.
 
-    Dropped are, first, those that a clearly better one (by more than `tie`) outpaces; then, among those alike in the objective
-    to rounding, those that another outpaces with less spent, or with the same spent and a lower place in the order.
+    Dropped are, first, those that a clearly better one (by more than `tie`) outpaces; then, among those alike
+    in the objective to rounding, those that another outpaces with less spent, or with the same spent and a
+    lower place in the order.
     """
     if len(labels) < 2:
         return labels
@@ -131,7 +134,8 @@ def thinned(labels: Complete, tie: float) -> Complete:
 
 
 def _beaten_among_equals(labels: Complete) -> NDArray[np.bool_]:
-    """Among labels of one objective: those slower than another that spends clearly less, and repeats of a lower order."""
+    """Among labels of one objective: those slower than another that spends clearly less, and repeats of a lower
+    order."""
     n = len(labels)
     gap = np.diff(labels.objective) > EQUAL * np.maximum(np.abs(labels.objective[1:]), 1.0)
     group = np.concatenate([[0], np.cumsum(gap)])

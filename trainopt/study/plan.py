@@ -1,4 +1,5 @@
-"""What a sweep has to compute, cut into jobs that any process can do: groups of cells, and intervals where the pick changes."""
+"""What a sweep has to compute, cut into jobs that any process can do: groups of cells, and intervals where the
+pick changes."""
 
 from __future__ import annotations
 
@@ -38,7 +39,8 @@ class Group:
 
 @dataclass(frozen=True)
 class Interval:
-    """Two neighbors along one axis whose picks differ, the other axes' values in `at` (the axis's own is not read)."""
+    """Two neighbors along one axis whose picks differ, the other axes' values in `at` (the axis's own is not
+    read)."""
 
     axis: int
     at: tuple[float, ...]

@@ -28,8 +28,9 @@ TIGHT = 1e-6
 
 @dataclass(frozen=True)
 class LotRating:
-    """One lot alone: its largest batch in L, the shortest time in h for the scenario's batch (None: never), and the pump's pressure in
-    bar at the end of that batch by block, at the block times of the rating (None where a stage is past its pole)."""
+    """One lot alone: its largest batch in L, the shortest time in h for the scenario's batch (None: never), and
+    the pump's pressure in bar at the end of that batch by block, at the block times of the rating (None where a
+    stage is past its pole)."""
 
     lot: str
     largest_volume: float
@@ -52,10 +53,10 @@ class BatchRating:
 class Rating:
     """What a fixed train can do with the scenario's batch.
 
-    `status` "passes" or "fails"; `volume` L and `time` h as the scenario has them; `largest_volume` L in that time, `shortest_time` h for
-    that volume (None: never); `safety_factor` the largest common derating with which the batch still goes through (None: with none);
-    `derated_by` what all areas were divided by; `limited_by` what holds the largest batch. `blocks` as in a design, in the
-    time allowed.
+    `status` "passes" or "fails"; `volume` L and `time` h as the scenario has them; `largest_volume` L in that
+    time, `shortest_time` h for that volume (None: never); `safety_factor` the largest common derating with
+    which the batch still goes through (None: with none); `derated_by` what all areas were divided by;
+    `limited_by` what holds the largest batch. `blocks` as in a design, in the time allowed.
     """
 
     scenario: str
@@ -71,6 +72,7 @@ class Rating:
     blocks: tuple[BlockDesign, ...]
     lots: tuple[LotRating, ...]
     batches: tuple[BatchRating, ...]
+    block_names: tuple[str, ...] = ()
     warnings: tuple[Notice, ...] = ()
     inputs: Mapping[str, str] = field(default_factory=dict)
 
@@ -84,8 +86,9 @@ def rate(
 ) -> Rating:
     """Rate the train that the scenario's `installed:` names, or (`designed`) the one that `design` picks.
 
-    The installed train is rated as it stands (derating 1), the designed one with the scenario's safety factor, unless `safety_factor`
-    says otherwise. `volumes` in L are rated one by one. Raises `InputError` where nothing is installed or no design exists.
+    The installed train is rated as it stands (derating 1), the designed one with the scenario's safety factor,
+    unless `safety_factor` says otherwise. `volumes` in L are rated one by one. Raises `InputError` where
+    nothing is installed or no design exists.
     """
     curves = fit_curves(case)
     bought, own = train_of(case, designed, objective)
@@ -94,9 +97,7 @@ def rate(
     return rate_train(case, curves, train, volumes)
 
 
-def train_of(
-    case: Case, designed: bool, objective: str | None = None
-) -> tuple[dict[str, tuple[str, int]], float]:
+def train_of(case: Case, designed: bool, objective: str | None = None) -> tuple[dict[str, tuple[str, int]], float]:
     """Module and count by stage of the installed or the designed train, and the derating it is usually rated at."""
     if not designed:
         return installed_picks(case), 1.0
@@ -128,6 +129,7 @@ def rate_train(case: Case, curves: Mapping[str, Curve], train: Train, volumes: S
         blocks=() if times is None else _blocks(train, volume, times),
         lots=tuple(_lot(train, lot, times) for lot in range(len(problem.lots))),
         batches=tuple(_batch(train, v) for v in volumes),
+        block_names=tuple(block.name for block in problem.blocks),
         warnings=tuple(case_notices(case, curves)),
         inputs=case.inputs(),
     )
@@ -145,18 +147,22 @@ def largest_volume(train: Train) -> float:
 
 
 def shortest_time(train: Train, volume: float) -> float | None:
-    """The shortest time in h, setups included, in which `volume` L go through; None where a limit forbids it at any time."""
+    """The shortest time in h, setups included, in which `volume` L go through; None where a limit forbids it at
+    any time."""
     v = np.array([volume])
     if not bool(train.inside_caps(v)[0]):
         return None
     times = train.shortest(v)
     total = float(train.total(times)[0])
-    held = any(float(t) * b.min_flow > volume * (1.0 + 1e-12) for t, b in zip(times[:, 0], train.problem.blocks, strict=True))
+    held = any(
+        float(t) * b.min_flow > volume * (1.0 + 1e-12) for t, b in zip(times[:, 0], train.problem.blocks, strict=True)
+    )
     return None if held or not math.isfinite(total) else total
 
 
 def largest_derating(train: Train, volume: float) -> float | None:
-    """The largest common safety factor with which `volume` L go through in the time allowed; None where not even without one."""
+    """The largest common safety factor with which `volume` L go through in the time allowed; None where not
+    even without one."""
     own = train.problem.safety_factor
     v = np.array([volume])
     most = min(
@@ -167,11 +173,12 @@ def largest_derating(train: Train, volume: float) -> float | None:
 
 
 def limit_at(train: Train, volume: float) -> str:
-    """What holds a batch of `volume` L: a stage's loading, a pump, or the time, with the limit that the slowest block waits for."""
+    """What holds a batch of `volume` L: a stage's loading, a pump, or the time, with the limit that the slowest
+    block waits for."""
     if volume <= 0.0:
         return "no batch passes: the setups leave no time, or a pump cannot go slowly enough"
     v = np.array([volume])
-    for block, choices in zip(train.problem.blocks, train.route, strict=True):
+    for choices in train.route:
         for choice in choices:
             if float(train.loading(choice, v)[0]) >= choice.candidate.loading_cap * (1.0 - TIGHT):
                 return f"{choice.stage.name}: {choice.candidate.cap_reason}"
@@ -189,8 +196,9 @@ def limit_at(train: Train, volume: float) -> str:
 
 
 def times_at(train: Train, volume: float) -> tuple[float, ...] | None:
-    """Block times in h for a batch: spare time shared out as in a design, or, where there is too little, the time allowed
-    in proportion to what each block needs. None where a stage is past its pole or no time is left."""
+    """Block times in h for a batch: spare time shared out as in a design, or, where there is too little, the
+    time allowed in proportion to what each block needs. None where a stage is past its pole or no time is
+    left."""
     problem, route = train.at(volume)
     bounds = [block_bounds(b, c, volume) for b, c in zip(problem.blocks, route, strict=True)]
     shared = share_time(replace(problem, objective="area"), bounds)
@@ -211,7 +219,13 @@ def _blocks(train: Train, volume: float, times: tuple[float, ...]) -> tuple[Bloc
     problem, route = train.at(volume)
     blocks = describe(Picked(problem, problem, route, times))
     return tuple(
-        replace(block, stages=tuple(replace(s, ideal_area=None, limited_by=_nearest(train, b, s.stage, volume, times[b])) for s in block.stages))
+        replace(
+            block,
+            stages=tuple(
+                replace(s, ideal_area=None, limited_by=_nearest(train, b, s.stage, volume, times[b]))
+                for s in block.stages
+            ),
+        )
         for b, block in enumerate(blocks)
     )
 

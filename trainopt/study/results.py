@@ -22,9 +22,9 @@ class EvenCell:
 class SweepCell:
     """One design of a sweep at `at` (canonical, one value per axis).
 
-    `status` "optimal", "infeasible" (then `reason` says why), "limit", "invalid" (the files do not allow this value; `reason`)
-    or "not-computed" (the sweep was stopped before). `area` m², `time` h with setups, `cost` per batch; `spare` bar left at
-    the end of the batch, by block.
+    `status` "optimal", "infeasible" (then `reason` says why), "limit", "invalid" (the files do not allow this
+    value; `reason`) or "not-computed" (the sweep was stopped before). `area` m², `time` h with setups, `cost`
+    per batch; `spare` bar left at the end of the batch, by block.
     """
 
     at: tuple[float, ...]

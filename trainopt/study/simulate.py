@@ -26,9 +26,10 @@ MODES = ("constant-flow", "constant-pressure", "flow-then-pressure")
 class LotCourse:
     """One block's batch with one lot.
 
-    `course` as in `train/march.py`; `needed` h the batch takes (infinite: a stage plugs), `over_run` h beyond the block's time (0: none).
-    `limit_volume` L at which the pressure limit is met (None: never), `handover` L at which the flow was given up.
-    `turbidity` NTU by stage, at the course's points, where bench runs read it and reached that loading (nan elsewhere).
+    `course` as in `train/march.py`; `needed` h the batch takes (infinite: a stage plugs), `over_run` h beyond
+    the block's time (0: none). `limit_volume` L at which the pressure limit is met (None: never), `handover` L
+    at which the flow was given up. `turbidity` NTU by stage, at the course's points, where bench runs read it
+    and reached that loading (nan elsewhere).
     """
 
     lot: str
@@ -41,7 +42,8 @@ class LotCourse:
 
 @dataclass(frozen=True, eq=False)
 class BlockCourse:
-    """One block: its `limit` and `static` in bar, the `time` in h that it has, the set `flow` in L/h (None at constant pressure)."""
+    """One block: its `limit` and `static` in bar, the `time` in h that it has, the set `flow` in L/h (None at
+    constant pressure)."""
 
     block: str
     mode: str
@@ -54,8 +56,8 @@ class BlockCourse:
 
 @dataclass(frozen=True, eq=False)
 class Simulation:
-    """The course of one batch: `volume` L, `time` h allowed, `needed` h with setups for the worst lot, `derated_by` what all areas
-    were divided by; one entry per block that has stages."""
+    """The course of one batch: `volume` L, `time` h allowed, `needed` h with setups for the worst lot,
+    `derated_by` what all areas were divided by; one entry per block that has stages."""
 
     scenario: str
     volume: float
@@ -82,11 +84,13 @@ def simulate(
     points: int = march.POINTS,
     objective: str | None = None,
 ) -> Simulation:
-    """March a batch through the train that the scenario's `installed:` names, or (`designed`) the one that `design` picks.
+    """March a batch through the train that the scenario's `installed:` names, or (`designed`) the one that
+    `design` picks.
 
-    `mode`: one of `MODES` for every block (None: each block as the scenario drives it). Areas are those installed unless
-    `safety_factor` derates them. `volume` in L replaces the scenario's batch. `points` per course. Block times are those of a
-    design; where they do not suffice, the time allowed in proportion to what each block needs.
+    `mode`: one of `MODES` for every block (None: each block as the scenario drives it). Areas are those
+    installed unless `safety_factor` derates them. `volume` in L replaces the scenario's batch. `points` per
+    course. Block times are those of a design; where they do not suffice, the time allowed in proportion to what
+    each block needs.
     """
     if mode is not None and mode not in MODES:
         raise ValueError(f"unknown mode '{mode}'; expected one of {', '.join(MODES)}")
@@ -154,9 +158,7 @@ def _block(
         static=block.static,
         time=time,
         flow=None if mode == "constant-pressure" else flow,
-        lots=tuple(
-            _lot(train, curves, b, lot, mode, volume, time, points) for lot in range(len(train.problem.lots))
-        ),
+        lots=tuple(_lot(train, curves, b, lot, mode, volume, time, points) for lot in range(len(train.problem.lots))),
     )
 
 
@@ -179,8 +181,7 @@ def _lot(
         over_run=max(0.0, needed - time * (1.0 + 1e-12)),
         limit_volume=met,
         turbidity={
-            c.stage.name: turbidity(curves[c.candidate.medium], course.loading[k])
-            for k, c in enumerate(train.route[b])
+            c.stage.name: turbidity(curves[c.candidate.medium], course.loading[k]) for k, c in enumerate(train.route[b])
         },
     )
 
@@ -194,7 +195,8 @@ def _course(block: Block, stages: list[MarchStage], mode: str, volume: float, fl
 
 
 def turbidity(curve: Curve, loading: Floats) -> Floats:
-    """The highest turbidity in NTU that any bench run read at each loading in L/m², between its readings; nan beyond all runs."""
+    """The highest turbidity in NTU that any bench run read at each loading in L/m², between its readings; nan
+    beyond all runs."""
     runs: dict[str, list[tuple[float, float]]] = {}
     for point in curve.points:
         if point.turbidity is not None and point.excluded is None:

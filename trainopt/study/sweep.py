@@ -20,6 +20,9 @@ from trainopt.study.plan import Found, Job, Plan
 from trainopt.study.results import Change, Sweep, SweepCell
 from trainopt.units import CANONICAL
 
+MOST_AXES = 2
+"""Axes that a picture and a table can show."""
+
 Progress = Callable[[int, int], None]
 """Told how many jobs are done, of how many."""
 
@@ -59,11 +62,12 @@ def sweep(
 ) -> Sweep:
     """The design in every cell of the axes `vary`, exactly as `design` gives it, cell by cell.
 
-    `objective` ("area", "cost") overrides the scenario's. `workers`: processes to use at most (None: all cores); with more than one,
-    a script needs the usual `if __name__ == "__main__":`. `journal`: a file that keeps what is done; given again, the sweep goes on
-    from there. `changes`: locate where the pick changes, to 0.1 % of each axis; None: on one axis, or of two along the
-    batch time alone, where it is cheap. Ctrl-C ends the sweep with the cells that are done (`complete` False).
-    Raises ValueError for an axis that makes no sense and `InputError` for what is wrong in the files.
+    `objective` ("area", "cost") overrides the scenario's. `workers`: processes to use at most (None: all
+    cores); with more than one, a script needs the usual `if __name__ == "__main__":`. `journal`: a file that
+    keeps what is done; given again, the sweep goes on from there. `changes`: locate where the pick changes, to
+    0.1 % of each axis; None: on one axis, or of two along the batch time alone, where it is cheap. Ctrl-C ends
+    the sweep with the cells that are done (`complete` False). Raises ValueError for an axis that makes no sense
+    and `InputError` for what is wrong in the files.
     """
     given = [axis if isinstance(axis, Axis) else None for axis in vary]
     texts = [text for text in vary if isinstance(text, str)]
