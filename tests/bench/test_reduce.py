@@ -130,6 +130,7 @@ BROKEN = {
     "time-back": (GOOD.replace("\n8,", "\n5,"), "time goes back behind that of line 5"),
     "time-twice": (GOOD.replace("\n8,", "\n6,"), "time repeats that of line 5"),
     "volume-back": (GOOD.replace("\n10,60,", "\n10,20,"), "volume falls below that of line 6"),
+    "volume-typo": (GOOD.replace("\n10,60,", "\n10,6,"), "volume falls below that of line 6"),
     "no-time": (
         GOOD.replace("time (min)", "step"),
         "no time column found; expected for example 'time (min)'",
