@@ -150,7 +150,7 @@ def _equal_marginals(stages: Sequence[IdealStage], budget: float, lots: Floats) 
     at_top = sum(float(s.demand(np.array([top]), lots)[0]) for s, top in zip(stages, tops, strict=True))
     if at_top <= budget:
         return tuple(s.loading_area / top for s, top in zip(stages, tops, strict=True))
-    spans = [(top * 1e-7, top) for top in tops]
+    spans = [(top * 1e-12, top) for top in tops]
     loadings = tops
     for _ in range(_LEVELS):
         grids = [np.geomspace(low, high, 2 * _POINTS + 1) for low, high in spans]

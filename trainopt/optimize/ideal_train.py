@@ -75,6 +75,8 @@ def _value(problem: DesignProblem, b: int, route: Route) -> Callable[[float], fl
     rate = problem.hour_rate if _paid_hours(problem) else 0.0
 
     def value(time: float) -> float:
+        if choices and time <= 0.0:
+            return math.inf
         stages = [ideal_stage(problem, block, choice, time) for choice in choices]
         areas = ideal_areas(stages, block.budget(time, problem.volume)) if stages else ()
         if areas is None:
