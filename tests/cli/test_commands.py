@@ -89,6 +89,15 @@ def test_no_design_is_status_3_with_reasons(tmp_path: Path) -> None:
     assert read(out)["reasons"]
 
 
+def test_stopped_at_a_limit_is_status_4() -> None:
+    status, out, _ = run("design", HARVEST, "--time-limit", "0")
+    assert status == 4
+    assert "before a limit stopped the search" in out
+    status, out, _ = run("design", HARVEST, "--time-limit", "0", "--json")
+    assert status == 4
+    assert read(out)["status"] == "limit"
+
+
 def test_curve_for_people_and_as_json() -> None:
     status, out, _ = run("curve", "models/media/rye-fine.yaml")
     assert status == 0

@@ -95,6 +95,8 @@ def test_headline_says_what_is_proven() -> None:
     assert headline(results.design()).startswith("Least area, proven optimal: 34.2 m² in 38 modules, 6 h")
     stopped = results.design(status="limit", objective=Objective("area", 34.2, 30.0, 0.123))
     assert "not proven (gap 12 %)" in headline(stopped)
+    empty = results.design(status="limit", objective=None, area=None, cost=None, time=None, blocks=())
+    assert headline(empty).startswith("No design was found before a limit stopped the search")
     assert headline(results.infeasible()) == "No design meets every limit."
 
 

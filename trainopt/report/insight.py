@@ -102,7 +102,7 @@ def _gains(limits: Limits, unit: str, units: str) -> Table:
         words("Unit"),
         Column("Now", "", "significant"),
         Column("Needs", "", "significant"),
-        Column("Saves", unit),
+        Column("Saves", unit, "decimal" if unit == "m²" else "whole"),
         words("Buys"),
     )
     return Table("The next better design, each limit moved alone", columns, rows)
@@ -127,7 +127,7 @@ def _longer_runs(limits: Limits, unit: str, units: str) -> Table:
         Column("Run to", "L/m²", "significant"),
         Column("At flux", "LMH", "significant"),
         pressure_column("Up to", units),
-        Column("Saves", unit),
+        Column("Saves", unit, "decimal" if unit == "m²" else "whole"),
         words("Buys"),
     )
     return Table("What longer bench runs would be worth, if the curve holds that far", columns, rows)

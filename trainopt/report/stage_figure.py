@@ -114,4 +114,4 @@ def _design_point(axes: Axes, stage: StageCurve, factor: float) -> None:
 
 def _cap(axes: Axes, stage: StageCurve) -> None:
     if stage.cap is not None and stage.cap <= axes.get_xlim()[1]:
-        axes.axvline(stage.cap, color=BRICK, linestyle="--", linewidth=1.0, label=stage.cap_words)
+        axes.axvline(stage.cap, color=BRICK, linestyle="--", linewidth=1.0, label=f"most allowed ({stage.cap_words})")

@@ -51,6 +51,8 @@ def headline(design: Design) -> str:
     """The answer in one sentence."""
     if design.status == "infeasible":
         return "No design meets every limit."
+    if not design.blocks:
+        return "No design was found before a limit stopped the search; there may be one."
     modules = sum(stage.count for block in design.blocks for stage in block.stages)
     answer = (
         f"{trimmed(design.area)} m² in {modules} {_plural('module', modules)}, "
