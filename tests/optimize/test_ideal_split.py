@@ -109,7 +109,8 @@ def test_two_lots_that_each_favor_another_stage_bind_together() -> None:
     """Lot a doubles the first stage's R, lot b the second's: by symmetry both areas are 3·R·V/B."""
     R, V, B = 1e-3, 1000.0, 2.0
     lots = ((2.0, 1.0), (1.0, 2.0))
-    stages = [IdealStage(tuple(LotCurve(FLAT, (R, 0.0), rho) for rho in rhos), "constant-flow", V, 1e6) for rhos in lots]
+    curves = [tuple(LotCurve(FLAT, (R, 0.0), rho) for rho in factors) for factors in lots]
+    stages = [IdealStage(one, "constant-flow", V, 1e6) for one in curves]
     assert ideal_areas(stages, B) == pytest.approx((3 * R * V / B, 3 * R * V / B), rel=1e-5)
 
 
