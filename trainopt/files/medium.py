@@ -181,7 +181,7 @@ class Run(Entry):
     lot: Annotated[str, Name("a")] = "unnamed"
     """The lot of feed that was run."""
     operation: Annotated[str, Choice(OPERATIONS)]
-    """How the run was driven: constant-flow or constant-pressure."""
+    """How the run was driven: constant-flow, or constant-pressure (also any other flow history, by ∫ΔP dt)."""
     area: Area
     """Filter area of the bench device."""
     pressure: Pressure | None = None
