@@ -35,6 +35,10 @@ if TYPE_CHECKING:
     from trainopt.report.json import design_document as design_document
     from trainopt.report.render import report_bytes as report_bytes
     from trainopt.report.render import report_figures as report_figures
+    from trainopt.study.audit import audit as audit
+    from trainopt.study.rate import rate as rate
+    from trainopt.study.simulate import simulate as simulate
+    from trainopt.study.sweep import sweep as sweep
     from trainopt.train.results import Design as Design
 
 _HOMES = {
@@ -45,6 +49,10 @@ _HOMES = {
     "InputError": "trainopt.errors",
     "Problem": "trainopt.errors",
     "Workspace": "trainopt.files",
+    "audit": "trainopt.study.audit",
+    "rate": "trainopt.study.rate",
+    "simulate": "trainopt.study.simulate",
+    "sweep": "trainopt.study.sweep",
     "check": "trainopt.curves.check",
     "curve_document": "trainopt.report.json",
     "Dossier": "trainopt.report.dossier",

@@ -44,7 +44,7 @@ def sweep(
         bool | None,
         typer.Option(
             "--changes/--no-changes",
-            help="Locate changes of the pick to 0.1 % of each axis (default: on a line, and along batch.time on a map).",
+            help="Locate changes of the pick to 0.1 % of each axis (default: on a line, along batch.time on a map).",
         ),
     ] = None,
     force: Annotated[bool, typer.Option("--force", help="Replace the picture if it exists.")] = False,
