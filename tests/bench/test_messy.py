@@ -153,7 +153,9 @@ def test_spreadsheet(tmp_path: Path) -> None:
     several = sheet(tmp_path / "b.xlsx", rows, others=("setup", "notes"))
     with pytest.raises(InputError, match=r"b.xlsx: has several sheets \(run, setup, notes\); expected `sheet:`"):
         reduced(several)
-    np.testing.assert_array_equal(reduced(several, sheet="run").resistance, run.resistance)
+    named = reduced(several, sheet="run")
+    np.testing.assert_array_equal(named.resistance, run.resistance)
+    assert named.name == "b.xlsx (run)"
     with pytest.raises(InputError, match="has no sheet 'Run'; expected one of run, setup, notes"):
         reduced(several, sheet="Run")
 

@@ -127,7 +127,7 @@ def _capped(problems: list[Problem]) -> list[Problem]:
 
 
 def _reduced(run: Run, readings: _Readings) -> ReducedRun:
-    name, rows, time = run.file.name, readings.rows, readings.values["time"]
+    name, rows, time = _name(run), readings.rows, readings.values["time"]
     flags = [Flag(code, name, place, text) for code, place, text in readings.remarks]
     volume, volume_step, more = _filtrate(run, readings)
     flags.extend(more)
@@ -171,6 +171,11 @@ def _reduced(run: Run, readings: _Readings) -> ReducedRun:
     return checked(reduced, keep=run.keep)
 
 
+def _name(run: Run) -> str:
+    """What a run is called: its file, and its sheet where the entry names one."""
+    return run.file.name if run.sheet is None else f"{run.file.name} ({run.sheet})"
+
+
 def _averaged(columns: Mapping[str, Floats], block: int) -> dict[str, Floats]:
     """Means over blocks of consecutive readings (the last may be shorter), of those that were read."""
     out = {}
@@ -185,7 +190,7 @@ def _averaged(columns: Mapping[str, Floats], block: int) -> dict[str, Floats]:
 
 def _filtrate(run: Run, readings: _Readings) -> tuple[Floats, float, list[Flag]]:
     """Cumulative filtrate in L with its resolution, and what had to be done to it."""
-    values, name = readings.values, run.file.name
+    values, name = readings.values, _name(run)
     role = "volume" if "volume" in values else "mass"
     density = 1.0 if role == "volume" else run.density or 1.0
     start, assumed = filtrate.tare(values["time"], values[role], run.tare, role)
