@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import textwrap
 from pathlib import Path
 from typing import Annotated
 
@@ -9,6 +10,7 @@ import typer
 
 from trainopt.cli.options import Units, output_file
 from trainopt.cli.status import Status, say
+from trainopt.cli.terminal import width
 
 
 def sheet(
@@ -36,7 +38,7 @@ def sheet(
     plan = plan_run(**amounts, medium=load_medium(medium) if medium is not None else None)
     write_bytes_atomic(target, sheet_bytes(plan, target.suffix.lstrip(".").lower(), units.value), overwrite=force)
     for line in plan_lines(plan, units.value):
-        typer.echo(line)
+        typer.echo(textwrap.fill(line, width(), subsequent_indent="  "))
     say(f"wrote {target}")
     return Status.DONE
 
