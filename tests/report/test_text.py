@@ -6,6 +6,7 @@ import pytest
 
 from tests.report import results
 from trainopt.report.curve_text import curve_text
+from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
     Pressure,
     aligned,
@@ -19,7 +20,7 @@ from trainopt.report.numbers import (
     trimmed,
 )
 from trainopt.report.text import design_text, even_split_sentence, headline
-from trainopt.train.results import EvenSplit, Objective, Saving
+from trainopt.train.results import EvenSplit, Notice, Objective, Saving
 
 LONG = "a-very-long-name-" * 12
 HOSTILE = "[bold red]x[/] \x1b[31m\x07 :smile: $x_1$ \u202eabc\nnext"
@@ -154,3 +155,17 @@ def test_numbers_are_sensible() -> None:
     assert limit_words("module-size") == "module size"
     assert limit_words("something-new") == "something new"
     assert plain("a\tb\u200bc") == "a\ufffdb\ufffdc"
+
+
+def test_what_holds_for_several_media_is_said_once() -> None:
+    notices = (
+        Notice("viscosity", "oat: scaled to 18 degC"),
+        Notice("slip", "oat: scaled to 18 degC"),
+        Notice("viscosity", "rye: scaled to 18 degC"),
+        Notice("files", "no colon here"),
+    )
+    assert grouped(notices) == (
+        ("viscosity", "oat, rye: scaled to 18 degC"),
+        ("slip", "oat: scaled to 18 degC"),
+        ("files", "no colon here"),
+    )

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from trainopt.report.content import Table
+from trainopt.report.notices import grouped
 from trainopt.report.numbers import plain
 
 if TYPE_CHECKING:
@@ -35,7 +36,7 @@ def design_html(design: Design) -> str:
         parts += [table_html(bill_table(design)), table_html(stage_table(design))]
         parts.append(_paragraph(even_split_sentence(design)))
     parts += [_paragraph(reason.text) for reason in design.reasons]
-    parts += [_paragraph(f"Warning: {notice.text}") for notice in design.warnings]
+    parts += [_paragraph(f"Warning: {text}") for _, text in grouped(design.warnings)]
     return str(Markup("\n").join(parts))
 
 

@@ -10,6 +10,7 @@ from trainopt.report.content import Column, Picture, Section, Table, pressure_co
 from trainopt.report.curve_sections import course_section, curves_section
 from trainopt.report.dossier import Dossier
 from trainopt.report.insight import insight_sections
+from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
     PRESSURE_UNITS,
     duration,
@@ -179,7 +180,7 @@ def _cost(design: Design) -> Section | None:
 
 
 def _assumptions(dossier: Dossier) -> Section:
-    rows = tuple((notice.code, notice.text) for notice in dossier.design.warnings)
+    rows = grouped(dossier.design.warnings)
     table = Table("Warnings", (words("Code"), words("Text")), rows)
     return Section(
         "assumptions",

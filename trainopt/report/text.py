@@ -6,6 +6,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
 from trainopt.report.cautions import CAUTIONS
+from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
     NONE,
     Pressure,
@@ -40,7 +41,7 @@ def design_text(design: Design, units: str = "bar", width: int = WIDTH, color: b
         _even_split(page, design, pressure)
     if design.warnings:
         page.heading("Warnings")
-        page.items((notice.text for notice in design.warnings), "yellow")
+        page.items((text for _, text in grouped(design.warnings)), "yellow")
     if design.blocks:
         page.heading("Cautions")
         page.items(CAUTIONS)
