@@ -193,7 +193,8 @@ def _at_stage(source: Source, loc: Loc, stage: StageSpec, text: str) -> Problem:
 
 
 def _mapping(data: Any, key: str) -> dict[str, Any]:
-    value = data.get(key)
+    # What was built in Python has no file behind it.
+    value = data.get(key) if isinstance(data, dict) else None
     return value if isinstance(value, dict) else {}
 
 
