@@ -75,6 +75,18 @@ def test_tested_loading_is_never_beyond_what_was_run_or_seen(tmp_path: Path) -> 
     assert curve.tested_loading < 130.0
 
 
+def test_a_slow_lot_may_run_past_the_pole_of_the_pooled_curve(tmp_path: Path) -> None:
+    """It is loaded to 190 L/m², the pooled complete law ends at 182: both stay finite where they are used."""
+    law = {"law": "complete", "parameters": (1e-3, 0.0055), "noise": 0.01}
+    slow, fast = Lab(kappa=0.8, reach=190.0, **law), Lab(kappa=1.25, reach=120.0, seed=1, **law)  # type: ignore[arg-type]
+    runs = [RunEntry(lab.write(tmp_path / f"{lot}.csv"), lot=lot) for lab, lot in ((slow, "a"), (fast, "b"))]
+    curve = fitted(*runs)
+    assert curve.law == "complete"
+    assert curve.tested_loading == pytest.approx(0.8 * 190.0, rel=0.02)
+    assert np.isfinite(curve.lot_curve().resistance(curve.tested_loading))
+    assert curve.lot_curve().pole < 190.0
+
+
 def test_a_lot_that_was_not_run_gets_the_worst_of_both(tmp_path: Path) -> None:
     curve = fitted(*three_lots(tmp_path))
     unknown = curve.lot_curve("z")

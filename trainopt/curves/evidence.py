@@ -165,8 +165,13 @@ def _walked(readings: Readings, fit: Fit) -> Floats:
     return out
 
 
+def seen(readings: Readings, fit: Fit) -> float:
+    """Loading in L/m² up to which the shared shape was seen and a run was run: the pooled curve's tested range."""
+    return float(min(readings.loading.max(), np.max(readings.loading * np.exp(fit.log_kappa)[readings.lot])))
+
+
 def _difference(readings: Readings, chosen: Fit, rival: Fit) -> float:
-    """Largest relative difference of two pooled resistances up to the highest loading seen."""
-    loading = np.linspace(0.0, float(readings.loading.max()), 101)
+    """Largest relative difference of two pooled resistances on the range that both saw."""
+    loading = np.linspace(0.0, min(seen(readings, chosen), seen(readings, rival)), 101)
     one, other = (LAWS[fit.law].resistance(loading, *fit.parameters) for fit in (chosen, rival))
     return float(np.max(np.abs(one - other) / np.minimum(one, other)))

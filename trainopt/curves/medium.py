@@ -12,7 +12,7 @@ from trainopt.bench.reduce import reduce_run
 from trainopt.bench.run import Floats, ReducedRun
 from trainopt.curves.curve import Alternative, Curve, Estimate, LotEffect, Point
 from trainopt.curves.endpoint import turbidity_loading
-from trainopt.curves.evidence import Evidence, weigh
+from trainopt.curves.evidence import Evidence, seen, weigh
 from trainopt.curves.fit import Fit
 from trainopt.curves.given import given_curve
 from trainopt.curves.laws import LAWS
@@ -106,7 +106,7 @@ def _fitted(medium: Medium, runs: Sequence[ReducedRun], evidence: Evidence, refe
             for name, value, error, unit in zip(law.parameters, fit.parameters, errors, law.units, strict=False)
         },
         covariance=tuple(tuple(float(value) for value in row) for row in fit.covariance[:k, :k]),
-        tested_loading=_tested_loading(runs, lots, np.exp(fit.log_kappa)),
+        tested_loading=seen(evidence.readings, fit),
         tested_flux=max(float(np.median(run.flux[run.used])) for run in runs),
         tested_temperature=reference,
         turbidity_loading=turbidity_loading(runs, limits.turbidity, limits.pool_turbidity),
@@ -142,12 +142,6 @@ def _alternatives(fits: tuple[Fit, ...]) -> tuple[Alternative, ...]:
     return tuple(
         Alternative(fit.law, fit.aicc, float(weight), fit.error) for fit, weight in zip(fits, weights, strict=True)
     )
-
-
-def _tested_loading(runs: Sequence[ReducedRun], lots: tuple[str, ...], kappa: Floats) -> float:
-    """Never beyond what was run, nor beyond where the shared shape was seen (κ·l)."""
-    reached = [(float(run.loading[run.used].max()), kappa[lots.index(run.lot)]) for run in runs]
-    return min(max(loading for loading, _ in reached), max(float(factor) * loading for loading, factor in reached))
 
 
 def _feed_loading(runs: Sequence[ReducedRun]) -> float | None:

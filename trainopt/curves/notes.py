@@ -8,7 +8,7 @@ import numpy as np
 
 from trainopt.bench.quality import breakthrough
 from trainopt.bench.run import Flag, ReducedRun
-from trainopt.curves.evidence import Evidence
+from trainopt.curves.evidence import Evidence, seen
 from trainopt.curves.laws import LAWS
 
 ENDPOINT = 1.0
@@ -67,7 +67,7 @@ def _outliers(evidence: Evidence) -> Iterator[Flag]:
 
 def _little_fouling(medium: str, evidence: Evidence) -> Iterator[Flag]:
     fit = evidence.chosen
-    top = float(evidence.readings.loading.max())
+    top = seen(evidence.readings, fit)
     law = LAWS[fit.law]
     growth = law.peak(top, *fit.parameters) / law.resistance(0.0, *fit.parameters)
     if growth < LITTLE_FOULING:
