@@ -96,7 +96,7 @@ def _candidate(m: Medium) -> Candidate:
     return Candidate(
         m.name, None if m.after is None else frozenset(m.after), m.differential_pressure, m.inlet_pressure, m.flux,
         m.cap, m.cap_reason, m.scale_up, curves, offer, (),
-        tuple(ModuleSize(n, a, 1, most) for n, a, _, most in m.sizes), offer,
+        tuple(ModuleSize(f"{m.name}-{n}", a, 1, most) for n, a, _, most in m.sizes), offer,
         LotCurve(m.law, m.parameters), m.cap * max(kappa for _, kappa in m.lots), m.further_cap,
     )  # fmt: skip
 

@@ -16,7 +16,7 @@ import numpy as np
 from trainopt.optimize.even_split import routes
 from trainopt.optimize.index import Index, Node
 from trainopt.train.options import CAP_SLACK, demand
-from trainopt.train.problem import Block, DesignProblem, Floats
+from trainopt.train.problem import Block, Candidate, DesignProblem, Floats
 
 ROOM = 1e-9
 """Relative room for rounding where times are held against limits."""
@@ -96,7 +96,7 @@ class Levers:
                 total += least + block.setup
             else:
                 total = max(total, least + block.setup)
-        return total <= setting.time * (1.0 + ROOM)
+        return math.isfinite(total) and total <= setting.time * (1.0 + ROOM)
 
     def _least_time(
         self, setting: Setting, b: int, block: Block, here: list[int], spent: Mapping[int, Floats | None]
@@ -119,9 +119,14 @@ class Levers:
                 downstream = float(np.sum(known[k:], axis=0).max()) + line
                 least = max(least, _ratio(float(known[k].max()), one.differential_pressure))
                 least = max(least, _ratio(downstream, one.inlet_pressure - block.static))
-            elif setting.pressure[b] - block.static > min(one.differential_pressure, one.inlet_pressure - block.static):
+            elif setting.pressure[b] > bearable(block, one) * (1.0 + ROOM):
                 return math.inf
         return least
+
+
+def bearable(block: Block, candidate: Candidate) -> float:
+    """The pressure in bar up to which a medium bears the whole of a constant-pressure block's."""
+    return min(candidate.differential_pressure + block.static, candidate.inlet_pressure)
 
 
 def _ratio(need: float, have: float) -> float:
@@ -152,20 +157,21 @@ def moved(setting: Setting, name: str, key: int, value: float) -> Setting:
     return replace(setting, flux={**setting.flux, key: value})
 
 
-def nearest(levers: Levers, change: Callable[[float], Setting], start: float, direction: int) -> float | None:
-    """The value nearest to `start`, upward (+1) or downward (−1), at which a design exists; None where none does.
+_FAR = 2.0**80
+
+
+def nearest(
+    levers: Levers, change: Callable[[float], Setting], start: float, direction: int, most: float = math.inf
+) -> float | None:
+    """The value nearest to `start`, upward (+1, to `most`) or downward (−1), at which a design exists; None: none does.
 
     `change(value)` is the setting with that value. Monotone: once possible, further is possible too.
     """
-    near = start
-    far = start
-    for _ in range(80):
-        far = far * 2.0 if direction > 0 else far / 2.0
-        if levers.possible(change(far)):
-            break
-        near = far
-    else:
+    if not levers.possible(change(min(start * _FAR, most) if direction > 0 else start / _FAR)):
         return None
+    near = far = start
+    while not levers.possible(change(far)):
+        near, far = far, min(far * 2.0, most) if direction > 0 else far / 2.0
     for _ in range(200):
         middle = 0.5 * (near + far)
         if abs(far - near) <= 1e-12 * abs(far) or middle in (near, far):

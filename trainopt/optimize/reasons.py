@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+import itertools
 import math
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, replace
 from functools import partial
 
-from trainopt.optimize.levers import Levers, Setting, moved, nearest
-from trainopt.train.problem import DesignProblem, Stage
+from trainopt.optimize.levers import Levers, Setting, bearable, moved, nearest
+from trainopt.train.problem import Block, DesignProblem, Stage
 from trainopt.train.results import Reason
 
 
@@ -70,27 +71,53 @@ BOUNDLESS = 1e12
 
 @dataclass(frozen=True)
 class Lever:
-    """One thing a user may change: its field with the unit, its name, its unit, and the direction that helps."""
+    """One thing a user may change: its field with the unit, its name, its unit, the direction that helps, how far."""
 
     field: str
     what: str
     unit: str
     direction: int
+    most: float = math.inf
 
 
 def _conflict(levers: Levers) -> Reason:
-    """The smallest set of limits that together admit no design: each is needed for the conflict (deletion filter)."""
+    """The smallest set of limits that together admit no design: lifting any one of them would."""
+    limits = list(_limits(levers))
+    kept = _smallest(levers, limits)
+    if not kept:
+        return Reason("no allowed sequence of media leads through the stages", {})
+    if len(kept) == 1:
+        return Reason(f"one limit alone admits no design: {kept[0]}", {})
+    return Reason("these limits together admit no design: " + "; ".join(kept), {})
+
+
+def _smallest(levers: Levers, limits: Sequence[tuple[str, Lift]]) -> list[str]:
+    """The smallest conflict: every set of one, two and three limits is tried, unless a shorter way shows it first."""
+    best = _irreducible(levers, limits)
+    for size in range(1, min(len(best), _TRIED + 1)):
+        for alone in itertools.combinations(range(len(limits)), size):
+            setting = levers.setting
+            for k, (_, lift) in enumerate(limits):
+                setting = setting if k in alone else lift(setting)
+            if not levers.possible(setting):
+                return [limits[k][0] for k in alone]
+    return best
+
+
+_TRIED = 3
+
+
+def _irreducible(levers: Levers, limits: Sequence[tuple[str, Lift]]) -> list[str]:
+    """A conflict each of whose limits is needed for it, found by lifting one limit after another (deletion filter)."""
     kept: list[str] = []
     setting = levers.setting
-    for text, lift in _limits(levers):
+    for text, lift in limits:
         lifted = lift(setting)
         if levers.possible(lifted):
             kept.append(text)
         else:
             setting = lifted
-    if not kept:
-        return Reason("no allowed sequence of media leads through the stages", {})
-    return Reason("these limits together admit no design: " + "; ".join(kept), {})
+    return kept
 
 
 def _limits(levers: Levers) -> Iterator[tuple[str, Lift]]:
@@ -107,7 +134,7 @@ def _limits(levers: Levers) -> Iterator[tuple[str, Lift]]:
             yield f"the {what} of '{name}'", partial(_raised, table=table, own=own, value=BOUNDLESS)
     for b, block in enumerate(problem.blocks):
         text = f"the pressure of '{block.name}', {block.pressure:.4g} bar"
-        yield text, partial(_with_pressure, b=b, value=BOUNDLESS)
+        yield text, partial(_with_pressure, b=b, value=min(BOUNDLESS, _rating(block)))
     yield f"the time, {problem.time:.4g} h", partial(_with_time, value=math.inf)
 
 
@@ -143,14 +170,14 @@ def _levers(levers: Levers) -> Iterator[Reason]:
     problem, base = levers.problem, levers.setting
     yield _single(levers, Lever("batch.time_h", "the time", "h", 1), base.time, partial(_with_time, base))
     for b, block in enumerate(problem.blocks):
-        lever = Lever(f"{block.name}.pressure_bar", f"the pressure of '{block.name}'", "bar", 1)
+        lever = Lever(f"{block.name}.pressure_bar", f"the pressure of '{block.name}'", "bar", 1, _rating(block))
         yield _single(levers, lever, block.pressure, partial(_with_pressure, base, b))
     for place, (_, stage) in enumerate(levers.index.stages):
         own = [n for n, node in enumerate(levers.index.nodes) if node.place == place]
         yield _counts(levers, stage.name, own)
         for table, field, what, unit in _NODE_LEVERS:
             lever = Lever(f"{stage.name}.{field}", f"the {what} of '{stage.name}'", unit, 1)
-            start = max(getattr(base, table)[n] for n in own)
+            start = min(getattr(base, table)[n] for n in own)
             yield _single(levers, lever, start, partial(_raised, base, table, own))
     lever = Lever("safety_factor", "the safety factor", "", -1)
     yield _single(levers, lever, base.safety_factor, partial(_with_factor, base))
@@ -163,8 +190,18 @@ _NODE_LEVERS = (
 )
 
 
+def _rating(block: Block) -> float:
+    """The most a block's pressure may be, bar: at constant pressure the best-rated route must bear it."""
+    if block.operation == "constant-flow":
+        return math.inf
+    stages = [s for s in block.stages if not s.optional]
+    return min((max(bearable(block, c) for c in s.candidates) for s in stages), default=math.inf)
+
+
 def _single(levers: Levers, lever: Lever, start: float, change: Change) -> Reason:
-    value = nearest(levers, change, start, lever.direction) if math.isfinite(start) else None
+    value = None
+    if math.isfinite(start):
+        value = nearest(levers, change, start, lever.direction, lever.most)
     if value is not None and lever.field == "safety_factor" and value < 1e-6:
         value = None
     unit = f" {lever.unit}" if lever.unit else ""
@@ -172,7 +209,9 @@ def _single(levers: Levers, lever: Lever, start: float, change: Change) -> Reaso
     if value is None:
         return Reason(f"{now}: no value of it alone makes a design possible", {lever.field: None})
     verb = "would have to be at least" if lever.direction > 0 else "could be at most"
-    return Reason(f"{now} {verb} {rounded(value, lever.direction)}{unit}, all else as it is", {lever.field: value})
+    note = " (below 1: no margin at all)" if lever.field == "safety_factor" and value < 1.0 else ""
+    text = f"{now} {verb} {rounded(value, lever.direction)}{unit}{note}, all else as it is"
+    return Reason(text, {lever.field: value})
 
 
 def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
