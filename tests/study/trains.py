@@ -1,4 +1,5 @@
-"""Random cases for the tests of this room: one to three blocks, several media, lots, ratings, pumps, routes, both objectives."""
+"""Random cases for the tests of this room: one to three blocks, several media, lots, ratings, pumps, routes,
+both objectives."""
 
 from __future__ import annotations
 
@@ -29,6 +30,7 @@ def random_case(seed: int, blocks: int | None = None, stages: int = 2) -> Case:
     }
     catalog = Catalog.model_validate({"currency": "EUR", "modules": modules, "holders": holders})
     number = blocks or rng.choice([1, 1, 2, 2, 3])
+    upstream: set[str] = set()
     scenario = Scenario.model_validate(
         {
             "scenario": f"train {seed}",
@@ -37,7 +39,7 @@ def random_case(seed: int, blocks: int | None = None, stages: int = 2) -> Case:
             "safety_factor": rng.choice([1.0, 1.2, 1.5]),
             "basis": rng.choice(["pooled", "worst-lot"]),
             "schedule": rng.choice(["sequential", "sequential", "side-by-side"]),
-            "blocks": tuple(_block(rng, b, stages) for b in range(number)),
+            "blocks": tuple(_block(rng, b, stages, media, upstream) for b in range(number)),
             "costs": {"hour": rng.choice([0.0, 120.0]), "flush": 0.02,
                       "product": {"titer": 1.0, "value": 30.0, "recovered": 0.5}},
         }
@@ -70,22 +72,29 @@ def _medium(rng: random.Random, name: str) -> Medium:
     )  # fmt: skip
 
 
-def _block(rng: random.Random, b: int, most: int) -> dict[str, object]:
+def _block(rng: random.Random, b: int, most: int, known: dict[str, Medium], upstream: set[str]) -> dict[str, object]:
+    """A block, and what it may use added to `upstream`; at constant pressure only where every rating allows it."""
     stages: list[dict[str, object]] = []
+    pressure, used = round(rng.uniform(0.8, 2.2), 2), set()
     for i in range(rng.randint(1, most)):
         names = FIRST if b == i == 0 else LATER
         chosen = rng.sample(names, rng.randint(1, 2))
         media: list[dict[str, object]] = [{"medium": name} for name in chosen]
-        if i and rng.random() < 0.3:
-            media[0]["after"] = tuple(rng.sample((*FIRST, *LATER), 3))
+        if upstream and rng.random() < 0.3:
+            media[0]["after"] = tuple(rng.sample(sorted(upstream), min(2, len(upstream))))
+        upstream |= set(chosen)
+        used |= set(chosen)
         stage: dict[str, object] = {"stage": f"s{b}{i}", "media": tuple(media)}
         if rng.random() < 0.2:
             stage["optional"] = True
         stages.append(stage)
     block: dict[str, object] = {
-        "block": f"b{b}", "pressure": round(rng.uniform(0.8, 2.2), 2), "setup": rng.choice([0.0, 0.25]),
+        "block": f"b{b}", "pressure": pressure, "setup": rng.choice([0.0, 0.25]),
         "static": rng.choice([0.0, 0.05]), "line": rng.choice([0.0, 0.00005]), "stages": tuple(stages),
     }  # fmt: skip
     if rng.random() < 0.4:
         block["pump"] = {"min_flow": rng.choice([None, 40.0]), "max_flow": rng.choice([None, 2500.0])}
+    ratings = [r for n in used for r in (known[n].limits.differential_pressure, known[n].limits.inlet_pressure) if r]
+    if rng.random() < 0.5 and all(rating > pressure for rating in ratings):
+        block["operation"] = "constant-pressure"
     return block
