@@ -234,3 +234,14 @@ def test_flow_that_drifts_is_followed(tmp_path: Path) -> None:
     ]
     run = reduced(write_rows(tmp_path / "a.csv", rows))
     np.testing.assert_allclose(run.flux, flow / 1000.0 / AREA, rtol=0.02)
+
+
+def test_volumes_read_at_marks_hide_no_slip(tmp_path: Path) -> None:
+    """Every 15 mL the time is taken; the pump slows for four of them. The marks are no resolution of 15 mL."""
+    minutes = np.cumsum([0.0, *([2.6] * 10), *([4.3] * 4), *([2.6] * 10)])
+    rows = [["t (min)", "V (mL)", "P (psi)"], *([f"{t:.1f}", str(15 * i), "5"] for i, t in enumerate(minutes))]
+    run = reduced(write_rows(tmp_path / "a.csv", rows))
+    assert run.volume_step == 0.0
+    slow, fast = 15e-3 / 4.3 * 60.0 / AREA, 15e-3 / 2.6 * 60.0 / AREA
+    np.testing.assert_allclose(run.flux[[11, 12, 13]], slow, rtol=0.02)
+    np.testing.assert_allclose(run.flux[[2, 5, 8, 16, 20]], fast, rtol=0.02)

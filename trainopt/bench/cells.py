@@ -77,7 +77,13 @@ def _stamped(cell: str) -> float:
 
 
 def column_step(values: Floats) -> float:
-    """Resolution of a column in its own canonical unit; a long column is sampled."""
+    """Resolution of a column in its own canonical unit; a long column is sampled.
+
+    Values one and the same step apart (read at every 50 mL) show a schedule, not a resolution: 0.
+    """
+    apart = np.diff(values)
+    if len(apart) and np.ptp(apart) <= 1e-6 * np.max(np.abs(apart)):
+        return 0.0
     return resolution(values[:: max(len(values) // 2000, 1)])
 
 

@@ -87,11 +87,16 @@ def _integral_weight(run: ReducedRun) -> Floats:
     used = run.used
     loading, value = run.loading[used], run.pressure_time[used]
     volume_error = max(run.volume_step / np.sqrt(12.0), LEAST_STEP * float(run.volume[used].max()))
-    clock_error = run.time_step / np.sqrt(12.0)
+    clock_error = _clock_step(run) / np.sqrt(12.0)
     variance = (_smooth_slope(loading, value) * volume_error / run.area) ** 2
     variance += (run.pressure[used] * clock_error) ** 2
     weight = value**2 / variance
     return np.asarray(weight / weight.mean())
+
+
+def _clock_step(run: ReducedRun) -> float:
+    """Resolution of the clock in h; readings on a schedule show the schedule's step, not the clock's."""
+    return 0.0 if run.time_step > 0.2 * float(np.min(np.diff(run.time))) else run.time_step
 
 
 def _smooth_slope(loading: Floats, value: Floats) -> Floats:
