@@ -15,9 +15,15 @@ from typing import TYPE_CHECKING
 from trainopt.version import __version__
 
 if TYPE_CHECKING:
+    from trainopt.bench.sheet import plan_run as plan_run
     from trainopt.curves.check import check as check
     from trainopt.curves.curve import Curve as Curve
+    from trainopt.curves.freeze import frozen_text as frozen_text
     from trainopt.curves.medium import fit_curve as fit_curve
+    from trainopt.curves.uncertainty import band as band
+    from trainopt.curves.uncertainty import left_out_errors as left_out_errors
+    from trainopt.curves.uncertainty import loading_at as loading_at
+    from trainopt.curves.uncertainty import lot_spread as lot_spread
     from trainopt.errors import DefectError as DefectError
     from trainopt.errors import InputError as InputError
     from trainopt.errors import Problem as Problem
@@ -29,6 +35,7 @@ if TYPE_CHECKING:
     from trainopt.files import set_field as set_field
     from trainopt.optimize import design as design
     from trainopt.report.curve_figure import curve_figure as curve_figure
+    from trainopt.report.curve_page import curve_page as curve_page
     from trainopt.report.dossier import Dossier as Dossier
     from trainopt.report.gather import gather as gather
     from trainopt.report.json import curve_document as curve_document
@@ -56,7 +63,14 @@ _HOMES = {
     "check": "trainopt.curves.check",
     "curve_document": "trainopt.report.json",
     "Dossier": "trainopt.report.dossier",
+    "band": "trainopt.curves.uncertainty",
     "curve_figure": "trainopt.report.curve_figure",
+    "curve_page": "trainopt.report.curve_page",
+    "frozen_text": "trainopt.curves.freeze",
+    "left_out_errors": "trainopt.curves.uncertainty",
+    "loading_at": "trainopt.curves.uncertainty",
+    "lot_spread": "trainopt.curves.uncertainty",
+    "plan_run": "trainopt.bench.sheet",
     "design": "trainopt.optimize",
     "gather": "trainopt.report.gather",
     "report_bytes": "trainopt.report.render",
