@@ -167,7 +167,7 @@ def shapes() -> dict[str, Dossier]:
         "usual": replace(dossier(results.design()), area_parts=_parts(), limits=_limits()),
         "one-stage": dossier(_one_stage()),
         "six-stages": dossier(_six_stages()),
-        "three-blocks": dossier(_many_blocks()),
+        "three-blocks": replace(dossier(_many_blocks()), schedule="side-by-side"),
         "no-design": dossier(results.infeasible()),
         "hostile": dossier(hostile(), results.curve(medium=HOSTILE[0], law="intermediate")),
     }

@@ -31,22 +31,41 @@ class Part:
     hatch: str = ""
 
 
-def budget_figure(design: Design, units: str = "bar") -> Figure:
-    """Stacked bars of pressure (`units`, end of batch, worst lot, derated area) and of time (h)."""
+def budget_figure(design: Design, units: str = "bar", schedule: str = "sequential") -> Figure:
+    """Stacked bars of pressure (`units`, end of batch, worst lot, derated area) and of time (h).
+
+    Blocks in sequence share one bar of time; side by side each has its own.
+    """
     from matplotlib.figure import Figure
 
     evens = design.even_split.blocks if design.even_split is not None else ()
     pairs = [(block, _same(block, evens)) for block in design.blocks]
-    rows = [1 + (other is not None) for _, other in pairs]
-    time_rows = 1 + bool(evens)
-    heights = [row + 1.2 for row in (*rows, time_rows)]
+    times = _time_rows(design.blocks, evens, schedule)
+    heights = [1 + (other is not None) + 1.2 for _, other in pairs] + [len(times) + 1.2]
     with styled():
         figure = Figure(figsize=(6.6, 0.38 * sum(heights) + 0.2), layout="constrained")
         panels = figure.subplots(len(heights), 1, gridspec_kw={"height_ratios": heights}, squeeze=False)[:, 0]
         for axes, (block, even) in zip(panels, pairs, strict=False):
             _pressure_panel(axes, block, even, units)
-        _time_panel(panels[-1], design, evens)
+        _time_panel(panels[-1], times)
     return figure
+
+
+def _time_rows(
+    blocks: Sequence[BlockDesign], evens: Sequence[BlockDesign], schedule: str
+) -> list[tuple[str, list[Part]]]:
+    """Names and parts of the bars of time."""
+    rows: list[tuple[str, list[Part]]] = []
+    for name, ones in (("optimum", blocks), ("even split", evens)):
+        parts = [
+            [Part("setup", block.setup, "white"), Part(block.block, block.time, *_look(index))]
+            for index, block in enumerate(ones)
+        ]
+        if schedule == "side-by-side":
+            rows += [(name, own) for own in parts]
+        elif parts:
+            rows.append((name, [part for own in parts for part in own]))
+    return rows
 
 
 def _same(block: BlockDesign, others: Sequence[BlockDesign]) -> BlockDesign | None:
@@ -72,16 +91,11 @@ def _look(index: int) -> tuple[str, str]:
     return STEPS[index % len(STEPS)], HATCHES[index % len(HATCHES)]
 
 
-def _time_panel(axes: Axes, design: Design, evens: Sequence[BlockDesign]) -> None:
-    designs = [("optimum", design.blocks)] + ([("even split", tuple(evens))] if evens else [])
-    longest = max(sum(block.time + block.setup for block in blocks) for _, blocks in designs)
-    for row, (_, blocks) in enumerate(designs):
-        parts: list[Part] = []
-        for index, block in enumerate(blocks):
-            parts.append(Part("setup", block.setup, "white"))
-            parts.append(Part(block.block, block.time, *_look(index)))
+def _time_panel(axes: Axes, rows: list[tuple[str, list[Part]]]) -> None:
+    longest = max(sum(part.value for part in parts) for _, parts in rows)
+    for row, (_, parts) in enumerate(rows):
         _bar(axes, row, parts, 1.0, longest, lambda value: fixed(value, 2))
-    _finish(axes, [name for name, _ in designs], "Time of the blocks, h", longest)
+    _finish(axes, [name for name, _ in rows], "Time of the blocks, h", longest)
 
 
 def _bar(axes: Axes, row: int, parts: list[Part], factor: float, full: float, number: Callable[[float], str]) -> None:

@@ -26,7 +26,7 @@ def budget_section(dossier: Dossier, units: str) -> Section:
     beside = ", the even split beside the optimum" if even is not None and even.blocks else ""
     picture = Picture(
         "budget",
-        lambda: budget_figure(design, units),
+        lambda: budget_figure(design, units, dossier.schedule),
         "Each bar fills up from static head and line over the stages in flow order to the spare; the "
         "dashed line is the pressure limit. Where a stage's share differs between the two bars, "
         "the optimum moved pressure.",
