@@ -8,8 +8,10 @@ from scipy.optimize import least_squares as reference_least_squares
 
 from tests.curves.plain import plain
 from tests.curves.test_laws import PARAMETERS
-from trainopt.curves.fit import Fit, Readings, contrasts, fit_law, fit_laws
+from trainopt.curves.fit import Fit, Readings, _Model, contrasts, fit_law, fit_laws
+from trainopt.curves.forms import forms
 from trainopt.curves.laws import LAWS
+from trainopt.curves.solver import least_squares
 
 LOTS = {"a": (1.0, 1.0), "b": (1.2, 0.9), "c": (0.9, 1.15)}
 FULL = {**PARAMETERS, "cubic": (1e-3, 3e-5, -3e-7, 2e-9), "hermia": (1e-3, 0.008, 1.3)}
@@ -186,3 +188,31 @@ def test_a_medium_that_does_not_foul_leaves_the_fouling_of_lots_open() -> None:
     fit = fit_law(data, LAWS["intermediate"])
     assert np.exp(fit.log_rho[1] - fit.log_rho[0]) == pytest.approx(1.1, rel=0.02)
     assert np.all(np.isfinite(fit.parameters))
+
+
+@pytest.mark.parametrize("name", sorted(set(LAWS) - {"cubic", "quadratic"}))
+def test_no_start_leads_lower(name: str) -> None:
+    """Three lots that follow some other law, steep or flat: twelve random starts find nothing better."""
+    rng = np.random.default_rng(5)
+    law = LAWS[name]
+    loading, lot = np.tile(np.linspace(2.0, 130.0, 40), 3), np.repeat([0, 1, 2], 40)
+    rho, kappa = np.array([0.9, 1.0, 1.1])[lot], np.array([1.1, 1.0, 0.9])[lot]
+    for _ in range(8):
+        source = LAWS[str(rng.choice(sorted(set(LAWS) - {"cubic", "quadratic"})))]
+        p = [1e-3, *rng.uniform(0.0005, 0.02, len(source.parameters) - 1)]
+        while source.pole(*p) < 200.0:
+            p[1:] = [0.7 * value for value in p[1:]]
+        resistance = rho * source.resistance(kappa * loading, *p) * np.exp(0.03 * rng.standard_normal(120))
+        data = plain(loading, np.log(resistance), resistance, lot=lot, lots=("a", "b", "c"))
+        fit = fit_law(data, law)
+        form = next(iter(forms(law, 130.0, data.loading, data.resistance)))
+        model = _Model(data, law, form, 0.0)
+        lower, upper = np.append(form.lower, [-5.0] * 4), np.append(form.upper, [5.0] * 4)
+        for _ in range(12):
+            scale = rng.choice([0.1, 0.5, 1.0, 3.0])
+            start = np.concatenate(
+                [[np.log(1e-3)], scale * rng.uniform(0.0, 1.0, form.size - 1), 0.1 * rng.standard_normal(4)]
+            )
+            with np.errstate(all="ignore"):
+                other = least_squares(model.residuals, start, lower, upper)
+            assert not other.cost < fit.cost * (1.0 - 1e-6)

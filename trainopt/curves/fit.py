@@ -166,7 +166,7 @@ class _Model:
             if near is not None:
                 return least_squares(self.residuals, near, lower, upper, tolerance=tolerance)
             for start in self.form.starts:
-                theta = np.concatenate([start, np.zeros(free)])
+                theta = self._inside(np.concatenate([start, np.zeros(free)]))
                 found = least_squares(self.residuals, theta, lower, upper, tolerance=tolerance)
                 if best is None or found.cost < best.cost:
                     best = found
@@ -174,6 +174,18 @@ class _Model:
                     break
         assert best is not None, "a form has a start"
         return best
+
+    def _inside(self, theta: Floats) -> Floats:
+        """A start whose constants are made smaller until no reading lies past the law's pole."""
+        if self.law.polynomial:
+            return theta
+        smaller = theta.copy()
+        constants = np.array([name not in {"R0", "n"} for name in self.law.parameters])
+        for _ in range(40):
+            if float(np.max(self.readings.loading)) < self.law.pole(*self.form.natural(smaller[: self.form.size])):
+                break
+            smaller[: self.form.size][constants] *= 0.8
+        return smaller
 
     def residuals(self, theta: Floats) -> tuple[Floats, Floats]:
         form, size = self.form, self.form.size
