@@ -321,7 +321,15 @@ def simulate_figure(simulation: Simulation, units: str = "bar") -> Figure:
 
 
 def _worst(block: BlockCourse) -> LotCourse:
-    return max(block.lots, key=lambda lot: (lot.needed, float(lot.course.total.max()), float(-lot.course.flow[-1])))
+    return max(
+        block.lots, key=lambda lot: (lot.needed, float(np.nanmax(lot.course.total)), float(-lot.course.flow[-1]))
+    )
+
+
+def _known(lot: LotCourse) -> NDArray[np.bool_]:
+    """The readings up to where a stage plugs."""
+    course = lot.course
+    return np.asarray(np.isfinite(course.time) & np.isfinite(course.total) & np.isfinite(course.flow))
 
 
 def _pressure_panel(axes: Axes, block: BlockCourse, units: str) -> None:
@@ -329,22 +337,27 @@ def _pressure_panel(axes: Axes, block: BlockCourse, units: str) -> None:
 
     factor = PRESSURE_UNITS[units]
     worst = _worst(block)
-    course = worst.course
+    course, known = worst.course, _known(worst)
+    at, pressure = course.time[known], course.pressure[:, known] * factor
     halo = withStroke(linewidth=2.6, foreground=PAPER)
-    level = (course.total - course.pressure.sum(axis=0)) * factor
-    axes.fill_between(course.time, 0.0, level, facecolor=MIST, edgecolor="none", label="static and line")
+    level = course.total[known] * factor - pressure.sum(axis=0)
+    axes.fill_between(at, 0.0, level, facecolor=MIST, edgecolor="none", label="static and line")
     for k, name in enumerate(course.stages):
-        above = level + course.pressure[k] * factor
-        axes.fill_between(course.time, level, above, facecolor=STEPS[k % len(STEPS)], hatch=HATCHES[k % len(HATCHES)],
+        above = level + pressure[k]
+        axes.fill_between(at, level, above, facecolor=STEPS[k % len(STEPS)], hatch=HATCHES[k % len(HATCHES)],
                           edgecolor=INK, linewidth=0.5, label=plain(name))  # fmt: skip
         level = above
-    axes.plot(course.time, course.total * factor, color=INK, linewidth=1.8, label=f"lot {plain(worst.lot)}, worst")
+    axes.plot(at, course.total[known] * factor, color=INK, linewidth=1.8, label=f"lot {plain(worst.lot)}, worst")
+    highest = [float(course.total[known].max(initial=0.0))]
     for k, lot in enumerate(lot for lot in block.lots if lot is not worst):
-        axes.plot(lot.course.time, lot.course.total * factor, color=INK, linewidth=1.0, linestyle=_dashes(k),
-                  label=f"lot {plain(lot.lot)}", path_effects=[halo])  # fmt: skip
+        here = _known(lot)
+        axes.plot(lot.course.time[here], lot.course.total[here] * factor, color=INK, linewidth=1.0,
+                  linestyle=_dashes(k), label=f"lot {plain(lot.lot)}", path_effects=[halo])  # fmt: skip
+        highest.append(float(lot.course.total[here].max(initial=0.0)))
     axes.axhline(block.limit * factor, color=BRICK, linestyle="--", linewidth=1.1, label="limit")
     _time_line(axes, block)
-    axes.set_ylim(0.0, 1.36 * factor * max(block.limit, *(float(np.nanmax(lot.course.total)) for lot in block.lots)))
+    # What lies far beyond the limit would flatten all that matters.
+    axes.set_ylim(0.0, 1.36 * factor * min(max(block.limit, *highest), 2.5 * block.limit))
     axes.set_ylabel(f"Pressure, {units}")
     axes.set_title(plain(block.block))
     axes.legend(loc="upper left", fontsize=6.5, ncols=4)
@@ -357,19 +370,20 @@ def _dashes(k: int) -> Any:
 
 def _flow_panel(axes: Axes, block: BlockCourse) -> None:
     worst = _worst(block)
-    others = [lot for lot in block.lots if lot is not worst]
-    axes.plot(worst.course.time, worst.course.flow, color=INK, linewidth=1.8, label=f"lot {plain(worst.lot)}")
-    for k, lot in enumerate(others):
-        axes.plot(lot.course.time, lot.course.flow, color=INK, linewidth=0.9, linestyle=_dashes(k),
-                  label=f"lot {plain(lot.lot)}")  # fmt: skip
+    highest = 0.0
+    for k, lot in enumerate([worst, *(lot for lot in block.lots if lot is not worst)]):
+        here = _known(lot)
+        look: dict[str, Any] = {"linewidth": 1.8} if not k else {"linewidth": 0.9, "linestyle": _dashes(k - 1)}
+        axes.plot(lot.course.time[here], lot.course.flow[here], color=INK, label=f"lot {plain(lot.lot)}", **look)
+        highest = max(highest, float(lot.course.flow[here].max(initial=0.0)))
     _time_line(axes, block)
-    axes.set_ylim(0.0, 1.1 * max(float(lot.course.flow[np.isfinite(lot.course.flow)].max()) for lot in block.lots))
+    axes.set_ylim(0.0, 1.1 * highest or 1.0)
     axes.set_ylabel("Flow, L/h")
     axes.legend(loc="lower left", fontsize=6.5)
 
 
 def _time_line(axes: Axes, block: BlockCourse) -> None:
-    ends = [lot.needed for lot in block.lots if math.isfinite(lot.needed)]
+    ends = [float(lot.course.time[_known(lot)].max(initial=0.0)) for lot in block.lots]
     axes.axvline(block.time, color=STONE, linestyle=":", linewidth=1.2, label="block time")
     axes.set_xlim(0.0, 1.02 * max([block.time, *ends]))
 

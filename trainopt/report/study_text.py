@@ -5,6 +5,8 @@ from __future__ import annotations
 import math
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from trainopt.report.cautions import CAUTIONS
 from trainopt.report.numbers import (
     NONE,
@@ -307,6 +309,14 @@ def simulate_text(simulation: Simulation, units: str = "bar", width: int = WIDTH
             f"The worst lot takes {duration(simulation.needed)} with setups; {duration(simulation.time)} are allowed."
         )
     for block in simulation.blocks:
+        met = [(lot.limit_volume, lot.lot) for lot in block.lots if lot.limit_volume is not None]
+        if block.mode == "constant-flow" and met:
+            first, lot = min(met)
+            page.line(
+                f"{block.block}: at this flow lot {lot} meets the pressure limit at {fixed(first, 0)} L, "
+                f"before the batch is through."
+            )
+    for block in simulation.blocks:
         flow = "" if block.flow is None else f", set to {significant(block.flow)} L/h"
         page.heading(f"{block.block}: {_MODES.get(block.mode, block.mode)}{flow}; limit {pressure.text(block.limit)}")
         rows = [
@@ -315,7 +325,7 @@ def simulate_text(simulation: Simulation, units: str = "bar", width: int = WIDTH
                 fixed(lot.needed, 2),
                 fixed(lot.over_run, 2),
                 fixed(lot.limit_volume, 0) if block.mode != "constant-pressure" else NONE,
-                pressure.number(float(lot.course.total.max())),
+                pressure.number(float(np.nanmax(lot.course.total))),
                 significant(float(lot.course.flow[-1])),
                 *(pressure.number(float(values[-1])) for values in lot.course.pressure),
             )
