@@ -282,6 +282,19 @@ def test_a_large_file_reads_the_same_as_a_small_one(tmp_path: Path, monkeypatch:
         reduced(bad)
 
 
+@pytest.mark.parametrize(
+    "name", ["clock-over-midnight", "clock-with-dates", "extra-columns", "semicolon-decimal-comma"]
+)
+def test_large_files_of_every_kind_read_the_same(tmp_path: Path, name: str, monkeypatch: pytest.MonkeyPatch) -> None:
+    path = VARIANTS[name](tmp_path / "a.csv", Lab(n=601).table())
+    careful = reduced(path)
+    monkeypatch.setattr("trainopt.bench.table.LARGE", 1000)
+    assert read_table(path).numbers is not None
+    quick = reduced(path)
+    for field in ("time", "loading", "pressure", "resistance", "turbidity"):
+        np.testing.assert_allclose(getattr(quick, field), getattr(careful, field), rtol=1e-9, atol=1e-12)
+
+
 HEADERS = [
     ("time (min)", "time", "min", "time"),
     ("Time [s]", "Time", "s", "time"),

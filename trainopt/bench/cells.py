@@ -16,12 +16,15 @@ from trainopt.errors import Problem
 
 _NOT_READ = {"", "-", "--", "n/a", "na", "nd"}
 _DAY = 24.0
+MOST_CLOCK_HOURS = 1e4
+"""A clock shows fewer hours than this, a dated time more (they are counted from 2000)."""
 
 
 def column_values(table: Table, column: Column, problems: list[Problem]) -> Floats:
     """A column in canonical units, NaN where a cell is empty; each cell that is no number is a problem."""
-    if table.numbers is not None and column.unit is not None:
-        return np.asarray(table.numbers[:, column.index] * column.unit.factor)
+    if table.numbers is not None:
+        numbers = table.numbers[:, column.index]
+        return _since_first(numbers) if column.unit is None else np.asarray(numbers * column.unit.factor)
     cells = table.column(column.index)
     if column.unit is None:
         return _clock_times(table, column, cells, problems)
@@ -61,11 +64,18 @@ def _clock_times(table: Table, column: Column, cells: list[str], problems: list[
         elif cell:
             text = f"column '{column.header}': '{cell}' is not a time; expected h:mm:ss or 2026-03-01 09:30:00"
             problems.append(table.problem(table.lines[index], text))
+    return _since_first(out)
+
+
+def _since_first(hours: Floats) -> Floats:
+    """Hours since the first reading; hours of a day (not those of a dated time) go on counting past midnight."""
+    out = hours.copy()
     read = np.flatnonzero(np.isfinite(out))
-    stamped = any(STAMP.fullmatch(cell) for cell in cells)
-    passed = np.diff(out[read]) < (-np.inf if stamped else -0.5 * _DAY)
-    out[read[1:]] += _DAY * np.cumsum(passed)
-    return np.asarray(out - out[read[0]]) if len(read) else out
+    if not len(read):
+        return out
+    if out[read[0]] < MOST_CLOCK_HOURS:
+        out[read[1:]] += _DAY * np.cumsum(np.diff(out[read]) < -0.5 * _DAY)
+    return np.asarray(out - out[read[0]])
 
 
 def _stamped(cell: str) -> float:

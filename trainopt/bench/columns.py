@@ -198,6 +198,8 @@ def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -
 
 
 def _is_clock(table: Table, index: int) -> bool:
+    if table.numbers is not None:
+        return index in table.clocks
     cells = [cell for cell in table.column(index) if cell]
     return bool(cells) and sum(is_clock(cell) for cell in cells) * 2 > len(cells)
 

@@ -41,7 +41,8 @@ class Table:
     """A header, perhaps a units row, and data rows of equal width, cells stripped of blanks.
 
     `file` is the path as the user sees it, `assumed` what the reader took for granted, in words. A large
-    file has its cells as `numbers` (rows, columns), NaN where empty, in place of text.
+    file has its cells as `numbers` (rows, columns), NaN where empty, in place of text; its columns of clock times, in
+    hours, are `clocks`.
     """
 
     file: str
@@ -52,6 +53,7 @@ class Table:
     cells: tuple[tuple[str, ...], ...]
     assumed: tuple[str, ...]
     numbers: NDArray[np.float64] | None = None
+    clocks: tuple[int, ...] = ()
 
     def column(self, index: int) -> list[str]:
         """The cells of one column."""
@@ -87,9 +89,10 @@ def _table_of(path: Path, file: str, sheet: str | None) -> Table:
 
 
 def _large_table(path: Path, file: str) -> Table | None:
-    """A large CSV of plain numbers by pandas' reader; None, for the careful reader, where it holds anything else.
+    """A large CSV by pandas' reader; None, for the careful reader, where it holds what that one cannot take.
 
-    Header, delimiter and decimal mark are found in the first lines, as for a small file.
+    Header, delimiter, decimal mark and what each column holds are found in the first lines, as for a small file.
+    Columns of words are not read (NaN).
     """
     import pandas as pd
 
@@ -103,20 +106,48 @@ def _large_table(path: Path, file: str) -> Table | None:
     except InputError:
         return None
     first, width = int(table.lines[0]), len(table.header)
+    kinds = [_kind(table.column(index)) for index in range(width)]
+    used = [index for index, kind in enumerate(kinds) if kind != "words"]
     try:
         frame = pd.read_csv(
-            path, sep=delimiter, skiprows=first - 1, header=None,
-            names=list(range(width)), usecols=list(range(width)),
-            decimal="," if "decimal comma" in assumed else ".", dtype=np.float64, na_values=[""],
-            keep_default_na=False, skip_blank_lines=True, encoding="utf-8-sig", index_col=False,
+            path, sep=delimiter, skiprows=first - 1, header=None, names=list(range(width)), usecols=used,
+            decimal="," if "decimal comma" in assumed else ".", na_values=[""], keep_default_na=False,
+            dtype={index: np.float64 if kinds[index] == "numbers" else str for index in used},
+            skip_blank_lines=True, encoding="utf-8-sig", index_col=False,
         )  # fmt: skip
+        numbers = np.full((len(frame), width), np.nan)
+        for index in used:
+            numbers[:, index] = _hours(frame[index], kinds[index]) if kinds[index] != "numbers" else frame[index]
     except (ValueError, pd.errors.ParserError, UnicodeError):
         return None
-    numbers = frame.to_numpy()
     lines = np.arange(first, first + len(numbers))
     if np.isinf(numbers).any() or not 0 <= count - (first - 1) - len(numbers) + 1 <= 1:
         return None
-    return Table(file, table.header_line, table.header, table.units, lines, (), table.assumed, numbers)
+    clocks = tuple(index for index in used if kinds[index] != "numbers")
+    return Table(file, table.header_line, table.header, table.units, lines, (), table.assumed, numbers, clocks)
+
+
+def _kind(cells: list[str]) -> str:
+    """What a column holds: "numbers" (perhaps with gaps), "clock" (h:mm:ss), "stamps" (dates with times), "words"."""
+    filled = [cell for cell in cells if cell]
+    if all(is_number(cell) for cell in filled):
+        return "numbers"
+    if all(CLOCK.fullmatch(cell) and cell.count(":") == 2 for cell in filled):
+        return "clock"
+    if all(STAMP.fullmatch(cell) for cell in filled):
+        return "stamps"
+    # Two-part times and numbers with a stray word are for the careful reader.
+    return "words" if not any(_is_value(cell) for cell in filled) else "numbers"
+
+
+def _hours(cells: Any, kind: str) -> NDArray[np.float64]:
+    """Clock times of a pandas column as hours, dates with times as hours since 2000."""
+    import pandas as pd
+
+    if kind == "clock":
+        return np.asarray(pd.to_timedelta(cells.str.strip()).dt.total_seconds(), dtype=np.float64) / 3600.0
+    since = pd.to_datetime(cells.str.strip(), format="ISO8601") - pd.Timestamp(2000, 1, 1)
+    return np.asarray(since.dt.total_seconds(), dtype=np.float64) / 3600.0
 
 
 def _text_rows(raw: bytes, file: str, assumed: list[str]) -> tuple[list[Row], str]:
