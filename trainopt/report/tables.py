@@ -10,6 +10,7 @@ from dataclasses import dataclass, field
 from io import StringIO
 
 from rich import box
+from rich.cells import cell_len
 from rich.console import Console, Group, RenderableType
 from rich.padding import Padding
 from rich.table import Table
@@ -18,6 +19,8 @@ from rich.text import Text
 from trainopt.report.numbers import plain
 
 WIDTH = 100
+NARROWEST = 8
+"""Letters that a column of words keeps at least, where it has that many."""
 
 
 @dataclass
@@ -25,6 +28,7 @@ class Page:
     """Headed tables and paragraphs in order; `render` turns them into text."""
 
     parts: list[RenderableType] = field(default_factory=list)
+    needed: int = 0
 
     def line(self, text: str, style: str = "") -> None:
         """A paragraph."""
@@ -53,16 +57,23 @@ class Page:
 
         A heading `Area\\nm²` has its unit in a line of its own. `total` sets the last row off.
         """
-        table = Table(box=box.SIMPLE_HEAD, padding=(0, 1), pad_edge=False, show_edge=False)
+        table = Table(box=box.SIMPLE_HEAD, padding=(0, 1, 0, 0), pad_edge=False, show_edge=False)
+        needed = 2
         for index, name in enumerate(columns):
             words = index < left
+            heading = [plain(line) for line in name.split("\n")]
+            longest = max(cell_len(plain(text)) for text in (*heading, *(row[index] for row in rows)))
+            least = min(NARROWEST, longest) if words else longest
+            needed += least + 2
             table.add_column(
-                Text("\n".join(plain(line) for line in name.split("\n"))),
+                Text("\n".join(heading)),
                 justify="left" if words else "right",
                 overflow="fold",
                 no_wrap=not words,
                 vertical="top",
+                min_width=least,
             )
+        self.needed = max(self.needed, needed)
         for number, row in enumerate(rows):
             if total and number == len(rows) - 1:
                 table.add_section()
@@ -70,11 +81,14 @@ class Page:
         self.parts.append(Padding(table, (0, 0, 0, 2)))
 
     def render(self, width: int = WIDTH, color: bool = False) -> str:
-        """The page as text, at most `width` columns wide; escape codes only where `color` is set."""
+        """The page as text, at most `width` columns wide; escape codes only where `color` is set.
+
+        Wider only where the numbers of a table need it: a number is never cut.
+        """
         out = StringIO()
         console = Console(
             file=out,
-            width=min(width, WIDTH),
+            width=max(min(width, WIDTH), self.needed),
             force_terminal=color,
             color_system="standard" if color else None,
             markup=False,

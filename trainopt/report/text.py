@@ -138,24 +138,29 @@ def _stages(page: Page, blocks: tuple[BlockDesign, ...], pressure: Pressure) -> 
 
 
 def _blocks(page: Page, blocks: tuple[BlockDesign, ...], pressure: Pressure) -> None:
-    page.heading(f"Pressure and time of each block, pressures in {pressure.unit}")
-    rows = [
+    page.heading("Time of each block")
+    times = [
         (
             block.block,
             block.operation.replace("-", " "),
             fixed(block.time, 2),
             fixed(block.setup, 2),
             significant(block.flow),
-            pressure.number(block.pressure.limit),
-            pressure.number(block.pressure.static),
-            pressure.number(block.pressure.line),
-            pressure.number(block.pressure.stages),
-            pressure.number(block.pressure.spare),
         )
         for block in blocks
     ]
-    names = ("Limit", "Static", "Line", "Stages", "Spare")
-    page.table(("Block", "Operation", "Time\nh", "Setup\nh", "Flow\nL/h", *names), rows, 2)
+    page.table(("Block", "Operation", "Time\nh", "Setup\nh", "Flow\nL/h"), times, 2)
+    page.heading(f"Pressure of each block at the end of the batch, {pressure.unit}")
+    pressures = [
+        (
+            block.block,
+            block.worst_lot,
+            *(pressure.number(bar) for bar in (p.limit, p.static, p.line, p.stages, p.spare)),
+        )
+        for block in blocks
+        for p in (block.pressure,)
+    ]
+    page.table(("Block", "Worst lot", "Limit", "Static", "Line", "Stages", "Spare"), pressures, 2)
 
 
 def _cost(page: Page, design: Design) -> None:
