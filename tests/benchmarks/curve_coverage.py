@@ -98,9 +98,7 @@ def trial(law: str, kind: str, seed: int, folder: Path, fit_as: str) -> tuple[fl
 
 def main() -> None:
     seeds = int(sys.argv[1]) if len(sys.argv) > 1 else 200
-    print(
-        f"{seeds} seeds, 3 runs each; bias of the minimum area, its spread, and coverage of the 90 % interval"
-    )
+    print(f"{seeds} seeds, 3 runs each; bias of the minimum area, its spread, and coverage of the 90 % interval")
     print(f"{'law':<24}{'run':<10}{'bias':>9}{'spread':>9}{'coverage':>10}{'s/fit':>8}")
     with tempfile.TemporaryDirectory() as folder:
         for law in PARAMETERS:
