@@ -74,7 +74,8 @@ def problem(
     """The problem with the options that the caps allow."""
     lots = max((len(c.curves) for b in blocks for s in b.stages for c in s.candidates), default=1)
     empty = DesignProblem(
-        "by hand", volume, time, schedule, objective, hour_rate, safety_factor, tuple("abcdef"[:lots]), (), "EUR"
+        "by hand", volume, time, schedule, objective, hour_rate, safety_factor,
+        tuple(f"lot-{k:02d}" for k in range(lots)), (), "EUR",
     )
     return replace(empty, blocks=tuple(_filled(empty, one) for one in blocks))
 

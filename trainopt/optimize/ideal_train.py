@@ -1,7 +1,7 @@
 """The ideal split of a whole route: every block's ideal split, with the batch time shared so that their sum is least.
 
-A block's least weight falls with its time ever more slowly (it is convex where demands are convex in the area), so
-the time is shared by the steepest falls first, on a grid of times that is refined around the answer.
+A block's least weight falls with its time ever more slowly (it is convex where demands are convex in the area). Two
+blocks share their time by a line search, more of them by the steepest falls first, on a grid refined around the answer.
 """
 
 from __future__ import annotations
@@ -20,6 +20,7 @@ from trainopt.train.problem import Block, DesignProblem, Floats
 _POINTS = 9
 _ROUNDS = 6
 Span = tuple[float, float]
+Value = Callable[[float], float]
 
 
 @dataclass(frozen=True)
@@ -44,12 +45,10 @@ def ideal_train(problem: DesignProblem, route: Route) -> IdealTrain | None:
     if any(not low < high for low, high in spans):
         return None
     values = [_value(problem, b, route) for b in range(len(problem.blocks))]
-    if problem.schedule == "sequential" and len(spans) > 1:
-        times = _shared(values, spans, process_time(problem))
-    elif _paid_hours(problem):
-        times = tuple(_shared([value], [span], span[1])[0] for value, span in zip(values, spans, strict=True))
+    if problem.schedule == "sequential":
+        times = _in_sequence(values, spans, process_time(problem), _paid_hours(problem))
     else:
-        times = tuple(high for _, high in spans)
+        times = _each_best(values, spans, _paid_hours(problem))
     areas = [
         block_ideal(problem, block, choices, t) if choices else ()
         for block, choices, t in zip(problem.blocks, route, times, strict=True)
@@ -69,7 +68,7 @@ def _span(problem: DesignProblem, block: Block) -> Span:
     return max(least, problem.volume / block.max_flow), problem.longest_time(block)
 
 
-def _value(problem: DesignProblem, b: int, route: Route) -> Callable[[float], float]:
+def _value(problem: DesignProblem, b: int, route: Route) -> Value:
     """A block's least Σ w·A (hours included) as a function of its time; infinite where no areas do."""
     block, choices = problem.blocks[b], route[b]
     rate = problem.hour_rate if _paid_hours(problem) else 0.0
@@ -86,7 +85,37 @@ def _value(problem: DesignProblem, b: int, route: Route) -> Callable[[float], fl
     return value
 
 
-def _shared(values: Sequence[Callable[[float], float]], spans: Sequence[Span], total: float) -> tuple[float, ...]:
+def _each_best(values: Sequence[Value], spans: Sequence[Span], paid: bool) -> tuple[float, ...]:
+    """Each block's best time by itself: the longest, unless its hours are paid for."""
+    return tuple(_lowest(value, span) if paid else span[1] for value, span in zip(values, spans, strict=True))
+
+
+def _in_sequence(values: Sequence[Value], spans: Sequence[Span], total: float, paid: bool) -> tuple[float, ...]:
+    """Times that add up to at most `total` with the least sum of values."""
+    alone = _each_best(values, spans, paid)
+    if math.fsum(alone) <= total:
+        return alone
+    if len(values) != 2:
+        return _shared(values, spans, total)
+    (first, second), ((low, high), (low_2, high_2)) = values, spans
+    span = (max(low, total - high_2), min(high, total - low_2))
+    time = _lowest(lambda t: first(t) + second(total - t), span)
+    return time, total - time
+
+
+def _lowest(value: Value, span: Span) -> float:
+    """Where a convex function is least inside a span."""
+    from scipy.optimize import minimize_scalar
+
+    low, high = span
+    if not low < high:
+        return high
+    inside = float(minimize_scalar(value, bounds=span, method="bounded", options={"xatol": 1e-5 * (high - low)}).x)
+    # The search comes close to an end of the span but never to it.
+    return min((inside, high), key=value)
+
+
+def _shared(values: Sequence[Value], spans: Sequence[Span], total: float) -> tuple[float, ...]:
     """Times inside `spans`, adding up to at most `total`, with the least sum of values."""
     # Values are steepest at the short end of a span, where the first grid is therefore denser.
     grids = [low + (high - low) * (np.arange(_POINTS) / (_POINTS - 1)) ** 2 for low, high in spans]
