@@ -75,7 +75,7 @@ def test_design_in_other_units_and_for_another_objective() -> None:
     status, out, _ = run("design", HARVEST, "--units", "psi", "--objective", "cost")
     assert status == 0
     assert "Least cost" in out
-    assert "pressures in psi" in out
+    assert "at the end of the batch, psi" in out
 
 
 def test_no_design_is_status_3_with_reasons(tmp_path: Path) -> None:
