@@ -2,7 +2,9 @@
 
     python tests/benchmarks/sweep_speed.py [SCENARIO]
 
-The designs it is held against are spared reading and fitting: each gets its problem ready made from the curves fitted once.
+The designs it is held against are given twice: as calls of `design` with a case, curves fitted in each, and
+spared that, each with its problem ready made from curves fitted once. The sweep fits its curves once, which its
+time includes.
 """
 
 from __future__ import annotations
@@ -37,8 +39,8 @@ def seconds(work: Callable[[], object], repeats: int = 3) -> float:
     return best
 
 
-def one_by_one(case: Case, points: Sequence[dict[str, float]]) -> float:
-    """Mean time of a design at some of the points, s."""
+def one_by_one(case: Case, points: Sequence[dict[str, float]]) -> tuple[float, float]:
+    """Mean time of a design at some of the points, s: of a case, and of a problem ready made."""
     prepared = prepare(case)
     sample = [points[k] for k in np.linspace(0, len(points) - 1, SAMPLE).round().astype(int)]
     cases = []
@@ -53,7 +55,16 @@ def one_by_one(case: Case, points: Sequence[dict[str, float]]) -> float:
             problem = build_problem(at, prepared.curves)
             trainopt.design(Prepared(prepared.curves, problem, prepared.notices, prepared.inputs))
 
-    return seconds(work, 2) / SAMPLE
+    whole = seconds(lambda: [trainopt.design(at) for at in cases[:: SAMPLE // 8]], 2) / len(cases[:: SAMPLE // 8])
+    return whole, seconds(work, 2) / SAMPLE
+
+
+def told(what: str, count: int, whole: float, each: tuple[float, float]) -> None:
+    """Print one line of ratios."""
+    print(
+        f"{what}: {whole:.3f} s; {count} designs / sweep = {count * each[0] / whole:.0f} "
+        f"({1e3 * each[0]:.0f} ms each), curves ready {count * each[1] / whole:.1f} ({1e3 * each[1]:.0f} ms each)"
+    )
 
 
 def first_block(case: Case) -> Case:
@@ -83,16 +94,14 @@ def main() -> None:
     each = one_by_one(block, cells)
     for changes, what in ((False, "cells alone"), (None, "with changes along the time")):
         whole = seconds(lambda changes=changes: trainopt.sweep(block, vary, changes=changes))  # type: ignore[misc]
-        print(f"map 50 x 50, first block, {what}: {whole:.3f} s; a design {1e3 * each:.1f} ms; "
-              f"2500 of them / sweep = {2500 * each / whole:.0f}")  # fmt: skip
+        told(f"map 50 x 50, first block, {what}", 2500, whole, each)
 
     vary = [f"batch.volume={0.4 * volume} L..{1.4 * volume} L/200"]
     points = [{"batch.volume": v} for v in np.linspace(0.4 * volume, 1.4 * volume, 200).tolist()]
     each = one_by_one(case, points)
     for changes, what in ((False, "cells alone"), (None, "with changes")):
         whole = seconds(lambda changes=changes: trainopt.sweep(case, vary, workers=None, changes=changes))  # type: ignore[misc]
-        print(f"line of 200, {len(case.scenario.blocks)} blocks, {cores} cores, {what}: {whole:.3f} s; "
-              f"a design {1e3 * each:.1f} ms; 200 of them / sweep = {200 * each / whole:.1f}")  # fmt: skip
+        told(f"line of 200, {len(case.scenario.blocks)} blocks, {cores} cores, {what}", 200, whole, each)
 
     sweep = command("sweep", str(path), "--vary", f"batch.volume={volume} L", "--no-changes", "--json")
     design = command("design", str(path), "--json")

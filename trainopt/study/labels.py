@@ -125,11 +125,13 @@ def thinned(labels: Complete, tie: float) -> Complete:
     """
     if len(labels) < 2:
         return labels
+    order = np.argsort(labels.objective, kind="stable")
+    objective, finish = labels.objective[order], labels.finish[order]
+    fastest = np.minimum.accumulate(finish)
+    clearly = np.searchsorted(objective, objective - tie, side="left")
+    outpaced = (clearly > 0) & (finish >= fastest[np.maximum(clearly - 1, 0)])
+    labels = labels.take(order[~outpaced])
     labels = labels.take(np.lexsort((labels.order, labels.spent, labels.finish, labels.objective)))
-    fastest = np.minimum.accumulate(labels.finish)
-    clearly = np.searchsorted(labels.objective, labels.objective - tie, side="left")
-    outpaced = (clearly > 0) & (labels.finish >= fastest[np.maximum(clearly - 1, 0)])
-    labels = labels.take(np.flatnonzero(~outpaced))
     return labels.take(np.flatnonzero(~_beaten_among_equals(labels)))
 
 
