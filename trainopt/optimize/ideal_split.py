@@ -153,7 +153,7 @@ def _equal_marginals(stages: Sequence[IdealStage], budget: float, lots: Floats) 
     spans = [(top * 1e-12, top) for top in tops]
     loadings = tops
     for _ in range(_LEVELS):
-        grids = [np.geomspace(low, high, 2 * _POINTS + 1) for low, high in spans]
+        grids = [_grid(low, high) for low, high in spans]
         tables = [_table(s, grid, lots) for s, grid in zip(stages, grids, strict=True)]
         if sum(float(table[2][0]) for table in tables) > budget:
             return None
@@ -161,6 +161,16 @@ def _equal_marginals(stages: Sequence[IdealStage], budget: float, lots: Floats) 
         loadings = [float(np.interp(level, table[0], table[1])) for table in tables]
         spans = [_around(grid, loading) for grid, loading in zip(grids, loadings, strict=True)]
     return tuple(s.loading_area / loading for s, loading in zip(stages, loadings, strict=True))
+
+
+_STEPS = np.linspace(0.0, 1.0, 2 * _POINTS + 1)
+
+
+def _grid(low: float, high: float) -> Floats:
+    """Geometric from low to high, both exact."""
+    grid = low * (high / low) ** _STEPS
+    grid[-1] = high
+    return np.asarray(grid)
 
 
 def _table(stage: IdealStage, grid: Floats, lots: Floats) -> tuple[Floats, Floats, Floats]:
