@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 import warnings
+from functools import cache
 from itertools import pairwise
 from xml.etree.ElementTree import Element
 
@@ -21,16 +22,22 @@ from trainopt.report.sections import sections
 from trainopt.report.style import INK, PAPER, STEPS, contrast, readable_on
 
 SHAPES = shapes()
-PAGES = {name: report_html(shape) for name, shape in SHAPES.items()}
 
 
-def parsed(page: str) -> Element:
+@cache
+def page(name: str) -> str:
+    return report_html(SHAPES[name])
+
+
+def parsed(html: str) -> Element:
     parser = html5lib.HTMLParser(strict=True, namespaceHTMLElements=False)
-    tree: Element = parser.parse(page)
+    tree: Element = parser.parse(html)
     return tree
 
 
-TREES = {name: parsed(page) for name, page in PAGES.items()}
+@cache
+def tree_of(name: str) -> Element:
+    return parsed(page(name))
 
 
 def words(element: Element) -> str:
@@ -39,7 +46,7 @@ def words(element: Element) -> str:
 
 @pytest.fixture(params=list(SHAPES))
 def tree(request: pytest.FixtureRequest) -> Element:
-    return TREES[request.param]
+    return tree_of(request.param)
 
 
 def test_headings_come_in_order(tree: Element) -> None:
@@ -59,7 +66,7 @@ def test_every_figure_has_a_caption_and_words_for_those_who_cannot_see_it(tree: 
 
 
 def test_text_in_pictures_is_text() -> None:
-    figures = re.findall(r"<svg.*?</svg>", PAGES["usual"], flags=re.DOTALL)
+    figures = re.findall(r"<svg.*?</svg>", page("usual"), flags=re.DOTALL)
     assert len(figures) == 8
     assert all("<text" in figure for figure in figures)
     assert "primary" in figures[0]
@@ -100,15 +107,15 @@ def test_nothing_is_fetched_and_nothing_runs(tree: Element) -> None:
 
 
 def test_hostile_names_stand_as_they_are() -> None:
-    text = "".join(TREES["hostile"].itertext()).replace("\u200b", "")
+    text = "".join(tree_of("hostile").itertext()).replace("\u200b", "")
     for name in HOSTILE:
         if name == LONG:
             continue
         assert plain(name) in text
     assert LONG in text
     assert "49{%" not in text
-    assert "\u202e" not in PAGES["hostile"]
-    assert "\x1b" not in PAGES["hostile"]
+    assert "\u202e" not in page("hostile")
+    assert "\x1b" not in page("hostile")
 
 
 def test_contrast() -> None:
@@ -122,15 +129,15 @@ def test_contrast() -> None:
 
 
 def test_the_page_colors_text_only_with_what_was_checked() -> None:
-    css = PAGES["usual"].split("<style>")[1].split("</style>")[0]
+    css = page("usual").split("<style>")[1].split("</style>")[0]
     colors = set(re.findall(r"(?<![-\w])color:\s*([^;}]+)", css))
     assert colors <= {"var(--ink)", "var(--pine)", "var(--quiet)", "inherit"}
-    fills = set(re.findall(r"<text[^>]*fill: (#[0-9a-f]{6})", PAGES["usual"]))
+    fills = set(re.findall(r"<text[^>]*fill: (#[0-9a-f]{6})", page("usual")))
     assert fills <= {INK, PAPER, COLORS["brick"]}
 
 
 def test_sections_come_in_reading_order() -> None:
-    titles = [words(e) for e in TREES["usual"].iter("h2")]
+    titles = [words(e) for e in tree_of("usual").iter("h2")]
     expected = [
         "Answer",
         "Train",
@@ -146,11 +153,11 @@ def test_sections_come_in_reading_order() -> None:
         "Provenance",
     ]
     assert [title for title in titles if title in expected] == expected
-    assert [words(e) for e in TREES["no-design"].iter("h2")] == ["Answer", "Assumptions and warnings", "Provenance"]
+    assert [words(e) for e in tree_of("no-design").iter("h2")] == ["Answer", "Assumptions and warnings", "Provenance"]
 
 
 def test_cautions_and_provenance_are_there() -> None:
-    text = words(TREES["usual"])
+    text = words(tree_of("usual"))
     for caution in CAUTIONS:
         assert caution in text
     for fact in ("2026-01-02T03:04:05+00:00", "highspy", "sha256:00", "Lower bound", "Gap"):
@@ -158,20 +165,20 @@ def test_cautions_and_provenance_are_there() -> None:
 
 
 def test_no_design_says_what_would_do() -> None:
-    text = words(TREES["no-design"])
+    text = words(tree_of("no-design"))
     assert "No design meets every limit" in text
     assert "2.31 bar where 1.4 bar is allowed" in text
-    assert not list(TREES["no-design"].iter("figure"))
+    assert not list(tree_of("no-design").iter("figure"))
 
 
 def test_the_same_dossier_gives_the_same_page() -> None:
-    assert report_html(shapes()["usual"]) == PAGES["usual"]
+    assert report_html(shapes()["usual"]) == page("usual")
 
 
 def test_pressure_in_the_unit_asked_for() -> None:
-    page = report_html(SHAPES["usual"], "psi")
-    assert "20.3" in page
-    table = words(next(iter(parsed(page).find(".//section[@id='budget']").iter("table"))))  # type: ignore[union-attr]
+    psi = report_html(SHAPES["usual"], "psi")
+    assert "20.3" in psi
+    table = words(next(iter(parsed(psi).find(".//section[@id='budget']").iter("table"))))  # type: ignore[union-attr]
     assert "psi" in table
     assert "bar" not in table
 
@@ -185,7 +192,7 @@ def test_parts_add_up_and_gains_are_named() -> None:
     (parts,) = [s for s in sections(SHAPES["usual"]) if s.key == "parts"]
     *rows, total = parts.tables[0].rows
     assert sum(row[1] for row in rows) == pytest.approx(total[1])  # type: ignore[misc, arg-type]
-    text = words(TREES["usual"])
+    text = words(tree_of("usual"))
     assert "0.12 bar more saves 0.9 m2 in secondary" in text
     assert "clarification: pressure" in text
     assert "12 × oat-coarse-09" in text
