@@ -200,7 +200,7 @@ def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: boo
     page.line(
         f"Largest batch in {duration(rating.time)}: {fixed(rating.largest_volume, 1)} L, "
         f"held by {limit_text(rating.limited_by)}. "
-        f"Shortest time for {trimmed(rating.volume)} L: {duration(rating.shortest_time)}."
+        f"{_shortest(rating)}"
     )
     page.line(
         f"Largest common safety factor for {trimmed(rating.volume)} L: {fixed(rating.safety_factor, 2)}"
@@ -258,6 +258,12 @@ def _rate_headline(rating: Rating) -> str:
     if rating.status == "passes":
         return f"The train passes: {batch} go through with every limit met."
     return f"The train fails: {batch} do not go through with every limit met."
+
+
+def _shortest(rating: Rating) -> str:
+    if rating.shortest_time is None:
+        return f"No time is long enough for {trimmed(rating.volume)} L: {limit_text(rating.forbidden_by)}."
+    return f"Shortest time for {trimmed(rating.volume)} L: {duration(rating.shortest_time)}."
 
 
 def _rated_stages(page: Page, rating: Rating, pressure: Pressure) -> None:

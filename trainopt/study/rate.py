@@ -56,7 +56,8 @@ class Rating:
     `status` "passes" or "fails"; `volume` L and `time` h as the scenario has them; `largest_volume` L in that
     time, `shortest_time` h for that volume (None: never); `safety_factor` the largest common derating with
     which the batch still goes through (None: with none); `derated_by` what all areas were divided by;
-    `limited_by` what holds the largest batch. `blocks` as in a design, in the time allowed.
+    `limited_by` what holds the largest batch; `forbidden_by` what forbids the
+    scenario's batch at any time ("" where nothing does). `blocks` as in a design, in the time allowed.
     """
 
     scenario: str
@@ -73,6 +74,7 @@ class Rating:
     lots: tuple[LotRating, ...]
     batches: tuple[BatchRating, ...]
     block_names: tuple[str, ...] = ()
+    forbidden_by: str = ""
     warnings: tuple[Notice, ...] = ()
     inputs: Mapping[str, str] = field(default_factory=dict)
 
@@ -112,7 +114,7 @@ def rate_train(case: Case, curves: Mapping[str, Curve], train: Train, volumes: S
     """Rate a fixed train at the scenario's batch and at each of `volumes`."""
     problem = train.problem
     volume = problem.volume
-    largest = largest_volume(train)
+    largest, shortest = largest_volume(train), shortest_time(train, volume)
     times = times_at(train, volume)
     passes = bool(train.passes(np.array([volume]))[0])
     return Rating(
@@ -121,7 +123,7 @@ def rate_train(case: Case, curves: Mapping[str, Curve], train: Train, volumes: S
         volume=volume,
         time=problem.time,
         largest_volume=largest,
-        shortest_time=shortest_time(train, volume),
+        shortest_time=shortest,
         safety_factor=largest_derating(train, volume),
         derated_by=problem.safety_factor,
         limited_by=limit_at(train, largest),
@@ -130,6 +132,7 @@ def rate_train(case: Case, curves: Mapping[str, Curve], train: Train, volumes: S
         lots=tuple(_lot(train, lot, times) for lot in range(len(problem.lots))),
         batches=tuple(_batch(train, v) for v in volumes),
         block_names=tuple(block.name for block in problem.blocks),
+        forbidden_by="" if shortest is not None else limit_at(train, volume),
         warnings=tuple(case_notices(case, curves)),
         inputs=case.inputs(),
     )
