@@ -22,9 +22,7 @@ Variables = Sequence[Any]
 
 def linear(terms: Sequence[tuple[float, Any]], constant: float = 0.0) -> LinearExpression:
     """Σ coefficient·variable + constant."""
-    return LinearExpression(
-        constant=constant, linear_coefs=[a for a, _ in terms], linear_vars=[v for _, v in terms]
-    )
+    return LinearExpression(constant=constant, linear_coefs=[a for a, _ in terms], linear_vars=[v for _, v in terms])
 
 
 def one_option(index: Index, x: Variables) -> Iterator[tuple[int, Row]]:
@@ -34,7 +32,7 @@ def one_option(index: Index, x: Variables) -> Iterator[tuple[int, Row]]:
         yield place, (1.0, linear([(1.0, v) for v in here]), 1.0)
 
 
-def route_start(index: Index, arcs: dict[tuple[int, int], Any]) -> Row:
+def route_start(arcs: dict[tuple[int, int], Any]) -> Row:
     """Σ_{(source, n)} f = 1: one route through the train."""
     return 1.0, linear([(1.0, f) for (tail, _), f in arcs.items() if tail == SOURCE]), 1.0
 
@@ -49,9 +47,7 @@ def route_out(index: Index, x: Variables, arcs: dict[tuple[int, int], Any]) -> I
     yield from _throughput(index, x, arcs, 0)
 
 
-def _throughput(
-    index: Index, x: Variables, arcs: dict[tuple[int, int], Any], end: int
-) -> Iterator[tuple[int, Row]]:
+def _throughput(index: Index, x: Variables, arcs: dict[tuple[int, int], Any], end: int) -> Iterator[tuple[int, Row]]:
     for n, node in enumerate(index.nodes):
         flow = [(1.0, f) for arc, f in arcs.items() if arc[end] == n]
         yield n, (0.0, linear([*flow, *((-1.0, x[k]) for k in node.options)]), 0.0)

@@ -10,7 +10,7 @@ import numpy as np
 
 from trainopt.optimize.ideal_split import IdealStage, ideal_areas, loading_limit
 from trainopt.optimize.margins import limiting, stage_safety_factor
-from trainopt.optimize.recheck import march_stages
+from trainopt.optimize.recheck import flow_of, march_stages
 from trainopt.optimize.times import BlockChoice, Choice, Route
 from trainopt.train.march import end_pressures
 from trainopt.train.problem import Block, DesignProblem, Floats
@@ -71,7 +71,7 @@ def _block(picked: Picked, b: int) -> BlockDesign:
         operation=block.operation,
         time=time,
         setup=block.setup,
-        flow=problem.volume / time,
+        flow=flow_of(problem, time),
         pressure=BlockPressure(block.pressure, block.static, line, used, block.head - line - used),
         budget=block.budget(time, problem.volume),
         demand=float(demands[:, lot].sum()),
@@ -88,9 +88,9 @@ def _end_pressures(
     problem: DesignProblem, block: Block, choices: BlockChoice, time: float, lot: int, demands: Floats
 ) -> tuple[Floats, float]:
     """Each stage's pressure and the line's at the end of the batch, worst lot, derated area, bar."""
-    flow = problem.volume / time
-    if block.operation == "constant-flow":
-        return demands[:, lot] / time, block.line * flow
+    flow = flow_of(problem, time)
+    if not choices or block.operation == "constant-flow":
+        return demands[:, lot] / time, block.line * flow if block.line > 0.0 else 0.0
     stages = march_stages(choices, lot, problem.safety_factor)
     shares = end_pressures(stages, problem.volume, block.pressure, block.line, block.static)
     return shares, block.head - float(np.sum(shares))
@@ -123,10 +123,8 @@ def _stage(
     )
 
 
-def block_ideal(
-    problem: DesignProblem, block: Block, choices: BlockChoice, time: float
-) -> tuple[float, ...] | None:
-    """Areas of the ideal split of the picked media within the block's budget at its time; F, caps, flux and ratings included."""
+def block_ideal(problem: DesignProblem, block: Block, choices: BlockChoice, time: float) -> tuple[float, ...] | None:
+    """Areas of the ideal split of the picked media within the block's budget at its time and all its limits."""
     if not choices:
         return None
     stages = [ideal_stage(problem, block, choice, time) for choice in choices]
@@ -153,5 +151,3 @@ def ideal_stage(problem: DesignProblem, block: Block, choice: Choice, time: floa
         weight=cost if problem.objective == "cost" and cost > 0.0 else 1.0,
         suffix_budget=suffix,
     )
-
-

@@ -83,9 +83,9 @@ class Index:
                 yield n, SINK
             for k, later in enumerate(self.nodes[n + 1 :], start=n + 1):
                 after = later.candidate.after
-                if later.place > node.place and self._skippable(node.place + 1, later.place):
-                    if after is None or node.candidate.medium in after:
-                        yield n, k
+                near = later.place > node.place and self._skippable(node.place + 1, later.place)
+                if near and (after is None or node.candidate.medium in after):
+                    yield n, k
         if self._skippable(0, total):
             yield SOURCE, SINK
 
@@ -101,7 +101,7 @@ class Index:
 
 
 def undominated_lots(demand: Floats) -> tuple[int, ...]:
-    """Places of the rows of D, shape (lots, n), that no other row equals or exceeds everywhere (the first of equals)."""
+    """Places of the rows of D, shape (lots, n), that no other row equals or exceeds everywhere (first of equals)."""
     order = np.argsort(-demand.sum(axis=1), kind="stable")
     kept: list[int] = []
     for s in order.tolist():

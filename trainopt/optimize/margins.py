@@ -48,9 +48,7 @@ def _most(problem: DesignProblem, choice: Choice) -> float:
     return choice.candidate.loading_cap * (1.0 + CAP_SLACK) / _loading_at_one(problem, choice)
 
 
-def stage_safety_factor(
-    problem: DesignProblem, block: Block, choices: BlockChoice, time: float, place: int
-) -> float:
+def stage_safety_factor(problem: DesignProblem, block: Block, choices: BlockChoice, time: float, place: int) -> float:
     """The largest derating of one stage alone, the others at F, that still meets every limit."""
 
     def holds(factor: Floats) -> NDArray[np.bool_]:
@@ -76,9 +74,7 @@ def common_safety_factor(problem: DesignProblem, route: Route, times: Sequence[f
     return largest_where(holds, min(_most(problem, choice) for choice in choices), 1e-12)
 
 
-def limiting(
-    full: DesignProblem, problem: DesignProblem, route: Route, block: int, place: int
-) -> str:
+def limiting(full: DesignProblem, problem: DesignProblem, route: Route, block: int, place: int) -> str:
     """The limit that the next smaller area of this stage's medium would break, all else as picked.
 
     `full` is the unpruned problem, where the next smaller area is looked up; "module-size" where no smaller area is
@@ -110,5 +106,3 @@ def _same_candidate(full: DesignProblem, block: int, choice: Choice) -> Candidat
         if stage.name == choice.stage.name:
             return next(c for c in stage.candidates if c.medium == choice.candidate.medium)
     raise LookupError(choice.stage.name)
-
-

@@ -27,7 +27,7 @@ def build_model(index: Index) -> Any:
     else:
         model.f = pyo.Var(index.arcs, bounds=(0.0, 1.0))
         arcs = dict(model.f.items())
-        model.route_start = pyo.Constraint(expr=rows.route_start(index, arcs))
+        model.route_start = pyo.Constraint(expr=rows.route_start(arcs))
         _add(model, "route_in", dict(rows.route_in(index, x, arcs)))
         _add(model, "route_out", dict(rows.route_out(index, x, arcs)))
     _add(model, "pressure_budget", dict(rows.pressure_budget(index, x, t)))

@@ -37,22 +37,27 @@ def recheck(problem: DesignProblem, route: Route, times: tuple[float, ...]) -> N
         raise DefectError("the design failed its independent re-check: " + "; ".join(broken))
 
 
+def flow_of(problem: DesignProblem, time: float) -> float:
+    """Mean flow of a block in L/h; infinite for a block that nothing slows (no stage, no line, no pump limit)."""
+    return problem.volume / time if time > 0.0 else math.inf
+
+
 def _time_broken(problem: DesignProblem, times: tuple[float, ...]) -> Iterator[str]:
     spent = [t + b.setup for t, b in zip(times, problem.blocks, strict=True)]
     used = sum(spent) if problem.schedule == "sequential" else max(spent)
     if used > problem.time * (1.0 + ROOM):
         yield f"the batch takes {used:.6g} h of {problem.time:.6g} h"
     for block, time in zip(problem.blocks, times, strict=True):
-        flow = problem.volume / time
+        flow = flow_of(problem, time)
         if not block.min_flow * (1.0 - ROOM) <= flow <= block.max_flow * (1.0 + ROOM):
             yield f"block '{block.name}' flows at {flow:.6g} L/h, outside its pump's range"
 
 
-def _block_broken(
-    problem: DesignProblem, block: Block, choices: BlockChoice, time: float, lot: int
-) -> Iterator[str]:
+def _block_broken(problem: DesignProblem, block: Block, choices: BlockChoice, time: float, lot: int) -> Iterator[str]:
     stages = march_stages(choices, lot, problem.safety_factor)
-    flow = problem.volume / time
+    flow = flow_of(problem, time)
+    if not choices and math.isinf(flow):
+        return
     if block.operation == "constant-pressure":
         course = march.constant_pressure(stages, problem.volume, block.pressure, block.line, block.static)
         if not course.time[-1] <= time * (1.0 + ROOM):

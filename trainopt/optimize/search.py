@@ -54,7 +54,7 @@ def best_route(problem: DesignProblem, options: SolverOptions | None = None) -> 
 
 
 def _hopeless(index: Index) -> bool:
-    """Whether some block has no time, a stage that must be used has no option, or no route is allowed: then there is nothing to solve."""
+    """Whether some block has no time, a stage that must be used no option, or no route is allowed."""
     problem = index.problem
     for block in problem.blocks:
         longest = problem.longest_time(block)
@@ -163,7 +163,7 @@ class _Search:
         return places
 
     def _keep_spare(self, route: Route, places: list[int]) -> None:
-        """From now on no less spare; then a fixed order of options, so that equal designs do not depend on the solver."""
+        """From now on no less spare; then a fixed order of options, so that no equal design depends on the solver."""
         spent = sum(
             float(np.sum([c.demand for c in choices], axis=0).max()) / block.head
             for block, choices in zip(self.problem.blocks, route, strict=True)

@@ -1,7 +1,7 @@
 """From the Pyomo model to HiGHS and back: one matrix, one solver, several objectives in turn.
 
-The model is compiled once to a sparse matrix; the tie-breaks of model.md, section 4, change the costs and add a row to the
-same HiGHS instance, warm-started from the answer before.
+The model is compiled once to a sparse matrix; the tie-breaks of model.md, section 4, change the costs and add a row
+to the same HiGHS instance, warm-started from the answer before.
 """
 
 from __future__ import annotations
@@ -90,7 +90,7 @@ class Solver:
 
     def __init__(self, matrix: Matrix, time_limit: float | None = None, seed: int = 0, threads: int = 1) -> None:
         with _quiet():
-            self._highs = highspy.Highs()
+            self._highs: Any = highspy.Highs()  # type: ignore[no-untyped-call]
         options = {
             "output_flag": False, "mip_rel_gap": 0.0, "mip_abs_gap": 0.0, "threads": threads, "random_seed": seed,
             "mip_feasibility_tolerance": 1e-9, "primal_feasibility_tolerance": 1e-9,
@@ -104,9 +104,7 @@ class Solver:
 
     def add_row(self, lower: float, upper: float, places: Sequence[int], values: Sequence[float]) -> None:
         """Add lower ≤ Σ values·v[places] ≤ upper."""
-        self._highs.addRow(
-            lower, upper, len(places), np.array(places, dtype=np.int32), np.array(values, dtype=float)
-        )
+        self._highs.addRow(lower, upper, len(places), np.array(places, dtype=np.int32), np.array(values, dtype=float))
 
     def add_variable(self, low: float, high: float, cost: float = 0.0) -> int:
         """Add a continuous variable and return its place."""

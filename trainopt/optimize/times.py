@@ -1,7 +1,8 @@
 """Block times of a pick in closed form, and how spare time is shared out.
 
 A pick is one option per used stage. Every limit on it reads "this block takes at least so long", so that a pick
-is feasible exactly if its blocks' shortest times fit the batch time. It checks what HiGHS returns, and shares no code with the model.
+is feasible exactly if its blocks' shortest times fit the batch time. It checks what HiGHS returns, and shares no code
+with the model.
 """
 
 from __future__ import annotations
@@ -92,7 +93,8 @@ def block_times(problem: DesignProblem, route: Route) -> tuple[float, ...] | Non
 def share_time(problem: DesignProblem, bounds: Sequence[TimeBounds]) -> tuple[float, ...] | None:
     """Block times within `bounds`: the shortest where an hour costs, else sharing the spare time.
 
-    Spare time goes where the smallest relative spare pressure 1 − t_pressure/t is, which makes the smallest as large as can be.
+    Spare time goes where the smallest relative spare pressure 1 − t_pressure/t is, which makes the smallest as large
+    as can be.
     """
     allowed = _allowed(problem)
     slack = TIME_SLACK * problem.time
@@ -100,7 +102,7 @@ def share_time(problem: DesignProblem, bounds: Sequence[TimeBounds]) -> tuple[fl
         if not (bound.least <= most + slack and bound.least <= bound.most + slack):
             return None
     least = [bound.least for bound in bounds]
-    most = [max(min(bound.most, own), bound.least) for bound, own in zip(bounds, allowed, strict=True)]
+    longest = [max(min(bound.most, own), bound.least) for bound, own in zip(bounds, allowed, strict=True)]
     if problem.schedule == "sequential":
         spare = process_time(problem) - sum(least)
         if spare < -slack:
@@ -108,8 +110,8 @@ def share_time(problem: DesignProblem, bounds: Sequence[TimeBounds]) -> tuple[fl
     if problem.objective == "cost" and problem.hour_rate > 0.0:
         return tuple(least)
     if problem.schedule != "sequential":
-        return tuple(most)
-    return _leveled([bound.pressure for bound in bounds], least, most, process_time(problem))
+        return tuple(longest)
+    return _leveled([bound.pressure for bound in bounds], least, longest, process_time(problem))
 
 
 def process_time(problem: DesignProblem) -> float:
@@ -134,15 +136,21 @@ def _leveled(pressure: list[float], least: list[float], most: list[float], total
     if sum(least) >= total:
         return tuple(least)
     weights = [max(p, 1e-12 * total) for p in pressure]
+    # Each block's time rises with the level between these two.
+    starts = [low / w for w, low in zip(weights, least, strict=True)]
+    ends = [high / w for w, high in zip(weights, most, strict=True)]
 
     def at(level: float) -> list[float]:
-        return [min(max(w * level, low), high) for w, low, high in zip(weights, least, most, strict=True)]
+        return [
+            low if level <= start else high if level >= end else w * level
+            for w, low, high, start, end in zip(weights, least, most, starts, ends, strict=True)
+        ]
 
-    breaks = sorted({low / w for w, low in zip(weights, least, strict=True)}
-                    | {high / w for w, high in zip(weights, most, strict=True) if math.isfinite(high)})  # fmt: skip
-    below = max((level for level in breaks if sum(at(level)) <= total), default=0.0)
-    moving = sum(w for w, low, high in zip(weights, least, most, strict=True) if low <= w * below < high)
-    return tuple(at(below + (total - sum(at(below))) / moving if moving > 0.0 else below))
+    breaks = sorted(level for level in {*starts, *ends} if math.isfinite(level))
+    below = max(level for level in breaks if sum(at(level)) <= total)
+    moving = sum(w for w, start, end in zip(weights, starts, ends, strict=True) if start <= below < end)
+    level = below + (total - sum(at(below))) / moving if moving > 0.0 else below
+    return tuple(at(min([level, *(later for later in breaks if later > below)])))
 
 
 def objective_of(problem: DesignProblem, route: Route, times: Sequence[float]) -> float:

@@ -49,7 +49,7 @@ class Course:
 
     @property
     def inlet(self) -> Floats:
-        """Pressure at each stage's inlet, shape (stages, n): what lies downstream of it, the line and the static head."""
+        """Pressure at each stage's inlet, shape (stages, n): all that lies downstream, line and static too."""
         downstream = np.cumsum(self.pressure[::-1], axis=0)[::-1]
         rest = self.total - self.pressure.sum(axis=0)
         return np.asarray(downstream + rest)
@@ -104,7 +104,7 @@ def flow_then_pressure(
     static: float,
     points: int = POINTS,
 ) -> Course:
-    """Constant flow in L/h until the total pressure meets `pressure` in bar, then held there to the end of the batch."""
+    """Constant flow in L/h until the total pressure meets `pressure` in bar, then held there to the batch's end."""
     met = limit_volume(stages, volume, flow, pressure, line, static)
     if met is None:
         return constant_flow(stages, volume, flow, line, static, points)

@@ -67,13 +67,15 @@ def design_notices(
             if loading * worst > curve.tested_loading * (1.0 + 1e-9):
                 yield Notice(
                     "beyond-tested-loading",
-                    f"{stage.stage}: the design loading {loading:.4g} L/m2 (safety factor included, worst lot) is beyond "
-                    f"the {curve.tested_loading / worst:.4g} L/m2 that was tested; the given loading limit allows it",
+                    f"{stage.stage}: the design loading {loading:.4g} L/m2 (safety factor included, worst lot) is "
+                    f"beyond the {curve.tested_loading / worst:.4g} L/m2 that was tested; "
+                    "the given loading limit allows it",
                 )
             if stage.flux > curve.tested_flux * (1.0 + 1e-9):
                 yield Notice(
                     "beyond-tested-flux",
-                    f"{stage.stage}: the flux {stage.flux:.4g} LMH is beyond the {curve.tested_flux:.4g} LMH that was tested",
+                    f"{stage.stage}: the flux {stage.flux:.4g} LMH is beyond the {curve.tested_flux:.4g} LMH "
+                    "that was tested",
                 )
             feed = curve.feed_loading
             if upstream is not None and feed is not None and loaded > feed * (1.0 + 1e-9):

@@ -44,10 +44,10 @@ class Cap:
         return loading <= self.loading * (1.0 + CAP_SLACK)
 
 
-def cheapest_holder(holders: Mapping[str, Holder], module: str, counts: NDArray[np.int64]) -> tuple[
-    tuple[tuple[str, int] | None, ...], Floats
-]:
-    """For each count the holder type and number that cost least per batch (ties: fewer, then by name), and that cost."""
+def cheapest_holder(
+    holders: Mapping[str, Holder], module: str, counts: NDArray[np.int64]
+) -> tuple[tuple[tuple[str, int] | None, ...], Floats]:
+    """For each count the holder type and number that cost least per batch (ties: fewer, then by name), and the cost."""
     usable = [(name, holder) for name, holder in sorted(holders.items()) if module in holder.modules]
     if not usable:
         return (None,) * len(counts), np.zeros(len(counts))
@@ -76,14 +76,15 @@ def module_options(
 ) -> Options:
     """The options of one module type, before any cap; `demand` is left empty."""
     entry = catalog.modules[module]
-    area = counts * entry.area
+    area = np.asarray(counts * entry.area, dtype=np.float64)
     holders, holders_cost = cheapest_holder(catalog.holders, module, counts)
     flush = medium.flush.volume if medium.flush is not None else 0.0
     product = costs.product
     lost = (1.0 - product.recovered) * product.titer * product.value if product is not None else 0.0
-    modules_cost, flush_cost = counts * entry.price, flush * area * costs.flush
-    product_cost = lost * entry.hold_up * counts
-    total = modules_cost + holders_cost + flush_cost + product_cost
+    modules_cost: Floats = np.asarray(counts * entry.price, dtype=np.float64)
+    flush_cost: Floats = np.asarray(flush * costs.flush * area)
+    product_cost: Floats = np.asarray(lost * entry.hold_up * counts, dtype=np.float64)
+    total: Floats = modules_cost + holders_cost + flush_cost + product_cost
     return Options(
         module=(module,) * len(counts),
         count=counts,

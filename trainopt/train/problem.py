@@ -47,12 +47,12 @@ class Options:
 
 @dataclass(frozen=True)
 class Dropped:
-    """Options that were left out before the model was built: why, how many, and the cap that did it."""
+    """Options that were left out before the model was built: why, how many, and the cap that did it, L/m²."""
 
     code: str  # "loading-tested" | "loading-limit" | "turbidity" | "pole" | "too-slow" | "dominated"
     module: str  # "" where the reason holds for every module of the medium
     options: int
-    limit_L_m2: float | None
+    limit: float | None
     text: str
 
 
