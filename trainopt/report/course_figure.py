@@ -83,6 +83,6 @@ def _panel(axes: Axes, courses: Sequence[Course], factor: float) -> None:
         color = BRICK if course.derated else INK
         axes.plot(course.time, course.total * factor, color=color, linewidth=1.0, linestyle=dashes, label=label)
     axes.axhline(worst.limit * factor, color=BRICK, linestyle="--", linewidth=1.0, label="limit")
-    axes.set_xlim(0.0, float(worst.time[-1]))
+    axes.set_xlim(0.0, max(float(course.time[-1]) for course in courses))
     axes.set_ylim(0.0, 1.08 * max(worst.limit * factor, float(level.max())))
     axes.legend(loc="center left", bbox_to_anchor=(1.0, 0.5), fontsize=8)

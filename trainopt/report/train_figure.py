@@ -47,7 +47,7 @@ def _draw_block(axes: Axes, block: BlockDesign, slots: int, first: bool) -> None
     axes.set_axis_off()
     axes.set_title(
         f"{wrapped(block.block, 34, 1)}, {block.operation.replace('-', ' ')}, {fixed(block.flow, 0)} L/h"
-        + (" at the start" if block.operation == "constant-pressure" else "")
+        + (" on average" if block.operation == "constant-pressure" else "")
     )
     end = len(block.stages) + 1
     axes.plot([0.43, end + 0.53], [0.5, 0.5], color=INK, linewidth=1.4, zorder=1)
