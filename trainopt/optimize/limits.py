@@ -88,21 +88,23 @@ def _rating(block: Block) -> float:
 
 
 def _stage_levers(block: Block, stage: Stage, one: Candidate) -> Iterator[Lever]:
-    key, name = (stage.name, one.medium), stage.name
-    what = f"{one.medium} in '{name}'"
-    cap, flux = one.loading_cap, one.flux_limit
-    yield Lever(f"{name}.loading_limit_L_m2", f"loading of {what}", "L/m2", cap, lambda v: Move(cap={key: v}))
-    yield Lever(f"{name}.flux_limit_LMH", f"flux of {what}", "LMH", flux, lambda v: Move(flux={key: v}))
+    """The limits of a used medium, without those that cannot bind whatever is picked."""
+    key, what, options = (stage.name, one.medium), f"{one.medium} in '{stage.name}'", one.options
+    cap, flux, rating, inlet = one.loading_cap, one.flux_limit, one.differential_pressure, one.inlet_pressure
+    if one.on_offer is None or len(options) < len(one.on_offer):
+        yield Lever(f"{key[0]}.loading_limit_L_m2", f"loading of {what}", "L/m2", cap, lambda v: Move(cap={key: v}))
+    if (options.shortest_time * block.head > options.demand.max(axis=0)).any():
+        yield Lever(f"{key[0]}.flux_limit_LMH", f"flux of {what}", "LMH", flux, lambda v: Move(flux={key: v}))
     if block.operation != "constant-flow":
         return
-    if math.isfinite(one.differential_pressure):
+    if rating < block.head:
         yield Lever(
-            f"{name}.differential_pressure_bar", f"differential pressure of {what}", "bar", one.differential_pressure,
-            lambda v: Move(differential_pressure={key: v}),
+            f"{key[0]}.differential_pressure_bar", f"differential pressure of {what}", "bar", rating,
+            lambda v: Move(differential_pressure={key: v}), block.pressure,
         )  # fmt: skip
-    if one.inlet_pressure < block.pressure:
+    if inlet < block.pressure:
         yield Lever(
-            f"{name}.inlet_pressure_bar", f"inlet pressure of {what}", "bar", one.inlet_pressure,
+            f"{key[0]}.inlet_pressure_bar", f"inlet pressure of {what}", "bar", inlet,
             lambda v: Move(inlet_pressure={key: v}), block.pressure,
         )  # fmt: skip
 
