@@ -79,10 +79,10 @@ def bar(text: str) -> Iterator[Callable[[int, int], None]]:
 
     def tell(done: int, total: int) -> None:
         nonlocal running
+        shown.update(task, completed=done, total=total)
         if not running and time.monotonic() - start > 1.0:
             shown.start()
             running = True
-        shown.update(task, completed=done, total=total)
 
     try:
         yield tell

@@ -6,7 +6,9 @@ from __future__ import annotations
 import contextlib
 import hashlib
 import json
+import math
 import os
+import time
 from dataclasses import asdict
 from pathlib import Path
 from typing import Any, TextIO
@@ -20,6 +22,8 @@ from trainopt.train.results import Pick
 from trainopt.version import __version__
 
 _KIND = "trainopt.sweep-journal/1"
+_SYNC = 0.25
+"""Seconds after which what was written is forced to disk."""
 
 
 def fingerprint(case: Case, axes: tuple[Axis, ...], objective: str | None, changes: object) -> str:
@@ -31,7 +35,7 @@ def fingerprint(case: Case, axes: tuple[Axis, ...], objective: str | None, chang
 
 
 class Journal:
-    """An append-only file: a heading, then one line per finished job, each on disk before the next begins.
+    """An append-only file: a heading, then one line per finished job, each handed over before the next begins.
 
     A line that a kill cut short is dropped when the journal is opened again.
     """
@@ -39,6 +43,7 @@ class Journal:
     def __init__(self, path: Path, mark: str) -> None:
         self.path = path
         self.done: dict[str, Found] = {}
+        self._synced = -math.inf
         if path.exists() and path.stat().st_size:
             self._read(mark)
         self._file: TextIO = path.open("a", encoding="utf-8")
@@ -76,14 +81,21 @@ class Journal:
 
     def _write(self, entry: dict[str, Any]) -> None:
         self._file.write(json.dumps(entry, ensure_ascii=False) + "\n")
+        # Flushed, a line outlives the process; synced now and then, the power too.
         self._file.flush()
+        if time.monotonic() - self._synced > _SYNC:
+            self._sync()
+
+    def close(self) -> None:
+        """Close the file, all of it on disk."""
+        self._sync()
+        self._file.close()
+
+    def _sync(self) -> None:
         # A pipe or a device cannot be synced, and need not be.
         with contextlib.suppress(OSError):
             os.fsync(self._file.fileno())
-
-    def close(self) -> None:
-        """Close the file."""
-        self._file.close()
+        self._synced = time.monotonic()
 
 
 def _found(entry: dict[str, Any]) -> Found:
