@@ -11,7 +11,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from trainopt.optimize.restate import Move, picks_of, restated, route_of_picks
-from trainopt.optimize.search import best_route
+from trainopt.optimize.search import SolverOptions, best_route
 from trainopt.optimize.times import block_times, objective_of
 from trainopt.train.build import prune
 from trainopt.train.problem import DesignProblem
@@ -48,9 +48,9 @@ class Better:
     picks: Picks
 
 
-def solved(problem: DesignProblem, move: Move) -> tuple[float, Picks] | None:
+def solved(problem: DesignProblem, move: Move, ties: bool = True) -> tuple[float, Picks] | None:
     """Objective and picks of the best design with the limits moved; None where there is none."""
-    found = best_route(prune(restated(problem, move)))
+    found = best_route(prune(restated(problem, move)), SolverOptions(ties=ties))
     return None if found.route is None else (found.objective, picks_of(found.route))
 
 
@@ -88,11 +88,11 @@ def nearest_better(problem: DesignProblem, lever: Lever, picks: Picks, base: flo
         else:
             break
     # Just above, so that the solver, whose limits are a rounding tighter, finds it as well.
-    return _at(problem, lever, high * (1.0 + 1e-8), enough)
+    return _at(problem, lever, high * (1.0 + 1e-8), enough, ties=True)
 
 
-def _at(problem: DesignProblem, lever: Lever, value: float, enough: float) -> Better | None:
-    found = solved(problem, lever.move(value))
+def _at(problem: DesignProblem, lever: Lever, value: float, enough: float, ties: bool = False) -> Better | None:
+    found = solved(problem, lever.move(value), ties)
     return Better(value, *found) if found is not None and found[0] < enough else None
 
 

@@ -21,11 +21,12 @@ TIE = 1e-9
 
 @dataclass(frozen=True)
 class SolverOptions:
-    """How HiGHS is run: `time_limit` in s over all solves (None: none)."""
+    """How HiGHS is run: `time_limit` in s over all solves (None: none); `ties` whether equal designs are told apart."""
 
     time_limit: float | None = None
     seed: int = 0
     threads: int = 1
+    ties: bool = True
 
 
 @dataclass(frozen=True)
@@ -97,7 +98,7 @@ class _Search:
         if route is None or times is None:
             return self._found(answer.status, None, None, answer.bound)
         bound = answer.bound
-        if answer.status == "optimal":
+        if answer.status == "optimal" and self.options.ties:
             best = objective_of(self.problem, route, times)
             self._keep_objective(best)
             spare_rows = self._ask_for_spare()
