@@ -34,6 +34,7 @@ if TYPE_CHECKING:
     from trainopt.files import load_workspace as load_workspace
     from trainopt.files import set_field as set_field
     from trainopt.optimize import design as design
+    from trainopt.optimize.limits import what_limits as what_limits
     from trainopt.report.curve_figure import curve_figure as curve_figure
     from trainopt.report.curve_page import curve_page as curve_page
     from trainopt.report.dossier import Dossier as Dossier
@@ -81,6 +82,7 @@ _HOMES = {
     "load_medium": "trainopt.files",
     "load_workspace": "trainopt.files",
     "set_field": "trainopt.files",
+    "what_limits": "trainopt.optimize.limits",
 }
 
 _SHOWN = {"Curve", "Design", "design", "fit_curve", "gather"}

@@ -165,6 +165,14 @@ def test_no_design_has_no_limits() -> None:
     assert limits(p, design(p)) is None
 
 
+def test_what_limits_a_case() -> None:
+    found = trainopt.what_limits(trainopt.load_case(DEMO))
+    assert found is not None
+    assert [one.block for one in found.blocks] == ["clarification", "guard"]
+    assert {"batch.time_h", "clarification.pressure_bar"} <= {gain.field for gain in found.gains}
+    assert all(gain.saves > 0.0 and gain.needs > gain.now for gain in found.gains)
+
+
 def test_changes_in_words() -> None:
     before = (Pick("a", "m", "m-1", 5), Pick("b", "n", "n-1", 2), Pick("c", "o", "o-1", 1))
     after = (Pick("a", "m", "m-1", 6), Pick("b", "k", "k-2", 3), Pick("d", "o", "o-1", 1))

@@ -5,9 +5,12 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator, Mapping
 from functools import partial
+from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
 from trainopt.optimize.area_parts import pooled_curve
+from trainopt.optimize.design import Prepared, prepare
+from trainopt.optimize.design import design as find_design
 from trainopt.optimize.nearest import TIE, Better, Lever, Picks, nearest_better, solved
 from trainopt.optimize.reasons import rounded
 from trainopt.optimize.restate import Move, route_of_picks
@@ -15,11 +18,23 @@ from trainopt.optimize.times import Route, block_bounds
 from trainopt.train.problem import Block, Candidate, DesignProblem, Stage
 from trainopt.train.results import BlockLimit, Design, Gain, Limits, LongerRun, Pick
 
+if TYPE_CHECKING:
+    from trainopt.files import Case
+
 CAPS = {
     "loading-tested": "the loading tested",
     "loading-limit": "the loading limit",
     "turbidity": "the turbidity limit",
 }
+
+
+def what_limits(what: Case | Prepared, objective: str | None = None) -> Limits | None:
+    """Design a case and say what limits it, what a little more of each limit gains, what longer bench runs are worth.
+
+    None where no design exists (the design's `reasons` say why); raises what `design` raises.
+    """
+    prepared = what if isinstance(what, Prepared) else prepare(what, objective)
+    return limits(prepared.problem, find_design(prepared), prepared.curves)
 
 
 def limits(problem: DesignProblem, design: Design, curves: Mapping[str, Curve] | None = None) -> Limits | None:
