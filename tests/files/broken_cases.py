@@ -65,6 +65,14 @@ WRONG_UNIT = [
 
 WRONG_VALUE = [
     value(OAT_FILE, "law: intermediate", "law: intermediat", "did you mean 'intermediate'"),
+    value(OAT_FILE, "law: intermediate", "law: {cake: 1}", "curve.law", "one of auto, cake"),
+    value(OAT_FILE, "medium: oat\n", "medium: 007\n", "'007' is not the file's name", "'oat'"),
+    value(
+        CASE_FILE, "setup: 30 min", "setup: 7 h", "batch.time: 6 h leaves no time", "setups take, 7 h", mark="time: 6 h"
+    ),
+    value(CASE_FILE, "objective: area", "extends: 5", "extends: no such file '5'"),
+    value(CASE_FILE, "objective: area", f"extends: {'x' * 300}", "extends: no such file", name="case-extends-long"),
+    value(RYE_FILE, "../bench/rye-b.csv", "9" * 300, "run 2: file: no such file", name="rye-file-long"),
     value(
         OAT_FILE,
         "law: intermediate",

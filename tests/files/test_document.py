@@ -9,7 +9,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from tests.files.broken_cases import CASE, CASE_FILE, OAT, OAT_FILE, write_workspace
+from tests.files.broken_cases import CASE, CASE_FILE, CATALOG_FILE, OAT, OAT_FILE, RYE_FILE, SOUND, write_workspace
 from trainopt.errors import InputError
 from trainopt.files import check, load_case
 from trainopt.files.document import read_document, scalar
@@ -141,16 +141,18 @@ def test_a_file_of_any_text_gives_input_errors_only(tmp_path: Path, file: str, t
 @given(st.data())
 def test_a_file_with_a_value_replaced_gives_input_errors_only(tmp_path: Path, data: st.DataObject) -> None:
     scenario = write_workspace(tmp_path)
-    lines = CASE.splitlines()
+    file = data.draw(st.sampled_from([CASE_FILE, OAT_FILE, RYE_FILE, CATALOG_FILE]))
+    lines = [*SOUND[file].splitlines(), "extends: x"][: None if file == CASE_FILE else -1]
     at = data.draw(st.integers(0, len(lines) - 1))
     head, colon, _ = lines[at].partition(":")
     value = data.draw(
         YAMLISH
         | st.sampled_from(["1e400 L", "-1", "~", "[]", "{}", "nan", ".nan", "9" * 400, "0x" + "f" * 50, "1/0 L"])
+        | st.sampled_from(["7", "007", "{a: 1}", "[[]]", "{medium: ~}", "[oat, ~]", "{true: 2}", "case.yaml", "."])
     )
     lines[at] = f"{head}{colon} {value}"
-    scenario.write_text("\n".join(lines), encoding="utf-8")
+    (tmp_path / file).write_text("\n".join(lines), encoding="utf-8")
     try:
         load_case(scenario)
     except InputError as error:
-        assert error.problems
+        assert all("expected" in problem.text or "did you mean" in problem.text for problem in error.problems)

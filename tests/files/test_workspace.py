@@ -7,7 +7,17 @@ from pathlib import Path
 
 import pytest
 
-from tests.files.broken_cases import CASE, CASE_FILE, CATALOG, CATALOG_FILE, OAT, OAT_FILE, RYE_FILE, write_workspace
+from tests.files.broken_cases import (
+    CASE,
+    CASE_FILE,
+    CATALOG,
+    CATALOG_FILE,
+    OAT,
+    OAT_FILE,
+    RYE_FILE,
+    SOUND,
+    write_workspace,
+)
 from trainopt.bench.columns import DIMENSIONS
 from trainopt.curves.check import check as check_with_runs
 from trainopt.curves.laws import LAWS
@@ -160,6 +170,51 @@ def test_warnings(tmp_path: Path, file: str, old: str, new: str, words: str) -> 
     warnings = load_case(scenario).warnings
     assert [words in warning.text for warning in warnings].count(True) == 1
     assert check([tmp_path]) == ((), warnings)
+
+
+def test_setups_side_by_side_each_leave_time_to_filter(tmp_path: Path) -> None:
+    path = write_workspace(tmp_path)
+    side_by_side = CASE.replace("schedule: sequential", "schedule: side-by-side")
+    second = "  - {block: polishing, pressure: 1 bar, setup: 5.9 h, stages: [{stage: last, media: [rye]}]}\ncosts:"
+    fits = side_by_side.replace("costs:", second)
+    path.write_text(fits)
+    assert not any("leaves no time" in problem.text for problem in check([path])[0])
+    path.write_text(fits.replace("5.9 h", "6 h"))
+    line = fits.splitlines().index(second.splitlines()[0]) + 1
+    (found,) = [p for p in check([path])[0] if "leaves no time" in p.text]
+    assert (found.line, found.text) == (
+        line,
+        "block 'polishing': setup: 6 h leaves no time to filter; expected less than 6 h",
+    )
+
+
+def test_names_may_all_look_like_numbers(tmp_path: Path) -> None:
+    write_workspace(tmp_path)
+    for name in SOUND:
+        path = tmp_path / name
+        path.write_text(path.read_text().replace("oat-11", "11").replace("oat", "007").replace("polish", "1.10"))
+    (tmp_path / OAT_FILE).rename(tmp_path / "models/media/007.yaml")
+    assert check([tmp_path]) == ((), ())
+    case = tmp_path / CASE_FILE
+    case.write_text(case.read_text().replace("media: [007]", "media: [007, 007]"))
+    catalog = tmp_path / "models/catalog.yaml"
+    catalog.write_text(catalog.read_text().replace("modules: [11,", "modules: [12,"))
+    texts = [problem.text for problem in check([tmp_path])[0]]
+    assert any("unknown module '12'" in text for text in texts)
+    assert any("'007' stands twice" in text for text in texts)
+
+
+def test_a_medium_file_under_another_suffix_is_told(tmp_path: Path) -> None:
+    write_workspace(tmp_path)
+    (tmp_path / OAT_FILE).rename(tmp_path / "models/media/oat.yml")
+    assert any("expected it to be named oat.yaml" in problem.text for problem in check([tmp_path])[0])
+
+
+@pytest.mark.parametrize("name", ["x" * 400, "x" * 400 + ".csv", "x" * 400 + ".yaml", "a\0b"])
+def test_a_path_that_no_file_system_takes_is_a_problem(name: str) -> None:
+    assert check([name])[0]
+    with pytest.raises(InputError):
+        load_case(name)
 
 
 def test_lots_are_no_matter_on_the_pooled_basis(tmp_path: Path) -> None:

@@ -72,7 +72,7 @@ def _missing_settings(run: Run, found: Columns, where: Where) -> list[Problem]:
         out.append(where(("file",), text))
     recorded = "volume" if "volume" in columns else "mass"
     tared = getattr(run.tare, "dimension", recorded)
-    if tared != recorded:
+    if recorded in columns and tared != recorded:
         out.append(where(("tare",), f"is a {tared}, but the run records {recorded}; expected the tare as a {recorded}"))
     inlet, outlet = columns.get("pressure"), columns.get("outlet_pressure")
     for column, other in ((inlet, outlet), (outlet, inlet)):

@@ -13,6 +13,7 @@ from trainopt.bench.reduce import reduce_run
 from trainopt.curves.medium import fit_curve
 from trainopt.errors import InputError, Problem
 from trainopt.files import Medium, examine
+from trainopt.files.source import is_file
 
 
 def check(paths: Iterable[Path | str]) -> tuple[tuple[Problem, ...], tuple[Problem, ...]]:
@@ -50,7 +51,7 @@ def _run_problems(medium: Medium, only: Path | None = None) -> list[Problem]:
         def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
             return medium.source.at(("curve", "runs", index, *loc), text)
 
-        if run.file.is_file() and only in (None, run.file):
+        if is_file(run.file) and only in (None, run.file):
             try:
                 reduce_run(run, where)
             except InputError as error:

@@ -23,7 +23,7 @@ from trainopt.files.load import (
 )
 from trainopt.files.medium import Medium
 from trainopt.files.scenario import Scenario
-from trainopt.files.source import shown_path
+from trainopt.files.source import is_file, is_folder, shown_path
 
 BENCH_SUFFIXES = (".csv", ".xlsx", ".tsv", ".txt")
 YAML_SUFFIXES = (".yaml", ".yml")
@@ -68,11 +68,11 @@ def examine(paths: Iterable[Path | str]) -> Checked:
 
 
 def _look(path: Path, checked: Checked) -> None:
-    if path.is_dir():
+    if is_folder(path):
         _folder(path, checked)
     elif path.suffix.lower() in BENCH_SUFFIXES:
         _bench_file(path, checked)
-    elif path.exists() and path.suffix.lower() not in YAML_SUFFIXES:
+    elif is_file(path) and path.suffix.lower() not in YAML_SUFFIXES:
         checked.problem(path, f"is no {', '.join(YAML_SUFFIXES + BENCH_SUFFIXES)} file; expected one of these")
     else:
         _yaml_file(path, checked)
@@ -112,7 +112,7 @@ def _scenario(path: Path, found: Found, checked: Checked) -> Scenario | None:
 
 
 def _bench_file(path: Path, checked: Checked) -> None:
-    if not path.is_file():
+    if not is_file(path):
         checked.problem(path, "no such file; expected a bench run")
         return
     target = path.resolve()

@@ -9,7 +9,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
 from trainopt.errors import Problem
-from trainopt.files.fields import nearest
+from trainopt.files.fields import as_text, nearest
 from trainopt.files.medium import Medium
 from trainopt.files.scenario import BlockSpec, Scenario, StageSpec
 from trainopt.files.source import Loc, Source
@@ -26,16 +26,16 @@ def workspace_problems(found: Found) -> Iterator[Problem]:
         return
     modules, holders = _mapping(source.data, "modules"), _mapping(source.data, "holders")
     for name, module in modules.items():
-        medium = module.get("medium") if isinstance(module, dict) else None
-        if isinstance(medium, str) and medium not in found.medium_names:
+        medium = as_text(module.get("medium")) if isinstance(module, dict) else None
+        if medium is not None and medium not in found.medium_names:
             text = f"unknown medium '{medium}'; {nearest(medium, found.medium_names)}"
             yield source.at(("modules", name, "medium"), text)
     for name, holder in holders.items():
         listed = holder.get("modules") if isinstance(holder, dict) else None
         if listed == ():
             yield source.at(("holders", name, "modules"), "is empty; expected at least one module")
-        for index, module in enumerate(listed if isinstance(listed, tuple) else ()):
-            if isinstance(module, str) and module not in modules:
+        for index, module in enumerate(map(as_text, listed) if isinstance(listed, tuple) else ()):
+            if module is not None and module not in modules:
                 loc = ("holders", name, "modules", index)
                 yield source.problem(loc, f"holder '{name}': unknown module '{module}'; {nearest(module, modules)}")
     if source.data.get("modules") == {}:
@@ -201,6 +201,6 @@ def _mapping(data: Any, key: str) -> dict[str, Any]:
 def _module_media(source: Source | None) -> dict[str, str] | None:
     """The medium of each module of the catalog; None where one does not say, which is a problem of its own."""
     modules = _mapping(source.data, "modules") if source is not None else {}
-    media = {name: module.get("medium") for name, module in modules.items() if isinstance(module, dict)}
-    known = {name: medium for name, medium in media.items() if isinstance(medium, str)}
+    media = {name: as_text(module.get("medium")) for name, module in modules.items() if isinstance(module, dict)}
+    known = {name: medium for name, medium in media.items() if medium is not None}
     return known if len(known) == len(modules) > 0 else None

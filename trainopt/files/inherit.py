@@ -13,7 +13,8 @@ from typing import Any
 
 from trainopt.errors import InputError, Problem
 from trainopt.files.document import Loc
-from trainopt.files.source import Source, read_source
+from trainopt.files.fields import as_text, written
+from trainopt.files.source import Source, is_file, read_source
 
 _NAMED_LISTS = {"blocks": "block", "stages": "stage"}
 
@@ -22,11 +23,11 @@ def read_inherited(path: Path) -> tuple[Source, list[Problem]]:
     """Read a scenario file with all that it extends; raises `InputError` where a file cannot be looked at at all."""
     source, problems = read_source(path)
     chain = [source]
-    while isinstance(chain[-1].data.get("extends"), str):
+    while (name := as_text(chain[-1].data.get("extends"))) is not None:
         child = chain[-1]
-        target = Path(child.path.parent, child.data["extends"])
-        if "\0" in str(target) or not target.is_file():
-            problems.append(child.at(("extends",), f"no such file '{child.data['extends']}'; expected a scenario"))
+        target = Path(child.path.parent, name)
+        if not is_file(target):
+            problems.append(child.at(("extends",), f"no such file {written(name)}; expected a scenario"))
             break
         if any(target.resolve() == one.path for one in chain):
             circle = " → ".join([*(one.path.name for one in chain), target.name])
@@ -89,8 +90,8 @@ class _Overlay:
         out: list[Any] = []
         rest = dict(enumerate(child))
         for place, item in enumerate(base):
-            name = item.get(key) if isinstance(item, dict) else None
-            same = next((i for i, other in rest.items() if isinstance(other, dict) and other.get(key) == name), None)
+            name = _name(item, key)
+            same = next((i for i, other in rest.items() if _name(other, key) == name), None)
             at = (*loc, place)
             if name is None or same is None:
                 out.append(self._copied(self.base, item, (*base_loc, place), at))
@@ -114,3 +115,7 @@ class _Overlay:
         place = source.places.get(old)
         if place is not None:
             self.places[new] = place
+
+
+def _name(item: Any, key: str) -> str | None:
+    return as_text(item.get(key)) if isinstance(item, dict) else None

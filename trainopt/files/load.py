@@ -8,12 +8,13 @@ from pathlib import Path
 from trainopt.errors import InputError, Problem
 from trainopt.files.catalog import Catalog
 from trainopt.files.crosscheck import case_problems, case_warnings, workspace_problems, workspace_warnings
+from trainopt.files.fields import as_text
 from trainopt.files.inherit import read_inherited
 from trainopt.files.medium import Medium
 from trainopt.files.medium_check import medium_problems
 from trainopt.files.scenario import Scenario
 from trainopt.files.scenario_check import scenario_problems
-from trainopt.files.source import Source, read_source, shown_path
+from trainopt.files.source import Source, is_folder, read_source, shown_path
 from trainopt.files.validate import validated
 from trainopt.files.workspace import Case, Workspace
 
@@ -73,7 +74,7 @@ def find_root(path: Path) -> Path:
     """The nearest folder that holds `models/`: `path` itself or one above it."""
     here = path.absolute()
     for folder in (here, *here.parents):
-        if (folder / "models").is_dir():
+        if is_folder(folder / "models"):
             return folder.resolve()
     text = "no folder above it holds 'models/'; expected a workspace with models/ and scenarios/"
     raise InputError([Problem(shown_path(here), 0, text)])
@@ -93,7 +94,10 @@ def read_workspace(root: Path) -> Found:
     found = Found(root)
     _read_catalog(found)
     folder = root / "models" / "media"
-    paths = sorted(folder.glob("*.yaml")) if folder.is_dir() else []
+    paths = sorted(folder.glob("*.yaml")) if is_folder(folder) else []
+    for path in sorted(folder.glob("*.yml")) if is_folder(folder) else []:
+        text = f"is not read under this name; expected it to be named {path.stem}.yaml"
+        found.problems.append(Problem(shown_path(path), 0, text))
     if not paths:
         text = "holds no medium file; expected models/media/NAME.yaml, one per filter medium"
         found.problems.append(Problem(shown_path(folder), 0, text))
@@ -114,8 +118,9 @@ def read_medium(path: Path) -> tuple[Medium | None, set[str], list[Problem]]:
         source, problems = read_source(path)
     except InputError as error:
         return None, names, list(error.problems)
-    if isinstance(source.data.get("medium"), str):
-        names.add(source.data["medium"])
+    name = as_text(source.data.get("medium"))
+    if name is not None:
+        names.add(name)
     medium, faults = validated(Medium, source)
     problems += [*faults, *medium_problems(source, medium)]
     return medium, names, problems
@@ -128,7 +133,7 @@ def read_scenario(path: Path) -> tuple[Scenario | None, list[Problem]]:
     except InputError as error:
         return None, list(error.problems)
     scenario, faults = validated(Scenario, source)
-    problems += [*faults, *scenario_problems(source)]
+    problems += [*faults, *scenario_problems(source, scenario)]
     return scenario, problems
 
 

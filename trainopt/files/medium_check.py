@@ -6,9 +6,9 @@ from collections.abc import Iterator
 from typing import Any
 
 from trainopt.errors import Problem
-from trainopt.files.fields import nearest, nearest_name
+from trainopt.files.fields import as_text, nearest, nearest_name, written
 from trainopt.files.medium import LAWS, POLYNOMIALS, Medium
-from trainopt.files.source import Source
+from trainopt.files.source import Source, is_file
 
 _WAYS = ("runs", "parameters", "coefficients")
 
@@ -25,8 +25,8 @@ def medium_problems(source: Source, medium: Medium | None) -> list[Problem]:
 
 
 def _name_problems(source: Source) -> Iterator[Problem]:
-    name = source.data.get("medium")
-    if isinstance(name, str) and name != source.path.stem:
+    name = as_text(source.data.get("medium"))
+    if name is not None and name != source.path.stem:
         yield source.at(("medium",), f"'{name}' is not the file's name; expected '{source.path.stem}'")
 
 
@@ -63,7 +63,7 @@ def _by_numbers(source: Source, curve: dict[str, Any], way: str) -> Iterator[Pro
     if law == "auto":
         text = f"auto needs runs to choose by; expected the law that the {way} belong to"
         yield source.at(("curve", "law"), text)
-    elif law in LAWS:
+    elif isinstance(law, str) and law in LAWS:
         if way == "coefficients":
             yield from _coefficients(source, law, curve[way])
         else:
@@ -100,8 +100,9 @@ def _run_problems(source: Source, medium: Medium) -> Iterator[Problem]:
     seen: dict[tuple[str, str | None], int] = {}
     for index, run in enumerate(medium.curve.runs):
         loc = ("curve", "runs", index, "file")
-        if not run.file.is_file():
-            yield source.at(loc, f"no such file '{source.data['curve']['runs'][index]['file']}'; expected a bench run")
+        if not is_file(run.file):
+            given = written(source.data["curve"]["runs"][index]["file"])
+            yield source.at(loc, f"no such file {given}; expected a bench run")
         first = seen.setdefault((str(run.file), run.sheet), index)
         if first != index:
             yield source.at(loc, f"is run {first + 1}'s file too; expected each run once")

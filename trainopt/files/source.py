@@ -94,9 +94,28 @@ def _child(data: Any, part: str | int) -> Any:
 def shown_path(path: Path) -> str:
     """The path as the user would type it: relative to the current folder where it is below it."""
     try:
-        return str(path.resolve().relative_to(Path.cwd()))
+        whole = path.resolve()
+        if whole.is_relative_to(Path.cwd()):
+            return str(whole.relative_to(Path.cwd()))
+        return str(whole if ".." in path.parts else path)
     except (ValueError, OSError):
         return str(path)
+
+
+def is_file(path: Path) -> bool:
+    """Whether a file is there; a name that no file system can hold (too long) is none."""
+    try:
+        return path.is_file()
+    except (OSError, ValueError):
+        return False
+
+
+def is_folder(path: Path) -> bool:
+    """Whether a folder is there, in the same way."""
+    try:
+        return path.is_dir()
+    except (OSError, ValueError):
+        return False
 
 
 def file_hash(path: Path) -> str:
@@ -139,4 +158,4 @@ def _read_bytes(path: Path, shown: str) -> bytes:
         raise InputError([Problem(shown, 0, f"cannot be read: {reason}")]) from None
 
 
-__all__ = ["Loc", "Places", "Source", "file_hash", "read_source", "shown_path"]
+__all__ = ["Loc", "Places", "Source", "file_hash", "is_file", "is_folder", "read_source", "shown_path"]
