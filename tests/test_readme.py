@@ -22,7 +22,8 @@ def blocks(language: str) -> list[str]:
 def trainopt_calls() -> list[list[str]]:
     """Every `trainopt …` command line shown in the README's shell blocks."""
     parts = [part.strip() for block in blocks("sh") for line in block.splitlines() for part in line.split("&&")]
-    calls = [re.sub(r"^(\.venv/bin/)?trainopt ", "", part) for part in parts if re.match(r"(\.venv/bin/)?trainopt ", part)]
+    program = r"^(\.venv/bin/)?trainopt "
+    calls = [re.sub(program, "", part) for part in parts if re.match(program, part)]
     return [shlex.split(call, comments=True) for call in calls]
 
 

@@ -74,8 +74,16 @@ def problem(
     """The problem with the options that the caps allow."""
     lots = max((len(c.curves) for b in blocks for s in b.stages for c in s.candidates), default=1)
     empty = DesignProblem(
-        "by hand", volume, time, schedule, objective, hour_rate, safety_factor,
-        tuple(f"lot-{k:02d}" for k in range(lots)), (), "EUR",
+        "by hand",
+        volume,
+        time,
+        schedule,
+        objective,
+        hour_rate,
+        safety_factor,
+        tuple(f"lot-{k:02d}" for k in range(lots)),
+        (),
+        "EUR",
     )
     return replace(empty, blocks=tuple(_filled(empty, one) for one in blocks))
 
@@ -171,9 +179,7 @@ def random_law(r: Random, tested: float) -> tuple[str, tuple[float, ...]]:
     return law, (R0, k, r.uniform(0.2, 1.8)) if law == "hermia" else (R0, k)
 
 
-def _random_medium(
-    r: Random, name: str, lots: tuple[Lot, ...], most: int, after: tuple[str, ...] | None
-) -> Medium:
+def _random_medium(r: Random, name: str, lots: tuple[Lot, ...], most: int, after: tuple[str, ...] | None) -> Medium:
     tested = r.uniform(150, 700)
     law, parameters = random_law(r, tested)
     sizes = []

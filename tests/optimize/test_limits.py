@@ -107,9 +107,7 @@ def test_closed_form_of_one_flat_stage() -> None:
     by_field = {gain.field: gain for gain in found.gains}
     assert by_field["b.pressure_bar"].needs == pytest.approx(20.0 / 9.0, rel=1e-7)
     assert by_field["batch.time_h"].needs == pytest.approx(10.0 / 9.0, rel=1e-7)
-    assert by_field["b.pressure_bar"].text == (
-        "0.23 bar more for 'b' (2.223 bar) saves 1 m2: 1 × m-m fewer in 's'"
-    )
+    assert by_field["b.pressure_bar"].text == ("0.23 bar more for 'b' (2.223 bar) saves 1 m2: 1 × m-m fewer in 's'")
     assert by_field["batch.time_h"].text == "6.7 min more for the batch (1.112 h) saves 1 m2: 1 × m-m fewer in 's'"
     assert (found.blocks[0].limited_by, found.blocks[0].used) == ("pressure", pytest.approx(1.0))
 

@@ -81,8 +81,9 @@ def _eased(problem: DesignProblem, block: Block, choice: Choice, rung: _Rung) ->
         most = block.head * problem.longest_time(block)
         whole = problem.safety_factor * problem.volume / (one.scale_up * _NO_AREA)
         cap = loading_limit(one.curves, block.operation, whole, most)
-        one = replace(one, loading_cap=cap, flux_limit=math.inf, differential_pressure=math.inf,
-        inlet_pressure=math.inf)
+        one = replace(
+            one, loading_cap=cap, flux_limit=math.inf, differential_pressure=math.inf, inlet_pressure=math.inf
+        )
     return replace(choice, candidate=one)
 
 

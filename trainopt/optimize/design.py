@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
 from trainopt.curves.medium import fit_curve
-from trainopt.errors import InputError, Problem
+from trainopt.errors import DefectError, InputError, Problem
 from trainopt.optimize.area_parts import area_parts
 from trainopt.optimize.describe import Picked, cost_parts, describe, total_area, total_time
 from trainopt.optimize.even_split import even_split
@@ -51,9 +51,17 @@ def fit_curves(case: Case) -> dict[str, Curve]:
 
 def prepare(case: Case, objective: str | None = None) -> Prepared:
     """Fit the curves of a case and build its problem."""
+    _refuse_reliability(case)
     curves = fit_curves(case)
     problem = build_problem(case, curves, objective)
     return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs())
+
+
+def _refuse_reliability(case: Case) -> None:
+    """A design for a share of sampled lots is not offered yet, and must not pass for one that is."""
+    if not isinstance(case.scenario.basis, str):
+        text = "basis: a reliability basis cannot be designed for yet; expected 'worst-lot' or 'pooled'"
+        raise InputError([case.scenario.source.problem(("basis",), text)])
 
 
 def design(
@@ -127,6 +135,9 @@ def _no_design(prepared: Prepared, found: Found) -> Design:
     """No pick: proven impossible, or stopped before any was found."""
     full = prepared.problem
     status = "limit" if found.status == "limit" else "infeasible"
+    why = reasons(full) if status == "infeasible" else ()
+    if status == "infeasible" and not why:
+        raise DefectError("the solver finds no design where one exists by the closed form")
     return Design(
         scenario=full.title,
         status=status,
@@ -141,7 +152,7 @@ def _no_design(prepared: Prepared, found: Found) -> Design:
         even_split=None,
         saving=None,
         warnings=prepared.notices,
-        reasons=reasons(full) if status == "infeasible" else (),
+        reasons=why,
         inputs=prepared.inputs,
     )
 

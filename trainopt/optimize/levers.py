@@ -18,8 +18,8 @@ from trainopt.optimize.index import Index, Node
 from trainopt.train.options import CAP_SLACK, demand
 from trainopt.train.problem import Block, Candidate, DesignProblem, Floats
 
-ROOM = 1e-9
-"""Relative room for rounding where times are held against limits."""
+INSIDE = 1.0 - 2e-8
+"""How far inside its time a design must be to count: a named value also works when it is typed back."""
 
 
 @dataclass(frozen=True)
@@ -90,13 +90,13 @@ class Levers:
             least = self._least_time(setting, b, block, here, spent)
             pump = ("pump", b) not in setting.lifted and block.min_flow > 0.0
             most = setting.volume / block.min_flow if pump else math.inf
-            if not least <= most * (1.0 + ROOM):
+            if not least <= most * INSIDE:
                 return False
             if self.problem.schedule == "sequential":
                 total += least + block.setup
             else:
                 total = max(total, least + block.setup)
-        return math.isfinite(total) and total <= setting.time * (1.0 + ROOM)
+        return math.isfinite(total) and total <= setting.time * INSIDE
 
     def _least_time(
         self, setting: Setting, b: int, block: Block, here: list[int], spent: Mapping[int, Floats | None]
@@ -119,7 +119,7 @@ class Levers:
                 downstream = float(np.sum(known[k:], axis=0).max()) + line
                 least = max(least, _ratio(float(known[k].max()), one.differential_pressure))
                 least = max(least, _ratio(downstream, one.inlet_pressure - block.static))
-            elif setting.pressure[b] > bearable(block, one) * (1.0 + ROOM):
+            elif setting.pressure[b] > bearable(block, one) * (1.0 + 1e-9):
                 return math.inf
         return least
 

@@ -202,15 +202,14 @@ def _single(levers: Levers, lever: Lever, start: float, change: Change) -> Reaso
     value = None
     if math.isfinite(start):
         value = nearest(levers, change, start, lever.direction, lever.most)
-    if value is not None and lever.field == "safety_factor" and value < 1e-6:
-        value = None
+    if value is not None and lever.field == "safety_factor" and value < 1.0:
+        value = None  # less than no margin is none to ask for
     unit = f" {lever.unit}" if lever.unit else ""
     now = f"{lever.what} ({start:.4g}{unit})"
     if value is None:
         return Reason(f"{now}: no value of it alone makes a design possible", {lever.field: None})
     verb = "would have to be at least" if lever.direction > 0 else "could be at most"
-    note = " (below 1: no margin at all)" if lever.field == "safety_factor" and value < 1.0 else ""
-    text = f"{now} {verb} {rounded(value, lever.direction)}{unit}{note}, all else as it is"
+    text = f"{now} {verb} {rounded(value, lever.direction)}{unit}, all else as it is"
     return Reason(text, {lever.field: value})
 
 
@@ -223,7 +222,7 @@ def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
         needed = nearest(levers, partial(moved, base, "area", n), area, 1) if area > 0.0 else None
         for module in levers.index.nodes[n].candidate.modules if needed is not None else ():
             assert needed is not None
-            count = math.ceil(needed / module.area * (1.0 - 1e-12))
+            count = math.ceil(needed / module.area * (1.0 - 1e-7))
             best = min(filter(None, (best, (count / module.high, count, module.name))))
     if best is None:
         text = f"the module counts of '{stage}': no number of them alone makes a design possible"
@@ -237,5 +236,5 @@ def rounded(value: float, direction: int, digits: int = 4) -> str:
     """So many digits of a value above zero, rounded to the side that still works (+1 up, −1 down)."""
     places = digits - 1 - math.floor(math.log10(abs(value)))
     scaled = value * 10.0**places
-    whole = math.ceil(scaled - 1e-7) if direction > 0 else math.floor(scaled + 1e-7)
+    whole = math.ceil(scaled * (1.0 - 5e-8) - 1e-7) if direction > 0 else math.floor(scaled * (1.0 + 5e-8) + 1e-7)
     return f"{whole / 10.0**places:.{digits}g}"

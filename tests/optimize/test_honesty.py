@@ -1,0 +1,44 @@
+"""What a user is told when there is no design, or none of the kind asked for."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+
+import trainopt
+
+ROOT = Path(__file__).parent.parent.parent
+
+
+def demo(tmp_path: Path, old: str, new: str) -> trainopt.Case:
+    """The demo's harvest with one line changed, in a copy of the workspace."""
+    (tmp_path / "models").symlink_to(ROOT / "models")
+    (tmp_path / "scenarios").mkdir(exist_ok=True)
+    text = (ROOT / "scenarios" / "harvest.yaml").read_text(encoding="utf-8")
+    assert old in text
+    path = tmp_path / "scenarios" / "harvest.yaml"
+    path.write_text(text.replace(old, new), encoding="utf-8")
+    return trainopt.load_case(path)
+
+
+def test_a_time_that_is_named_works_when_it_is_typed_back(tmp_path: Path) -> None:
+    (tmp_path / "a").mkdir()
+    (tmp_path / "b").mkdir()
+    impossible = trainopt.design(demo(tmp_path / "a", "time: 6 h", "time: 1.2 h"))
+    assert impossible.status == "infeasible"
+    needed = {k: v for reason in impossible.reasons for k, v in reason.needs.items()}["batch.time_h"]
+    assert needed is not None
+    assert trainopt.design(demo(tmp_path / "b", "time: 6 h", f"time: {needed!r} h")).status == "optimal"
+
+
+def test_a_hair_too_little_time_still_has_its_reasons(tmp_path: Path) -> None:
+    # The least time is 10/3 h: the solver's tolerance and the closed form disagree only about its last digits.
+    result = trainopt.design(demo(tmp_path, "time: 6 h", "time: 3.33333333 h"))
+    assert result.status == "optimal" or result.reasons
+
+
+def test_a_reliability_basis_is_refused_not_designed_as_another(tmp_path: Path) -> None:
+    case = demo(tmp_path, "basis: worst-lot", "basis: {reliability: 0.95, samples: 100, seed: 1}")
+    with pytest.raises(trainopt.InputError, match=r"harvest\.yaml:\d+: .*reliability"):
+        trainopt.design(case)
