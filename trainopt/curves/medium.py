@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Iterable, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
@@ -82,9 +83,16 @@ def _reduced_runs(medium: Medium) -> tuple[list[ReducedRun], list[Problem]]:
             problems.extend(error.problems)
             continue
         if not reduced.used.any():
-            problems.append(where(("file",), f"run '{reduced.name}' holds no usable reading"))
+            problems.append(where(("file",), _unusable(reduced)))
         runs.append(reduced)
     return runs, problems
+
+
+def _unusable(run: ReducedRun) -> str:
+    """Why nothing of a run is left to fit: the commonest reason among its readings."""
+    counted = Counter(reason for reason in run.excluded if reason)
+    because = f": most readings are left out ({counted.most_common(1)[0][0]})" if counted else ""
+    return f"run '{run.name}' holds no usable reading{because}; expected filtrate beyond the hold-up under a pressure"
 
 
 def _names(law: str) -> tuple[str, ...]:

@@ -17,6 +17,9 @@ ENDPOINT = 1.0
 LITTLE_FOULING = 1.2
 TRADE_OFF = 0.95
 
+SMALLEST_OUTLIER = 0.005
+"""Relative distance from the curve below which a reading is nothing to look at, however smooth the others are."""
+
 
 def curve_flags(
     medium: str,
@@ -56,6 +59,8 @@ def _outliers(evidence: Evidence) -> Iterator[Flag]:
     readings, fit = evidence.readings, evidence.chosen
     for index in np.flatnonzero(evidence.pull < 0.5):
         off = np.expm1(-fit.residuals[index] / np.sqrt(readings.weight[index]))
+        if abs(off) < SMALLEST_OUTLIER:
+            continue  # far off only against readings that are smoother than any gauge
         what = "∫ΔP dt" if readings.integral[index] else "resistance"
         text = (
             f"outlier: {what} at {readings.loading[index]:.1f} L/m2 is {off:+.0%} off the curve; kept, its pull on "

@@ -356,7 +356,7 @@ class Medium(Entry):
     flush: Flush | None = None
     """The flush before use."""
     variability: Variability | None = None
-    """Spread between modules and media lots, for a reliability basis."""
+    """Spread between modules and media lots, for a reliability basis (not used yet)."""
 
     _source: Source = PrivateAttr(default=Source(Path(), "(built in Python)", ""))
 

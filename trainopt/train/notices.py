@@ -18,6 +18,10 @@ def case_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
     """Notices that follow from the files alone: what was assumed, what was not tested."""
     for problem in case.warnings:
         yield Notice("files", str(problem))
+    if case.scenario.feed_variability is not None:
+        yield Notice(
+            "variability-not-used", "feed_variability is not used yet: the design holds for the lots that were run"
+        )
     temperature = case.scenario.batch.temperature
     lots = lots_of(case, curves)
     for name in used_media(case):
@@ -27,6 +31,8 @@ def case_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
 
 def _medium_notices(medium: Medium, curve: Curve, temperature: float | None, lots: tuple[str, ...]) -> Iterator[Notice]:
     name = medium.medium
+    if medium.variability is not None:
+        yield Notice("variability-not-used", f"{name}: variability is not used yet: the lots that were run count")
     for flag in curve.flags:
         rows = f" rows {flag.rows[0]} to {flag.rows[1]}:" if flag.rows else ""
         yield Notice(flag.code, f"{name}, {flag.run}:{rows} {flag.text}" if flag.run else f"{name}: {flag.text}")
