@@ -86,7 +86,8 @@ def test_volume_and_areas_scaled_together_change_no_loading_and_no_pick(p: Desig
         offer = candidate.on_offer
         weight = offer.weight * factor if p.objective == "area" else offer.weight
         offer = replace(offer, area=offer.area * factor, weight=weight)
-        return refilled(scaled, block, replace(candidate, on_offer=offer))
+        sizes = tuple(replace(size, area=size.area * factor) for size in candidate.modules)
+        return refilled(scaled, block, replace(candidate, on_offer=offer, modules=sizes))
 
     scaled = replace(scaled, blocks=tuple(
         replace(b, stages=tuple(replace(s, candidates=tuple(bigger(b, c) for c in s.candidates)) for s in b.stages))

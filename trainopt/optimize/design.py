@@ -51,17 +51,9 @@ def fit_curves(case: Case) -> dict[str, Curve]:
 
 def prepare(case: Case, objective: str | None = None) -> Prepared:
     """Fit the curves of a case and build its problem."""
-    _refuse_reliability(case)
     curves = fit_curves(case)
     problem = build_problem(case, curves, objective)
     return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs())
-
-
-def _refuse_reliability(case: Case) -> None:
-    """A design for a share of sampled lots is not offered yet, and must not pass for one that is."""
-    if not isinstance(case.scenario.basis, str):
-        text = "basis: a reliability basis cannot be designed for yet; expected 'worst-lot' or 'pooled'"
-        raise InputError([case.scenario.source.problem(("basis",), text)])
 
 
 def design(

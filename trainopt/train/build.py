@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from trainopt.curves.curve import Curve, LotCurve
 from trainopt.curves.viscosity import viscosity_ratio
+from trainopt.errors import InputError
 from trainopt.train.options import Cap, Duty, inside_caps, joined, module_options, take, undominated
 from trainopt.train.problem import Block, Candidate, DesignProblem, Dropped, ModuleSize, Options, Stage
 
@@ -40,6 +41,10 @@ def build_problem(case: Case, curves: Mapping[str, Curve], objective: str | None
     `curves` maps each of `used_media(case)` to its curve; `objective` ("area", "cost") overrides the scenario's.
     """
     scenario = case.scenario
+    if not isinstance(scenario.basis, str):
+        # A design for a share of sampled lots is not offered yet, and no other may pass for one.
+        text = "basis: a reliability basis cannot be used yet; expected 'worst-lot' or 'pooled'"
+        raise InputError([scenario.source.problem(("basis",), text)])
     kind = objective or scenario.objective
     lots = lots_of(case, curves)
     blocks = tuple(_block(case, block, curves, lots, kind) for block in scenario.blocks)
