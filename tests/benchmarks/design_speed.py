@@ -56,7 +56,7 @@ def median(work: Callable[[], object]) -> float:
 def main() -> None:
     """Print the ratios for several sizes."""
     print(f"highspy {highspy.Highs().version()}; medians of {RUNS} runs")
-    for counts in (20, 40, 80):
+    for counts in (20, 30, 40, 80):
         whole = prune(train(counts))
         matrix = compile_model(build_model(index_problem(whole)))
         alone = median(lambda matrix=matrix: Solver(matrix).run())
