@@ -5,8 +5,10 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
+from factory import block, flat, problem, stage
 
 import trainopt
+from trainopt.optimize.design import design
 
 ROOT = Path(__file__).parent.parent.parent
 
@@ -42,3 +44,12 @@ def test_a_reliability_basis_is_refused_not_designed_as_another(tmp_path: Path) 
     case = demo(tmp_path, "basis: worst-lot", "basis: {reliability: 0.95, samples: 100, seed: 1}")
     with pytest.raises(trainopt.InputError, match=r"harvest\.yaml:\d+: .*reliability"):
         trainopt.design(case)
+
+
+def test_a_clean_train_at_constant_pressure_that_starts_too_fast_is_said() -> None:
+    # 40 m2 at 0.01 bar/LMH under 2 bar starts at 8000 L/h, 200 LMH.
+    guard = flat("m", 0.01, flux=150.0, sizes=(("m", 40.0, 1.0, 1),))
+    for most, said in ((9000.0, 1), (5000.0, 2)):
+        one = block("b", stage("s", guard), pressure=2.0, operation="constant-pressure", max_flow=most)
+        codes = [notice.code for notice in design(problem(one, volume=1000.0, time=5.0)).warnings]
+        assert codes == ["starting-flow"] * said

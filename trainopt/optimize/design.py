@@ -17,7 +17,7 @@ from trainopt.optimize.reasons import reasons
 from trainopt.optimize.recheck import recheck
 from trainopt.optimize.search import Found, SolverOptions, best_route
 from trainopt.train.build import build_problem, prune, used_media
-from trainopt.train.notices import case_notices, design_notices
+from trainopt.train.notices import case_notices, design_notices, starting_flow_notices
 from trainopt.train.problem import DesignProblem
 from trainopt.train.results import Design, EvenSplit, Notice, Objective, Saving
 
@@ -100,6 +100,7 @@ def design(
         saving=_saving(area, cost.total, even),
         warnings=(
             *prepared.notices,
+            *starting_flow_notices(full, blocks),
             *(design_notices(full, prepared.curves, blocks) if prepared.curves else ()),
         ),
         inputs=prepared.inputs,

@@ -100,3 +100,30 @@ def _derating(problem: DesignProblem, stage: str, medium: str) -> float:
             if one.name == stage:
                 return 1.0 / next(c.scale_up for c in one.candidates if c.medium == medium)
     raise LookupError(stage)
+
+
+def starting_flow_notices(problem: DesignProblem, blocks: tuple[BlockDesign, ...]) -> Iterator[Notice]:
+    """At constant pressure the flow is highest at the start: say where it is beyond pump or flux limit."""
+    for block, found in zip(problem.blocks, blocks, strict=True):
+        if block.operation != "constant-pressure" or not found.stages:
+            continue
+        media = {(s.name, c.medium): c for s in block.stages for c in s.candidates}
+        used = [(media[s.stage, s.medium], s) for s in found.stages]
+        resistances = [
+            sum(c.curves[lot].resistance(0.0) / (s.area * c.scale_up) for c, s in used) + block.line
+            for lot in range(len(problem.lots))
+        ]
+        flow = block.head / min(resistances)
+        if flow > block.max_flow * (1.0 + 1e-9):
+            yield Notice(
+                "starting-flow",
+                f"{block.name}: at {block.pressure:.4g} bar the clean train starts at {flow:.4g} L/h, more than the "
+                f"{block.max_flow:.4g} L/h of its pump or vessel: throttle the start",
+            )
+        for c, s in used:
+            if flow / s.area > c.flux_limit * (1.0 + 1e-9):
+                yield Notice(
+                    "starting-flow",
+                    f"{s.stage}: the clean train starts at {flow / s.area:.4g} LMH, beyond its flux limit of "
+                    f"{c.flux_limit:.4g} LMH: throttle the start",
+                )
