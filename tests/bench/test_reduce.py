@@ -172,9 +172,23 @@ def test_broken_files_say_what_and_where(tmp_path: Path, case: str) -> None:
 def test_a_missing_file_and_a_missing_column_name(tmp_path: Path) -> None:
     assert "no such file" in problems(tmp_path / "b.csv")[0]
     path = write_text(tmp_path / "a.csv", GOOD)
-    assert "no column is headed 'P'" in problems(path, columns={"pressure": "P"})[0]
-    assert "names the role 'press'" in problems(path, columns={"press": "pressure (psi)"})[0]
     assert "has no sheets" in problems(path, sheet="run 1")[0]
+
+
+def test_entries_that_the_table_lacks_are_told_where_they_are_written(tmp_path: Path) -> None:
+    path = write_text(tmp_path / "a.csv", GOOD)
+    (missing,) = problems(path, columns={"pressure": "P"})
+    assert missing.startswith("medium.yaml:7: columns.pressure: no column is headed 'P' in ")
+    assert missing.endswith("a.csv; expected one of 'time (min)', 'volume (mL)', 'pressure (psi)'")
+    (role,) = problems(path, columns={"press": "pressure (psi)"})
+    assert role.startswith("medium.yaml:7: columns.press: 'press' is not what a column can be; expected one of time,")
+    (kind,) = problems(path, columns={"pressure": "volume (mL)", "volume": "volume (mL)"})
+    assert kind.startswith("medium.yaml:7: columns.pressure: in ")
+    assert "a.csv, column 'volume (mL)' is a volume, not a pressure; expected for example" in kind
+    twice = write_text(tmp_path / "b.csv", GOOD.replace("time (min)", "volume (mL)"))
+    assert "medium.yaml:7: columns.volume: several columns are headed 'volume (mL)'" in "\n".join(
+        problems(twice, columns={"volume": "volume (mL)"})
+    )
 
 
 def test_rows_without_a_reading_are_left_out_and_said(tmp_path: Path) -> None:

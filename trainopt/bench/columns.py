@@ -101,10 +101,14 @@ class _Search:
     given: set[str]
     found: dict[str, Column]
     problems: list[Problem]
+    misnamed: list[tuple[str, str]]
     assumed: list[str]
 
     def wrong(self, text: str) -> None:
         self.problems.append(self.table.problem(self.table.header_line, text))
+
+    def misnames(self, role: str, text: str) -> None:
+        self.misnamed.append((role, text))
 
     def take(self, role: str, candidates: list[_Header]) -> None:
         """Give the role to its only candidate; several are a problem, none is none."""
@@ -117,11 +121,13 @@ class _Search:
             self.wrong(f"{names} could each be the {what}; expected the run to say which, as in {example}")
         elif candidates:
             column = self.checked(role, candidates[0], candidates[0].unit)
-            if column is not None:
+            if isinstance(column, Column):
                 self.found[role] = column
+            else:
+                self.wrong(column)
 
-    def checked(self, role: str, header: _Header, unit: HeaderUnit | None) -> Column | None:
-        """The column with its unit checked against its role."""
+    def checked(self, role: str, header: _Header, unit: HeaderUnit | None) -> Column | str:
+        """The column with its unit checked against its role, or what is wrong with it."""
         dimension, example = DIMENSIONS[role], EXAMPLES[role]
         if unit is None and role == "turbidity" and not header.unit_text:
             return Column(role, header.index, header.text, HeaderUnit("NTU", "turbidity", 1.0))
@@ -130,21 +136,24 @@ class _Search:
             return Column(role, header.index, header.text, None, header.unit_text.casefold())
         if unit is None:
             unknown = f"has the unit '{header.unit_text}', which is not known" if header.unit_text else "has no unit"
-            self.wrong(f"column '{header.text}' ({role}) {unknown}; expected for example '{example}'")
-            return None
+            return f"column '{header.text}' ({role}) {unknown}; expected for example '{example}'"
         if unit.dimension != dimension:
             what = f"column '{header.text}' is a {unit.dimension}, not a {dimension}"
-            self.wrong(f"{what}; expected for example '{example}'")
-            return None
+            return f"{what}; expected for example '{example}'"
         return Column(role, header.index, header.text, unit)
 
 
 @dataclass(frozen=True)
 class Columns:
-    """Columns by role; every problem with them; what was assumed; whether a pressure was there to be read."""
+    """Columns by role; every problem with them; what was assumed; whether a pressure was there to be read.
+
+    `misnamed`: entries of `columns:` that do not fit the table, as (role, what is wrong); they stand in the medium's
+    file.
+    """
 
     found: Mapping[str, Column]
     problems: tuple[Problem, ...]
+    misnamed: tuple[tuple[str, str], ...]
     assumed: tuple[str, ...]
     pressure_seen: bool
 
@@ -152,7 +161,7 @@ class Columns:
 def find_columns(table: Table, given: Mapping[str, str] | None) -> Columns:
     """Which column has which role, by `given` (role → header) where it says so, else by units and names."""
     headers = [_header(table, index) for index in range(len(table.header))]
-    search = _Search(table, [], set(given or {}), {}, [], [])
+    search = _Search(table, [], set(given or {}), {}, [], [], [])
     for role, text in (given or {}).items():
         _take_given(search, headers, role, text)
     taken = {column.index for column in search.found.values()}
@@ -164,7 +173,7 @@ def find_columns(table: Table, given: Mapping[str, str] | None) -> Columns:
     _find_feed(search)
     seen = any(DIMENSIONS.get(role) == "pressure" for role in (*search.found, *search.given))
     seen = seen or any(_is_pressure(header) for header in search.left)
-    return Columns(search.found, tuple(search.problems), tuple(search.assumed), seen)
+    return Columns(search.found, tuple(search.problems), tuple(search.misnamed), tuple(search.assumed), seen)
 
 
 def _header(table: Table, index: int) -> _Header:
@@ -178,7 +187,7 @@ def _header(table: Table, index: int) -> _Header:
 def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -> None:
     """The column that the run names for a role: its header, perhaps with the unit it lacks, or none at all."""
     if role not in DIMENSIONS:
-        search.wrong(f"`columns:` names the role '{role}'; expected one of {', '.join(DIMENSIONS)}")
+        search.misnames(role, f"'{role}' is not what a column can be; expected one of {', '.join(DIMENSIONS)}")
         return
     if text.strip().casefold() == "none":
         return
@@ -189,12 +198,14 @@ def _take_given(search: _Search, headers: list[_Header], role: str, text: str) -
         matches = [header for header in headers if unit_text and header.name == name and not header.unit_text]
     if len(matches) != 1:
         have = ", ".join(f"'{header.text}'" for header in headers if header.text)
-        what = "two columns are" if matches else "no column is"
-        search.wrong(f"{what} headed '{text}' ({role} by `columns:`); expected one of {have}")
+        what = "several columns are" if matches else "no column is"
+        search.misnames(role, f"{what} headed '{text}' in {search.table.file}; expected one of {have}")
         return
     column = search.checked(role, matches[0], unit_of(unit_text) if unit_text else matches[0].unit)
-    if column is not None:
+    if isinstance(column, Column):
         search.found[role] = column
+    else:
+        search.misnames(role, f"in {search.table.file}, {column}")
 
 
 def _is_clock(table: Table, index: int) -> bool:

@@ -39,7 +39,8 @@ def reduce_run(run: Run, where: Where) -> ReducedRun:
     """
     table = read_table(run.file, run.sheet)
     found = find_columns(table, run.columns)
-    problems = [*found.problems, *_missing_settings(run, found, where)]
+    misnamed = [where(("columns", role), text) for role, text in found.misnamed]
+    problems = [*misnamed, *found.problems, *_missing_settings(run, found, where)]
     if problems:
         raise InputError(problems)
     readings = _readings(table, found, problems)
