@@ -9,8 +9,7 @@ from __future__ import annotations
 from collections.abc import Iterable
 from pathlib import Path
 
-from trainopt.bench.reduce import reduce_run
-from trainopt.curves.medium import fit_curve
+from trainopt.curves.medium import fit_curve, reduced_runs
 from trainopt.errors import InputError, Problem
 from trainopt.files import Medium, examine
 from trainopt.files.source import is_file
@@ -45,15 +44,5 @@ def _curve_problems(medium: Medium) -> tuple[Problem, ...]:
 
 def _run_problems(medium: Medium, only: Path | None = None) -> list[Problem]:
     """Problems of a medium's bench files, or of one of them; a file that is not there is told by its medium."""
-    out: list[Problem] = []
-    for index, run in enumerate(medium.curve.runs):
-
-        def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
-            return medium.source.at(("curve", "runs", index, *loc), text)
-
-        if is_file(run.file) and only in (None, run.file):
-            try:
-                reduce_run(run, where)
-            except InputError as error:
-                out.extend(error.problems)
-    return out
+    files = {run.file for run in medium.curve.runs if is_file(run.file) and only in (None, run.file)}
+    return reduced_runs(medium, files)[1]

@@ -3,8 +3,9 @@
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterable, Sequence
+from collections.abc import Collection, Iterable, Sequence
 from dataclasses import replace
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -30,7 +31,7 @@ def fit_curve(medium: Medium) -> Curve:
     """The resistance curve of a medium; raises `InputError` with every problem in its runs."""
     if not medium.curve.runs:
         return given_curve(medium)
-    runs, problems = _reduced_runs(medium)
+    runs, problems = reduced_runs(medium)
     if problems:
         raise InputError(problems)
     reference = _reference_temperature(runs)
@@ -69,10 +70,13 @@ def _undecided(evidence: Evidence) -> str:
     )
 
 
-def _reduced_runs(medium: Medium) -> tuple[list[ReducedRun], list[Problem]]:
+def reduced_runs(medium: Medium, files: Collection[Path] | None = None) -> tuple[list[ReducedRun], list[Problem]]:
+    """A medium's runs, those of `files` alone where given, as far as they can be reduced, and their problems."""
     runs: list[ReducedRun] = []
     problems: list[Problem] = []
     for index, run in enumerate(medium.curve.runs):
+        if files is not None and run.file not in files:
+            continue
 
         def where(loc: tuple[str, ...], text: str, index: int = index) -> Problem:
             return medium.source.at(("curve", "runs", index, *loc), text)

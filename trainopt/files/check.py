@@ -1,6 +1,7 @@
 """Every problem and warning in the files that a path stands for, without designing anything.
 
-`trainopt.bench.check` adds what reading the bench runs finds; use that one where the runs count too.
+`trainopt.curves.check` adds what reading the bench runs and fitting the curves finds; use that one where the
+runs count too.
 """
 
 from __future__ import annotations
@@ -81,7 +82,7 @@ def _look(path: Path, checked: Checked) -> None:
 def _folder(path: Path, checked: Checked) -> None:
     found = _workspace_at(find_root(path), checked)
     folder = found.root / "scenarios"
-    paths = sorted(p for p in folder.glob("*") if p.suffix.lower() in YAML_SUFFIXES) if folder.is_dir() else []
+    paths = sorted(p for p in folder.rglob("*") if p.suffix.lower() in YAML_SUFFIXES) if folder.is_dir() else []
     if not paths:
         checked.warnings.add(Problem(shown_path(folder), 0, "holds no scenario"))
     scenarios = [_scenario(scenario, found, checked) for scenario in paths]

@@ -161,7 +161,9 @@ def _installed_problems(source: Source, scenario: Scenario, modules: dict[str, s
             allowed = {choice.medium for choice in stage.media}
             loc: Loc = ("installed", name, "module")
             yield from _module_problems(source, loc, stage, installed.module, modules, allowed)
-    if scenario.installed is not None:
+    if scenario.installed == {}:
+        yield source.at(("installed",), "is empty; expected the module and the count that stand in each stage")
+    elif scenario.installed is not None:
         for name, stage in stages.items():
             if name not in scenario.installed and not stage.optional:
                 text = f"'{name}' is missing; expected what is installed in every stage that is not optional"

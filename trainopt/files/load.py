@@ -81,12 +81,20 @@ def find_root(path: Path) -> Path:
 
 
 def file_kind(path: Path) -> str:
-    """What a YAML file is, by what it says: "medium", "catalog" or "scenario"."""
+    """What a YAML file is, by where it stands, else by what it says: "medium", "catalog" or "scenario"."""
     source, _ = read_source(path)
+    if _among_scenarios(path):
+        return "scenario"
     if "modules" in source.data or path.name == "catalog.yaml":
         return "catalog"
     in_media = path.absolute().parent.name == "media"
     return "medium" if in_media or "curve" in source.data or "medium" in source.data else "scenario"
+
+
+def _among_scenarios(path: Path) -> bool:
+    """Whether a file stands in the `scenarios/` of a workspace, or in a folder of it."""
+    folders = path.absolute().parents
+    return any(folder.name == "scenarios" and is_folder(folder.parent / "models") for folder in folders)
 
 
 def read_workspace(root: Path) -> Found:
