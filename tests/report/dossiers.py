@@ -69,6 +69,7 @@ def dossier(design: Design, curve: Curve | None = None) -> Dossier:
             time=time,
             base=np.full(21, 0.06),
             stages=tuple((stage.stage, share * stage.pressure * np.exp(time - 3.84)) for stage in block.stages),
+            flow=np.full(21, 520.0) if block.operation == "constant-flow" else 520.0 * np.exp(-0.2 * time),
             derated=derated,
         )
         for block in design.blocks

@@ -3,13 +3,17 @@
 from __future__ import annotations
 
 import re
+import shutil
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 import trainopt
+from trainopt.report.course_figure import course_figure
+from trainopt.report.curve_sections import course_section
 from trainopt.report.gather import now
+from trainopt.report.json import report_document
 from trainopt.train.results import StageDesign
 
 ROOT = Path(__file__).parents[2]
@@ -93,3 +97,60 @@ def test_bytes_repeat_from_the_files_on(kind: str, monkeypatch: pytest.MonkeyPat
     monkeypatch.setenv("SOURCE_DATE_EPOCH", "1767323045")
     case = trainopt.load_case(ROOT / "scenarios" / "redundant-guard.yaml")
     assert trainopt.report_bytes(trainopt.gather(case), kind) == trainopt.report_bytes(trainopt.gather(case), kind)
+
+
+HELD = """\
+extends: harvest.yaml
+scenario: guard at constant pressure
+blocks: [{block: guard, operation: constant-pressure, pressure: 0.8 bar}]
+"""
+
+SKIPPED = """\
+extends: harvest.yaml
+scenario: nothing asks for the guard
+blocks: [{block: guard, stages: [{stage: membrane, optional: true}]}]
+"""
+
+
+def changed_demo(folder: Path, text: str) -> trainopt.Case:
+    for part in ("models", "scenarios"):
+        shutil.copytree(ROOT / part, folder / part)
+    path = folder / "scenarios" / "changed.yaml"
+    path.write_text(text, encoding="utf-8")
+    return trainopt.load_case(path)
+
+
+def test_the_flow_falls_where_the_pressure_is_held(tmp_path: Path) -> None:
+    dossier = trainopt.gather(changed_demo(tmp_path, HELD))
+    for course in dossier.courses:
+        passed = np.trapezoid(course.flow, course.time)
+        assert passed == pytest.approx(dossier.volume, rel=1e-4)  # the area below the flow is the batch
+        assert course.flow_falls == (course.block == "guard")
+        if course.block == "guard":
+            assert np.all(np.diff(course.flow) < 0.0)
+    documents = report_document(dossier)["courses"]
+    assert [entry["flow_L_per_h"] for entry in documents] == [course.flow.tolist() for course in dossier.courses]
+
+    panels = course_figure(dossier.courses).axes
+    assert [axes.get_ylabel() for axes in panels] == ["Pressure, bar", "Pressure, bar", "Flow, L/h"]
+    drawn = [tuple(line.get_ydata()) for line in panels[-1].lines]
+    assert sorted(drawn) == sorted(tuple(course.flow) for course in dossier.courses if course.block == "guard")
+    section = course_section(dossier, "bar")
+    assert section is not None
+    (picture,), (table,) = section.pictures, section.tables
+    assert "the flow falls" in picture.caption
+    names = [column.name for column in table.columns]
+    starts, ends = (names.index(f"Flow at the {end}") for end in ("start", "end"))
+    for course, row in zip(dossier.courses, table.rows, strict=True):
+        assert (row[starts], row[ends]) == (course.flow[0], course.flow[-1])
+
+
+def test_no_flow_is_drawn_where_it_is_constant(dossiers: dict[str, trainopt.Dossier]) -> None:
+    panels = course_figure(dossiers["harvest"].courses).axes
+    assert [axes.get_ylabel() for axes in panels] == ["Pressure, bar", "Pressure, bar"]
+
+
+def test_a_block_that_is_not_used_has_no_course(tmp_path: Path) -> None:
+    dossier = trainopt.gather(changed_demo(tmp_path, SKIPPED))
+    assert [block.block for block in dossier.design.blocks if not block.stages] == ["guard"]
+    assert {course.block for course in dossier.courses} == {"clarification"}

@@ -96,6 +96,8 @@ def course_section(dossier: Dossier, units: str) -> Section | None:
             course.lot,
             "derated" if course.derated else "installed",
             float(course.time[-1]),
+            float(course.flow[0]),
+            float(course.flow[-1]),
             float(course.total[0]) * PRESSURE_UNITS[units],
             float(course.total[-1]) * PRESSURE_UNITS[units],
             course.limit * PRESSURE_UNITS[units],
@@ -103,12 +105,14 @@ def course_section(dossier: Dossier, units: str) -> Section | None:
         for course in dossier.courses
     )
     highest = max(dossier.courses, key=lambda course: float(course.total.max()) / course.limit)
+    falling = any(course.flow_falls for course in dossier.courses)
+    falls = " Where the pressure is held, the flow falls as the stages foul: it stands below." if falling else ""
     picture = Picture(
         "course",
         lambda: course_figure(dossier.courses, units),
         "Filled: what each stage takes with the worst lot at the installed area, as gauges would show it. "
         "Lines: the pump's pressure for each lot, and for the worst lot with all areas "
-        "derated by the safety factor.",
+        "derated by the safety factor." + falls,
         f"Pressure against time for each block; the highest is {pressure.text(float(highest.total.max()))} "
         f"of {pressure.text(highest.limit)} in {highest.block}, lot {highest.lot}.",
     )
@@ -117,9 +121,11 @@ def course_section(dossier: Dossier, units: str) -> Section | None:
         words("Lot"),
         words("Area"),
         Column("Time", "h"),
+        Column("Flow at the start", "L/h", "significant"),
+        Column("Flow at the end", "L/h", "significant"),
         pressure_column("Pressure at the start", units),
         pressure_column("Pressure at the end", units),
         pressure_column("Limit", units),
     )
-    table = Table("Pressure at the pump, by lot", columns, rows)
+    table = Table("Pressure at the pump and flow, by lot", columns, rows)
     return Section("course", "Pressure over the batch", (), (picture,), (table,))

@@ -137,6 +137,8 @@ def _band(curve: Curve, lot: str, candidate: Candidate, problem: DesignProblem) 
 def _courses(problem: DesignProblem, found: Design) -> Iterator[Course]:
     """Each block's batch with every lot at the installed area, and with the worst lot derated."""
     for shown in found.blocks:
+        if not shown.stages:
+            continue
         for number, lot in enumerate(problem.lots):
             yield _course(problem, found, shown, number, derated=False)
             if lot == shown.worst_lot and problem.safety_factor != 1.0:
@@ -160,6 +162,7 @@ def _course(problem: DesignProblem, found: Design, shown: BlockDesign, lot: int,
         time=course.time,
         base=np.asarray(course.total - course.pressure.sum(axis=0)),
         stages=tuple(zip(course.stages, course.pressure, strict=True)),
+        flow=course.flow,
         derated=derated,
     )
 

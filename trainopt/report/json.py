@@ -292,6 +292,7 @@ def report_document(dossier: Dossier) -> Document:
                 "derated": course.derated,
                 "limit_bar": course.limit,
                 "time_h": course.time.tolist(),
+                "flow_L_per_h": course.flow.tolist(),
                 "pressure_bar": course.total.tolist(),
                 "stages": [{"stage": name, "pressure_bar": values.tolist()} for name, values in course.stages],
             }
