@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
 
@@ -11,13 +11,24 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trainopt.curves.curve import Curve, LotCurve
+from trainopt.curves.sampled import SampledCurves
 from trainopt.curves.viscosity import viscosity_ratio
-from trainopt.errors import InputError
 from trainopt.train.options import Cap, Duty, inside_caps, joined, module_options, take, undominated
-from trainopt.train.problem import Block, Candidate, DesignProblem, Dropped, ModuleSize, Options, Stage
+from trainopt.train.problem import (
+    Block,
+    Candidate,
+    DesignProblem,
+    Dropped,
+    ModuleSize,
+    Options,
+    Reliability,
+    Stage,
+    worst_but,
+)
+from trainopt.train.sampling import Sampler, sampler
 
 if TYPE_CHECKING:
-    from trainopt.files import BlockSpec, Case, Medium, MediumChoice, StageSpec
+    from trainopt.files import BlockSpec, Case, Medium, MediumChoice, ReliabilityBasis, StageSpec
 
 POOLED = "pooled"
 
@@ -29,8 +40,11 @@ def used_media(case: Case) -> tuple[str, ...]:
 
 
 def lots_of(case: Case, curves: Mapping[str, Curve]) -> tuple[str, ...]:
-    """Lots a design must hold for: those run on any candidate medium (worst-lot), or the pooled curve."""
-    if case.scenario.basis == POOLED:
+    """Lots a design must hold for: those run on any candidate medium (worst-lot), the pooled curve, or samples."""
+    basis = case.scenario.basis
+    if not isinstance(basis, str):
+        return tuple(f"sample {number}" for number in range(1, basis.samples + 1))
+    if basis == POOLED:
         return (POOLED,)
     return tuple(sorted({lot for name in used_media(case) for lot in curves[name].lots})) or (POOLED,)
 
@@ -41,10 +55,6 @@ def build_problem(case: Case, curves: Mapping[str, Curve], objective: str | None
     `curves` maps each of `used_media(case)` to its curve; `objective` ("area", "cost") overrides the scenario's.
     """
     scenario = case.scenario
-    if not isinstance(scenario.basis, str):
-        # A design for a share of sampled lots is not offered yet, and no other may pass for one.
-        text = "basis: a reliability basis cannot be used yet; expected 'worst-lot' or 'pooled'"
-        raise InputError([scenario.source.problem(("basis",), text)])
     kind = objective or scenario.objective
     lots = lots_of(case, curves)
     blocks = tuple(_block(case, block, curves, lots, kind) for block in scenario.blocks)
@@ -59,7 +69,15 @@ def build_problem(case: Case, curves: Mapping[str, Curve], objective: str | None
         lots=lots,
         blocks=blocks,
         currency=case.workspace.catalog.currency,
+        reliability=None if isinstance(scenario.basis, str) else reliability_of(scenario.basis),
     )
+
+
+def reliability_of(basis: ReliabilityBasis) -> Reliability:
+    """The share to hold, and floor((1 − q)·N), the number of sampled lots that may fail."""
+    # The share is written in decimals: 0.95 of 400 leaves 20, whatever binary rounding makes of it.
+    may_fail = math.floor((1.0 - basis.reliability) * basis.samples * (1.0 + 1e-12) + 1e-9)
+    return Reliability(basis.reliability, may_fail, basis.seed)
 
 
 def _block(case: Case, spec: BlockSpec, curves: Mapping[str, Curve], lots: tuple[str, ...], objective: str) -> Block:
@@ -91,12 +109,20 @@ def plant_curves(curve: Curve, lots: tuple[str, ...], temperature: float | None)
     return tuple(curve.lot_curve(None if lot == POOLED else lot, ratio) for lot in lots)
 
 
-def loading_cap(medium: Medium, curve: Curve, curves: tuple[LotCurve, ...]) -> Cap:
-    """The lowest of the caps on design loading: the given limit or else what was tested, and the turbidity limit's."""
+def loading_cap(medium: Medium, curve: Curve, curves: Sequence[LotCurve], may_fail: int = 0) -> Cap:
+    """The lowest of the caps on design loading: the given limit or else what was tested, and the turbidity limit's.
+
+    What was tested must hold for every lot but `may_fail`.
+    """
     if medium.limits.loading is not None:
         cap = Cap(medium.limits.loading, "loading-limit")
     else:
-        cap = Cap(curve.tested_loading / max(one.fouling_factor for one in curves), "loading-tested")
+        fouling = (
+            curves.fouling_factor
+            if isinstance(curves, SampledCurves)
+            else np.array([one.fouling_factor for one in curves])
+        )
+        cap = Cap(curve.tested_loading / float(worst_but(fouling, may_fail)), "loading-tested")
     if curve.turbidity_loading is not None and curve.turbidity_loading < cap.loading:
         cap = Cap(curve.turbidity_loading, "turbidity")
     return cap
@@ -106,8 +132,15 @@ def _candidate(
     case: Case, stage: StageSpec, choice: MediumChoice, curve: Curve, lots: tuple[str, ...], duty: Duty
 ) -> Candidate:
     medium, catalog = case.workspace.media[choice.medium], case.workspace.catalog
-    curves = plant_curves(curve, lots, case.scenario.batch.temperature)
-    cap = loading_cap(medium, curve, curves)
+    draws, may_fail = _sampler(case, stage, medium, curve), 0
+    if draws is None:
+        curves: Sequence[LotCurve] = plant_curves(curve, lots, case.scenario.batch.temperature)
+        cap = loading_cap(medium, curve, curves)
+    else:
+        assert not isinstance(case.scenario.basis, str)
+        may_fail = reliability_of(case.scenario.basis).may_fail
+        curves = draws.curves(len(lots))
+        cap = loading_cap(medium, curve, curves, may_fail)
     flux_limit = medium.limits.flux if medium.limits.flux is not None else curve.tested_flux
     (pooled,) = plant_curves(curve, (POOLED,), case.scenario.batch.temperature)
     further = math.inf if medium.limits.loading is None else medium.limits.loading
@@ -122,7 +155,7 @@ def _candidate(
         if counts is None:
             continue
         options = module_options(medium, name, catalog, case.scenario.costs, duty, counts)
-        kept, left_out = inside_caps(options, cap, curves, duty.operation, flux_limit, duty.volume)
+        kept, left_out = inside_caps(options, cap, curves, duty.operation, flux_limit, duty.volume, may_fail)
         parts.append(kept)
         everything.append(options)
         sizes.append(ModuleSize(name, module.area, int(counts[0]), int(counts[-1])))
@@ -144,7 +177,17 @@ def _candidate(
         pooled=pooled,
         pooled_cap=loading_cap(medium, curve, (pooled,)).loading,
         further_cap=further,
+        sampler=draws,
     )
+
+
+def _sampler(case: Case, stage: StageSpec, medium: Medium, curve: Curve) -> Sampler | None:
+    """What draws a candidate's lots on a reliability basis (None on another)."""
+    basis = case.scenario.basis
+    if isinstance(basis, str):
+        return None
+    ratio = viscosity_ratio(case.scenario.batch.temperature, curve.tested_temperature)
+    return sampler(case.scenario, basis.seed, stage.stage, medium, curve, ratio)
 
 
 def _counts(stage: StageSpec, module: str, max_count: int) -> NDArray[np.int64] | None:
@@ -189,7 +232,7 @@ def _pruned_block(problem: DesignProblem, block: Block) -> Block:
         if not len(options):
             return one
         head = min(block.head, one.differential_pressure) if block.operation == "constant-flow" else block.head
-        needed = np.maximum((options.demand.max(axis=0) + (line if head == block.head else 0.0)) / max(head, 1e-300),
+        needed = np.maximum((problem.worst(options.demand) + (line if head == block.head else 0.0)) / max(head, 1e-300),
                             options.shortest_time)  # fmt: skip
         slow = needed > longest * (1.0 + 1e-6)
         text = f"{int(slow.sum())} options alone take longer than the block has"

@@ -7,8 +7,9 @@ from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
 from trainopt.train.build import POOLED, lots_of, used_media
-from trainopt.train.problem import DesignProblem
-from trainopt.train.results import BlockDesign, Notice
+from trainopt.train.problem import Candidate, DesignProblem
+from trainopt.train.results import BlockDesign, Notice, ReliabilityResult
+from trainopt.train.sampling import root_covariance, sampler
 
 if TYPE_CHECKING:
     from trainopt.files import Case, Medium
@@ -18,21 +19,76 @@ def case_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
     """Notices that follow from the files alone: what was assumed, what was not tested."""
     for problem in case.warnings:
         yield Notice("files", str(problem))
-    if case.scenario.feed_variability is not None:
-        yield Notice(
-            "variability-not-used", "feed_variability is not used yet: the design holds for the lots that were run"
-        )
+    yield from _variability_notices(case, curves)
     temperature = case.scenario.batch.temperature
     lots = lots_of(case, curves)
     for name in used_media(case):
         curve, medium = curves[name], case.workspace.media[name]
-        yield from _medium_notices(medium, curve, temperature, lots)
+        yield from _medium_notices(medium, curve, temperature, lots, isinstance(case.scenario.basis, str))
 
 
-def _medium_notices(medium: Medium, curve: Curve, temperature: float | None, lots: tuple[str, ...]) -> Iterator[Notice]:
+def _variability_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
+    """What of the variability given counts, and what a reliability basis lacks."""
+    scenario, media = case.scenario, {name: case.workspace.media[name] for name in used_media(case)}
+    if isinstance(scenario.basis, str):
+        given = [name for name, medium in media.items() if medium.variability is not None]
+        given += ["the feed"] if scenario.feed_variability is not None else []
+        if given:
+            yield Notice(
+                "variability-not-used",
+                f"the variability of {', '.join(given)} does not enter a design on the {scenario.basis} basis, which "
+                "holds for the lots that were run; basis: {reliability: 0.95} would use it",
+            )
+        return
+    if scenario.safety_factor > 1.0:
+        yield Notice(
+            "two-margins",
+            f"safety factor {scenario.safety_factor:g} derates the area on top of the reliability basis: both margins "
+            "are held; safety_factor: 1 leaves the margin to the sampled lots",
+        )
+    samplers = [
+        sampler(scenario, scenario.basis.seed, stage.stage, media[choice.medium], curves[choice.medium], 1.0)
+        for block in scenario.blocks for stage in block.stages for choice in stage.media
+    ]  # fmt: skip
+    if not any(one.varies for one in samplers):
+        yield Notice(
+            "nothing-varies",
+            "no variability is known of any medium or of the feed: all sampled lots are alike; give variability in the "
+            "media and feed_variability in the scenario",
+        )
+        return
+    alike = sorted({one.curve.medium for one in samplers if one.resistance.deviation + one.fouling.deviation == 0.0})
+    if alike:
+        yield Notice(
+            "no-lot-variability",
+            f"{', '.join(alike)}: no variability is given and fewer than three lots were run (or they did not differ): "
+            "module and media lots count as alike",
+        )
+    unknown = sorted({one.curve.medium for one in samplers
+                      if one.curve.source == "runs" and root_covariance(one.curve) is None})  # fmt: skip
+    if unknown:
+        yield Notice(
+            "fit-uncertainty-unknown",
+            f"{', '.join(unknown)}: the runs do not show how sure the fitted parameters are; they count as exact",
+        )
+
+
+def reliability_notices(sure: ReliabilityResult) -> Iterator[Notice]:
+    """Where a reliability falls short of what was asked for."""
+    if sure.fresh.high < sure.target:
+        yield Notice(
+            "reliability-short",
+            f"on {sure.fresh_samples} fresh lots the design finishes {sure.fresh.share:.2%} of batches "
+            f"({sure.fresh.low:.2%} to {sure.fresh.high:.2%}), short of the {sure.target:.4g} asked for: a design fits "
+            "its own samples; ask for more samples, or for a little more reliability",
+        )
+
+
+def _medium_notices(
+    medium: Medium, curve: Curve, temperature: float | None, lots: tuple[str, ...], fixed: bool
+) -> Iterator[Notice]:
+    """`fixed`: the lots are those that were run, not samples."""
     name = medium.medium
-    if medium.variability is not None:
-        yield Notice("variability-not-used", f"{name}: variability is not used yet: the lots that were run count")
     for flag in curve.flags:
         rows = f" rows {flag.rows[0]} to {flag.rows[1]}:" if flag.rows else ""
         yield Notice(flag.code, f"{name}, {flag.run}:{rows} {flag.text}" if flag.run else f"{name}: {flag.text}")
@@ -45,7 +101,7 @@ def _medium_notices(medium: Medium, curve: Curve, temperature: float | None, lot
             )
     elif temperature is not None:
         yield Notice("no-test-temperature", f"{name}: no test temperature is given: no viscosity correction is made")
-    untested = [lot for lot in lots if lot != POOLED and curve.lots and lot not in curve.lots]
+    untested = [lot for lot in lots if lot != POOLED and curve.lots and lot not in curve.lots] if fixed else []
     if untested:
         yield Notice(
             "lot-not-tested",
@@ -69,7 +125,7 @@ def design_notices(
         for stage in block.stages:
             curve = curves[stage.medium]
             loading = problem.safety_factor * stage.loading * _derating(problem, stage.stage, stage.medium)
-            worst = max([1.0] if problem.lots == (POOLED,) else [e.fouling for e in curve.lots.values()] or [1.0])
+            worst = _worst_fouling(problem, stage.stage, stage.medium)
             if loading * worst > curve.tested_loading * (1.0 + 1e-9):
                 yield Notice(
                     "beyond-tested-loading",
@@ -93,12 +149,21 @@ def design_notices(
             upstream, loaded = stage.stage, stage.loading
 
 
+def _worst_fouling(problem: DesignProblem, stage: str, medium: str) -> float:
+    """The highest κ of the lots."""
+    return max(curve.fouling_factor for curve in _candidate(problem, stage, medium).curves)
+
+
 def _derating(problem: DesignProblem, stage: str, medium: str) -> float:
     """1/φ of the candidate."""
+    return 1.0 / _candidate(problem, stage, medium).scale_up
+
+
+def _candidate(problem: DesignProblem, stage: str, medium: str) -> Candidate:
     for block in problem.blocks:
         for one in block.stages:
             if one.name == stage:
-                return 1.0 / next(c.scale_up for c in one.candidates if c.medium == medium)
+                return next(c for c in one.candidates if c.medium == medium)
     raise LookupError(stage)
 
 

@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trainopt.curves.curve import LotCurve
+from trainopt.curves.sampled import SampledCurves
 from trainopt.train.problem import Dropped, Floats, Options
 
 if TYPE_CHECKING:
@@ -66,6 +67,8 @@ def cheapest_holder(
 
 def demand(curves: Sequence[LotCurve], operation: str, loading: Floats) -> Floats:
     """D in bar·h, shape (lots, n), of each design loading in L/m² (model.md, section 1); infinite past a pole."""
+    if isinstance(curves, SampledCurves):
+        return curves.demand(operation, np.asarray(loading, dtype=np.float64))
     if operation == "constant-pressure":
         return np.array([curve.demand_constant_pressure(loading) for curve in curves])
     return np.array([curve.demand_constant_flow(loading) for curve in curves])
@@ -142,9 +145,18 @@ def joined(parts: Sequence[Options]) -> Options:
 
 
 def inside_caps(
-    options: Options, cap: Cap, curves: Sequence[LotCurve], operation: str, flux_limit: float, volume: float
+    options: Options,
+    cap: Cap,
+    curves: Sequence[LotCurve],
+    operation: str,
+    flux_limit: float,
+    volume: float,
+    may_fail: int = 0,
 ) -> tuple[Options, tuple[Dropped, ...]]:
-    """The options that exist, with D and τ filled in, and why the others do not."""
+    """The options that exist, with D and τ filled in, and why the others do not.
+
+    An option exists if D is finite for all lots but `may_fail`.
+    """
     dropped: list[Dropped] = []
     module = options.module[0] if options.module else ""
     fits = cap.holds(options.loading)
@@ -153,9 +165,9 @@ def inside_caps(
         dropped.append(Dropped(cap.reason, module, int((~fits).sum()), cap.loading, text))
         options = take(options, np.flatnonzero(fits))
     spent = demand(curves, operation, options.loading)
-    finite = np.isfinite(spent).all(axis=0)
+    finite = (~np.isfinite(spent)).sum(axis=0) <= may_fail
     if not finite.all():
-        pole = min(curve.pole for curve in curves)
+        pole = sorted(curve.pole for curve in curves)[may_fail]
         text = f"{int((~finite).sum())} counts load past {pole:.4g} L/m2, where the fitted resistance is infinite"
         dropped.append(Dropped("pole", module, int((~finite).sum()), pole, text))
     filled = replace(options, demand=spent, shortest_time=volume / (options.area * flux_limit))

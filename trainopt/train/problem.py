@@ -9,12 +9,17 @@ cannot depend on the order in which a file lists them.
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 from numpy.typing import NDArray
 
 from trainopt.curves.curve import LotCurve
+
+if TYPE_CHECKING:
+    from trainopt.train.sampling import Sampler
 
 Floats = NDArray[np.float64]
 
@@ -77,7 +82,7 @@ class Candidate:
     `modules` are the sizes on offer, `options` all those inside the caps, undominated ones only when the problem was
     pruned. For what-ifs: `on_offer` every option, caps aside (`demand` and `shortest_time` not filled; None: not
     known); `pooled` the curve that no lot's multipliers change, `pooled_cap` its loading cap, `further_cap` the cap
-    if bench runs had gone on for ever, L/m².
+    if bench runs had gone on for ever, L/m². `sampler` draws further lots (None: the problem has no reliability basis).
     """
 
     medium: str
@@ -88,7 +93,7 @@ class Candidate:
     loading_cap: float
     cap_reason: str
     scale_up: float
-    curves: tuple[LotCurve, ...]
+    curves: Sequence[LotCurve]
     options: Options
     dropped: tuple[Dropped, ...]
     modules: tuple[ModuleSize, ...] = ()
@@ -96,6 +101,7 @@ class Candidate:
     pooled: LotCurve | None = None
     pooled_cap: float = math.inf
     further_cap: float = math.inf
+    sampler: Sampler | None = None
 
     @property
     def largest_area(self) -> float:
@@ -142,8 +148,21 @@ class Block:
 
 
 @dataclass(frozen=True)
+class Reliability:
+    """A reliability basis: the share of batches to finish, how many of the sampled lots may fail, and their seed."""
+
+    target: float
+    may_fail: int
+    seed: int
+
+
+@dataclass(frozen=True)
 class DesignProblem:
-    """Everything a design is decided on: volume L, total time h, blocks in flow order, lots by name."""
+    """Everything a design is decided on: volume L, total time h, blocks in flow order, lots by name.
+
+    With `reliability` the lots are samples, of which so many may break a pressure limit or go beyond what was tested;
+    without, every lot must hold.
+    """
 
     title: str
     volume: float
@@ -155,9 +174,33 @@ class DesignProblem:
     lots: tuple[str, ...]
     blocks: tuple[Block, ...]
     currency: str
+    reliability: Reliability | None = None
+
+    @property
+    def may_fail(self) -> int:
+        """How many of the lots may fail."""
+        return 0 if self.reliability is None else self.reliability.may_fail
+
+    def enough(self, holds: NDArray[np.bool_]) -> NDArray[np.bool_]:
+        """Whether enough lots hold: `holds` of shape (lots, …), the answer of shape (…)."""
+        return np.asarray((~holds).sum(axis=0) <= self.may_fail)
+
+    def worst(self, values: Floats) -> Floats:
+        """What all but the lots that may fail stay within, for one quantity: (lots, …) to (…), −inf without lots."""
+        return worst_but(values, self.may_fail)
 
     def longest_time(self, block: Block) -> float:
         """The most t_b can be, h: what all setups leave (side by side: its own), within the pump's least flow."""
         setups = sum(b.setup for b in self.blocks) if self.schedule == "sequential" else block.setup
         pump = self.volume / block.min_flow if block.min_flow > 0.0 else float("inf")
         return min(self.time - setups, pump)
+
+
+def worst_but(values: Floats, spared: int) -> Floats:
+    """The highest of the values of shape (lots, …) along the lots, after so many of the highest are spared."""
+    if spared <= 0:
+        return np.asarray(values.max(axis=0, initial=-math.inf))
+    place = len(values) - 1 - spared
+    if place < 0:
+        return np.full(values.shape[1:], -math.inf)
+    return np.asarray(np.partition(values, place, axis=0)[place])

@@ -149,6 +149,125 @@ class Saving:
 
 
 @dataclass(frozen=True)
+class Chance:
+    """A share of fresh sampled lots that finish in time and inside every limit, with its 95 % Wilson interval."""
+
+    share: float
+    low: float
+    high: float
+
+
+@dataclass(frozen=True)
+class UsualDesign:
+    """The design with a safety factor on the worst lot run, in place of sampled lots, and how it fares with them.
+
+    `area` m², `cost` per batch; `fresh` counts its areas as they are, not derated. None where there is no such design.
+    """
+
+    safety_factor: float
+    area: float | None
+    cost: float | None
+    fresh: Chance | None
+
+
+@dataclass(frozen=True)
+class ReliabilityResult:
+    """How sure a design on a reliability basis is.
+
+    `target` the share asked for, `in_sample` the share of the `samples` lots it was made for that hold, `fresh` the
+    share of `fresh_samples` others; `even_split` the same for the even split (None where there is none), `usual` for
+    the safety-factor design. `equivalent_safety_factor` is the common derating that the design takes at the pooled
+    curve: what its reliability amounts to. `seed` of the samples.
+    """
+
+    target: float
+    in_sample: float
+    fresh: Chance
+    samples: int
+    fresh_samples: int
+    even_split: Chance | None
+    usual: UsualDesign | None
+    equivalent_safety_factor: float | None
+    seed: int
+
+
+@dataclass(frozen=True)
+class SpareBlock:
+    """What a design leaves of a block: its `time` in h, and the `pressure` in bar that it does not need."""
+
+    block: str
+    time: float
+    pressure: float
+
+
+@dataclass(frozen=True)
+class NearDesign:
+    """A pick near the best: `area` m², `cost` per batch, `spare_time` in h that it could finish earlier, and the
+    largest common derating it takes at its block times."""
+
+    objective: float
+    area: float
+    cost: float
+    picks: tuple[Pick, ...]
+    blocks: tuple[SpareBlock, ...]
+    spare_time: float
+    safety_factor: float | None
+
+
+@dataclass(frozen=True)
+class Alternatives:
+    """The best distinct picks, the design first, that are within `gap` (relative) of its objective.
+
+    `asked` how many were asked for at most; `proven` False where a limit stopped the solver before all were found.
+    """
+
+    gap: float
+    asked: int
+    proven: bool
+    designs: tuple[NearDesign, ...]
+
+
+@dataclass(frozen=True)
+class RouteDesign:
+    """The best design with one sequence of media, (stage, medium) in flow order; numbers None where there is none."""
+
+    media: tuple[tuple[str, str], ...]
+    objective: float | None
+    area: float | None
+    cost: float | None
+    picks: tuple[Pick, ...]
+
+
+@dataclass(frozen=True)
+class RouteDesigns:
+    """The best designs of other allowed routes, best first, and how many other routes there are."""
+
+    designs: tuple[RouteDesign, ...]
+    allowed: int
+
+
+@dataclass(frozen=True)
+class Proof:
+    """How the optimum was proven: solver and versions, its seed, threads and limits, number of runs, size of the model.
+
+    `time_limit` in s (None: none); gaps relative and absolute, tolerances as set.
+    """
+
+    solver: str
+    solver_version: str
+    modeler: str
+    modeler_version: str
+    seed: int
+    threads: int
+    time_limit: float | None
+    relative_gap: float
+    feasibility_tolerance: float
+    solves: int
+    rows: int
+    columns: int
+
+
+@dataclass(frozen=True)
 class AreaPart:
     """One cause's share of what is installed: `area` m², `cost` per batch (below zero where it takes some off)."""
 
@@ -234,7 +353,8 @@ class Design:
     `status` "optimal" (proven), "limit" (best found when a limit stopped the solver) or "infeasible" (then numbers are
     None and `reasons` is filled). `area` m², `time` h (process time and setups), `cost` per batch.
     `safety_factor`: the largest common derating at the design's times that still meets every limit.
-    `inputs` maps each file read to "sha256:…". `area_parts` is filled where it was asked for.
+    `inputs` maps each file read to "sha256:…". `area_parts`, `routes` and `alternatives` are filled where they were
+    asked for, `reliability` on a reliability basis.
     """
 
     scenario: str
@@ -253,6 +373,10 @@ class Design:
     reasons: tuple[Reason, ...] = ()
     inputs: Mapping[str, str] = field(default_factory=dict)
     area_parts: AreaParts | None = None
+    reliability: ReliabilityResult | None = None
+    routes: RouteDesigns | None = None
+    alternatives: Alternatives | None = None
+    proof: Proof | None = None
 
     @property
     def picks(self) -> tuple[Pick, ...]:
