@@ -4,7 +4,6 @@ from __future__ import annotations
 
 from pathlib import Path
 
-import pytest
 from factory import block, flat, problem, stage
 
 import trainopt
@@ -38,12 +37,6 @@ def test_a_hair_too_little_time_still_has_its_reasons(tmp_path: Path) -> None:
     # The least time is 10/3 h: the solver's tolerance and the closed form disagree only about its last digits.
     result = trainopt.design(demo(tmp_path, "time: 6 h", "time: 3.33333333 h"))
     assert result.status == "optimal" or result.reasons
-
-
-def test_a_reliability_basis_is_refused_not_designed_as_another(tmp_path: Path) -> None:
-    case = demo(tmp_path, "basis: worst-lot", "basis: {reliability: 0.95, samples: 100, seed: 1}")
-    with pytest.raises(trainopt.InputError, match=r"harvest\.yaml:\d+: .*reliability"):
-        trainopt.design(case)
 
 
 def test_a_clean_train_at_constant_pressure_that_starts_too_fast_is_said() -> None:

@@ -133,11 +133,17 @@ def test_cells_beyond_every_option_say_which_stage_and_limit(harvest: trainopt.C
     assert "L/m2" in cell.reason
 
 
-def test_a_basis_that_design_refuses_is_refused_here_too(harvest: trainopt.Case):
+def test_a_reliability_basis_is_swept_cell_by_cell_like_design(harvest: trainopt.Case):
     scenario = harvest.scenario.model_copy(update={"basis": ReliabilityBasis(reliability=0.9, samples=20, seed=1)})
     scenario.__pydantic_private__ = harvest.scenario.__pydantic_private__
-    with pytest.raises(InputError, match="reliability basis"):
-        trainopt.sweep(replace(harvest, scenario=scenario), ["batch.time=6 h, 7 h"], changes=False)
+    case = replace(harvest, scenario=scenario)
+    found = trainopt.sweep(case, ["batch.time=4 h, 6 h, 7 h", "basis.reliability=0.6, 0.9"], changes=False)
+    assert len(found.cells) == 6
+    for cell in found.cells:
+        other = set_field(set_field(case, "batch.time", cell.at[0]), "basis.reliability", cell.at[1])
+        assert_is_design(cell, trainopt.design(other))
+    objectives = {cell.at: cell.objective for cell in found.cells}
+    assert objectives[6.0, 0.6] < objectives[6.0, 0.9]  # type: ignore[operator]
 
 
 def test_the_objective_can_be_another(harvest: trainopt.Case):

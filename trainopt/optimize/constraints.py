@@ -15,6 +15,7 @@ import numpy as np
 from pyomo.core.expr.numeric_expr import LinearExpression
 
 from trainopt.optimize.index import SINK, SOURCE, Index, Node
+from trainopt.train.problem import Block
 
 Row = tuple[float | None, LinearExpression, float | None]
 Variables = Sequence[Any]
@@ -70,7 +71,7 @@ def differential_rating(index: Index, x: Variables, t: Variables) -> Iterator[tu
     for place, (b, _) in enumerate(index.stages):
         block = index.problem.blocks[b]
         nodes = [node for node in index.nodes if node.place == place]
-        if block.operation != "constant-flow" or all(n.candidate.differential_pressure >= block.head for n in nodes):
+        if not rated(block, nodes):
             continue
         terms = [
             (float(need), x[k])
@@ -82,6 +83,11 @@ def differential_rating(index: Index, x: Variables, t: Variables) -> Iterator[tu
             )
         ]
         yield place, (None, linear([*terms, (-1.0, t[b])]), 0.0)
+
+
+def rated(block: Block, nodes: Sequence[Node]) -> bool:
+    """Whether some differential-pressure rating of a stage's nodes can bind where the budget does not."""
+    return block.operation == "constant-flow" and any(n.candidate.differential_pressure < block.head for n in nodes)
 
 
 def inlet_rating(index: Index, x: Variables, t: Variables) -> Iterator[tuple[tuple[int, int], Row]]:
@@ -142,6 +148,6 @@ def _spent_by_option(nodes: Sequence[Node], s: int, head: float) -> Iterator[tup
 
 
 __all__ = [
-    "SINK", "SOURCE", "batch_time", "differential_rating", "flux_limit", "inlet_rating", "linear", "one_option",
-    "pressure_budget", "route_in", "route_out", "route_start", "time_bounds",
+    "SINK", "SOURCE", "Row", "Variables", "batch_time", "differential_rating", "flux_limit", "inlet_rating", "linear",
+    "one_option", "pressure_budget", "rated", "route_in", "route_out", "route_start", "time_bounds",
 ]  # fmt: skip

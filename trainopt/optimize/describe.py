@@ -5,9 +5,11 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
+from trainopt.optimize.holding import held, held_route, shown_lots
 from trainopt.optimize.ideal_split import IdealStage, ideal_areas, loading_limit
 from trainopt.optimize.margins import limiting, stage_safety_factor
 from trainopt.optimize.recheck import flow_of, march_stages
@@ -25,6 +27,15 @@ class Picked:
     problem: DesignProblem
     route: Route
     times: tuple[float, ...]
+
+    @cached_property
+    def held(self) -> Picked:
+        """The same as the lots see it that it holds for: what its pressures are shown by."""
+        if not self.problem.may_fail:
+            return self
+        lots = shown_lots(self.problem, self.route, self.times)
+        problem = held(self.problem, lots)
+        return Picked(problem, problem, held_route(self.route, lots), self.times)
 
 
 def cost_parts(problem: DesignProblem, route: Route, times: Sequence[float]) -> CostParts:
@@ -60,7 +71,8 @@ def describe(picked: Picked) -> tuple[BlockDesign, ...]:
 
 
 def _block(picked: Picked, b: int) -> BlockDesign:
-    problem, block, choices, time = picked.problem, picked.problem.blocks[b], picked.route[b], picked.times[b]
+    shown = picked.held
+    problem, block, choices, time = shown.problem, shown.problem.blocks[b], shown.route[b], shown.times[b]
     demands = np.array([c.demand for c in choices]).reshape(len(choices), len(problem.lots))
     lot = int(np.argmax(demands.sum(axis=0)))
     pressures, line = _end_pressures(problem, block, choices, time, lot, demands)
@@ -116,7 +128,7 @@ def _stage(
         demand=demand,
         pressure=pressure,
         pressure_share=pressure / used if used > 0.0 else 0.0,
-        safety_factor=stage_safety_factor(problem, problem.blocks[b], picked.route[b], time, place),
+        safety_factor=stage_safety_factor(problem, picked.route, picked.times, b, place),
         limited_by=limiting(picked.full, problem, picked.route, b, place),
         modules_cost=float(options.modules_cost[c]),
         holders_cost=float(options.holders_cost[c]),

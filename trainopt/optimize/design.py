@@ -4,22 +4,26 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from importlib.metadata import version
 from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
 from trainopt.curves.medium import fit_curve
 from trainopt.errors import DefectError, InputError, Problem
+from trainopt.optimize.alternatives import near_designs, route_designs
 from trainopt.optimize.area_parts import area_parts
 from trainopt.optimize.describe import Picked, cost_parts, describe, total_area, total_time
-from trainopt.optimize.even_split import even_split
+from trainopt.optimize.even_split import EvenPick, even_split
 from trainopt.optimize.margins import common_safety_factor
 from trainopt.optimize.reasons import reasons
 from trainopt.optimize.recheck import recheck
+from trainopt.optimize.reliability import Bought, reliability
 from trainopt.optimize.search import Found, SolverOptions, best_route
+from trainopt.optimize.solve import FEASIBILITY, GAP, solver_version
 from trainopt.train.build import build_problem, prune, used_media
-from trainopt.train.notices import case_notices, design_notices, starting_flow_notices
+from trainopt.train.notices import case_notices, design_notices, reliability_notices, starting_flow_notices
 from trainopt.train.problem import DesignProblem
-from trainopt.train.results import Design, EvenSplit, Notice, Objective, Saving
+from trainopt.train.results import Design, EvenSplit, Notice, Objective, Proof, Saving
 
 if TYPE_CHECKING:
     from trainopt.files import Case
@@ -33,6 +37,8 @@ class Prepared:
     problem: DesignProblem
     notices: tuple[Notice, ...]
     inputs: Mapping[str, str]
+    usual: DesignProblem | None = None
+    """On a reliability basis: the same case on the worst-lot basis, for comparison."""
 
 
 def fit_curves(case: Case) -> dict[str, Curve]:
@@ -53,7 +59,11 @@ def prepare(case: Case, objective: str | None = None) -> Prepared:
     """Fit the curves of a case and build its problem."""
     curves = fit_curves(case)
     problem = build_problem(case, curves, objective)
-    return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs())
+    usual = None
+    if problem.reliability is not None:
+        worst = case.scenario.model_copy(update={"basis": "worst-lot"})
+        usual = build_problem(replace(case, scenario=worst), curves, objective)
+    return Prepared(curves, problem, tuple(case_notices(case, curves)), case.inputs(), usual)
 
 
 def design(
@@ -62,13 +72,21 @@ def design(
     time_limit: float | None = None,
     solver: SolverOptions | None = None,
     parts: bool = False,
+    routes: bool = False,
+    alternatives: int = 0,
+    gap: float = 0.05,
 ) -> Design:
     """The least area or cost that meets every limit, proven, marched through its batch, beside the even split.
 
-    `objective` ("area", "cost") overrides the scenario's, for a case; `time_limit` in s; `parts` asks for the
-    decomposition of the area too. Raises `InputError` for what is wrong in the files and `DefectError` where the
-    design fails its re-check.
+    `objective` ("area", "cost") overrides the scenario's, for a case only (`ValueError` else); `time_limit` in s.
+    Asked for besides: `parts`, where the area goes; `routes`, the best designs with other media; `alternatives`, so
+    many of the best picks within the relative `gap`, the design included. Raises `InputError` for what is wrong in the
+    files and `DefectError` where the design fails its re-check.
     """
+    if objective is not None and isinstance(what, DesignProblem | Prepared):
+        kind = what.objective if isinstance(what, DesignProblem) else what.problem.objective
+        if objective != kind:
+            raise ValueError(f"this problem was built for {kind}; build it anew for {objective}")
     if isinstance(what, DesignProblem):
         prepared = Prepared({}, what, (), {})
     elif isinstance(what, Prepared):
@@ -77,14 +95,15 @@ def design(
         prepared = prepare(what, objective)
     full = prepared.problem
     problem = prune(full)
-    found = best_route(problem, solver or SolverOptions(time_limit=time_limit))
+    options = solver or SolverOptions(time_limit=time_limit)
+    found = best_route(problem, options)
     if found.route is None or found.times is None:
         return _no_design(prepared, found)
-    recheck(problem, found.route, found.times)
     picked = Picked(full, problem, found.route, found.times)
+    recheck(picked.held.problem, picked.held.route, found.times)
     cost, area = cost_parts(problem, found.route, found.times), total_area(found.route)
     blocks = describe(picked)
-    even = even_design(full)
+    even, even_pick = _even(full)
     result = Design(
         scenario=full.title,
         status=found.status,
@@ -100,21 +119,65 @@ def design(
         saving=_saving(area, cost.total, even),
         warnings=(
             *prepared.notices,
-            *starting_flow_notices(full, blocks),
-            *(design_notices(full, prepared.curves, blocks) if prepared.curves else ()),
+            *starting_flow_notices(picked.held.full, blocks),
+            *(design_notices(picked.held.full, prepared.curves, blocks) if prepared.curves else ()),
         ),
         inputs=prepared.inputs,
+        proof=proof_of(found, options),
     )
-    return replace(result, area_parts=area_parts(full, result)) if parts else result
+    if full.reliability is not None:
+        result = _with_reliability(prepared, result, found, even_pick)
+    if parts:
+        result = replace(result, area_parts=area_parts(full, result))
+    if routes:
+        result = replace(result, routes=route_designs(problem, found, options))
+    if alternatives:
+        result = replace(result, alternatives=near_designs(full, found, alternatives, gap, options))
+    return result
+
+
+def _with_reliability(prepared: Prepared, result: Design, found: Found, even: EvenPick) -> Design:
+    """How sure the design is, and what to say where that falls short."""
+    full = prepared.problem
+    assert found.route is not None
+    assert found.times is not None
+    bought = Bought(found.route, found.times, full.safety_factor)
+    compared = None if even.route is None else Bought(even.route, even.times, full.safety_factor)
+    sure = reliability(full, bought, compared, prepared.usual)
+    if sure is None:
+        return result
+    return replace(result, reliability=sure, warnings=(*result.warnings, *reliability_notices(sure)))
+
+
+def proof_of(found: Found, options: SolverOptions) -> Proof:
+    """How the solver was run."""
+    return Proof(
+        solver="HiGHS",
+        solver_version=solver_version(),
+        modeler="Pyomo",
+        modeler_version=version("pyomo"),
+        seed=options.seed,
+        threads=options.threads,
+        time_limit=options.time_limit,
+        relative_gap=GAP,
+        feasibility_tolerance=FEASIBILITY,
+        solves=found.solves,
+        rows=found.rows,
+        columns=found.columns,
+    )
 
 
 def even_design(full: DesignProblem) -> EvenSplit:
     """The even split of a problem as a result."""
+    return _even(full)[0]
+
+
+def _even(full: DesignProblem) -> tuple[EvenSplit, EvenPick]:
     pick = even_split(full)
     if pick.route is None:
-        return EvenSplit("infeasible", None, None, None, None, (), pick.text)
+        return EvenSplit("infeasible", None, None, None, None, (), pick.text), pick
     parts = cost_parts(full, pick.route, pick.times)
-    return EvenSplit(
+    result = EvenSplit(
         status="optimal",
         area=total_area(pick.route),
         cost=parts.total,
@@ -122,6 +185,7 @@ def even_design(full: DesignProblem) -> EvenSplit:
         time=total_time(full, pick.times),
         blocks=describe(Picked(full, full, pick.route, pick.times)),
     )
+    return result, pick
 
 
 def _no_design(prepared: Prepared, found: Found) -> Design:

@@ -17,6 +17,8 @@ from trainopt.optimize.roots import largest_where
 from trainopt.train.options import demand
 from trainopt.train.problem import Floats
 
+_MANY = 24
+_CUTS = 100
 _POINTS = 100
 _LEVELS = 4
 
@@ -30,7 +32,7 @@ class IdealStage:
     (infinite: none).
     """
 
-    curves: tuple[LotCurve, ...]
+    curves: Sequence[LotCurve]
     operation: str
     loading_area: float
     most: float
@@ -44,7 +46,7 @@ class IdealStage:
         return np.asarray(lots[counted] @ demand(curves, self.operation, loading))
 
 
-def loading_limit(curves: tuple[LotCurve, ...], operation: str, cap: float, rating_budget: float) -> float:
+def loading_limit(curves: Sequence[LotCurve], operation: str, cap: float, rating_budget: float) -> float:
     """Highest design loading in L/m² inside `cap` at which every lot's D stays within the stage's own rating, bar·h."""
     finite = min(cap, *(curve.pole * (1.0 - 1e-9) for curve in curves))
     if math.isinf(rating_budget):
@@ -91,6 +93,8 @@ def _worst(stages: Sequence[IdealStage], areas: Sequence[float]) -> float:
 def _within(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...] | None:
     """The split for the worst lot: one lot if its split holds for all, else the mixture of lots that binds."""
     count = len(stages[0].curves)
+    if count > _MANY:
+        return _by_cuts(stages, budget)
     best: tuple[float, ...] | None = None
     # The lot that asks most of the stages at their highest loadings is most likely the one that binds.
     asked = sum(demand(s.curves, s.operation, np.array([s.most]))[:, 0] for s in stages)
@@ -104,6 +108,28 @@ def _within(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...] | 
             best = areas
     assert best is not None
     return _mixed(stages, budget, best)
+
+
+def _by_cuts(stages: Sequence[IdealStage], budget: float) -> tuple[float, ...] | None:
+    """The split for very many lots: for a few of them, and the worst of the others added until it holds for all."""
+    asked = sum(demand(s.curves, s.operation, np.array([s.most]))[:, 0] for s in stages)
+    active, areas = [int(np.argmax(asked))], None
+    for _ in range(_CUTS):
+        few = [replace(s, curves=tuple(s.curves[lot] for lot in active)) for s in stages]
+        areas = _within(few, budget)
+        if areas is None:
+            return None
+        total = sum(
+            demand(s.curves, s.operation, np.array([s.loading_area / a]))[:, 0]
+            for s, a in zip(stages, areas, strict=True)
+        )
+        worst = int(np.argmax(total))
+        if float(np.max(total)) <= budget * (1.0 + 1e-6) or worst in active:
+            return areas
+        if len(active) == _MANY:
+            active.pop(1)
+        active.append(worst)
+    return areas
 
 
 def _weighed(stages: Sequence[IdealStage], areas: Sequence[float]) -> float:

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from trainopt.optimize.roots import largest_where
-from trainopt.optimize.times import BlockChoice, Choice, Route, block_bounds, share_time
+from trainopt.optimize.times import BlockChoice, Choice, Route, block_bounds, block_times, kept_lots
 from trainopt.train.options import CAP_SLACK, demand
 from trainopt.train.problem import Block, Candidate, DesignProblem, Floats
 
@@ -24,21 +24,21 @@ def _loading_at_one(problem: DesignProblem, choice: Choice) -> float:
 def _holds(
     problem: DesignProblem, block: Block, choices: BlockChoice, time: float, factors: Sequence[Floats]
 ) -> NDArray[np.bool_]:
-    """Whether the block meets every limit at derating `factors[k]` of each of its stages, elementwise."""
+    """Whether the block meets every limit at derating `factors[k]` (n,) of each of its stages, shape (lots, n)."""
     demands = [
         demand(c.candidate.curves, block.operation, f * _loading_at_one(problem, c))
         for c, f in zip(choices, factors, strict=True)
     ]
     line = block.line * problem.volume
     room = 1.0 + ROOM
-    total = np.sum(demands, axis=0).max(axis=0)
+    total = np.sum(demands, axis=0)
     good = total + line <= block.head * time * room
     if block.operation == "constant-flow":
         for k, choice in enumerate(choices):
             one = choice.candidate
-            good &= demands[k].max(axis=0) <= one.differential_pressure * time * room
+            good &= demands[k] <= one.differential_pressure * time * room
             if one.inlet_pressure < block.pressure:
-                downstream = np.sum(demands[k:], axis=0).max(axis=0)
+                downstream = np.sum(demands[k:], axis=0)
                 good &= downstream + line <= (one.inlet_pressure - block.static) * time * room
     return np.asarray(good)
 
@@ -48,12 +48,19 @@ def _most(problem: DesignProblem, choice: Choice) -> float:
     return choice.candidate.loading_cap * (1.0 + CAP_SLACK) / _loading_at_one(problem, choice)
 
 
-def stage_safety_factor(problem: DesignProblem, block: Block, choices: BlockChoice, time: float, place: int) -> float:
+def stage_safety_factor(problem: DesignProblem, route: Route, times: Sequence[float], block: int, place: int) -> float:
     """The largest derating of one stage alone, the others at F, that still meets every limit."""
+    choices, others = route[block], [b for b in range(len(route)) if b != block and route[b]]
+    base = np.full((len(problem.lots), 1), True)
+    # Which lots the other blocks hold matters only where some may fail.
+    for b in others if problem.may_fail else ():
+        plain = [np.array([problem.safety_factor])] * len(route[b])
+        base &= _holds(problem, problem.blocks[b], route[b], times[b], plain)
 
     def holds(factor: Floats) -> NDArray[np.bool_]:
         rest = np.full_like(factor, problem.safety_factor)
-        return _holds(problem, block, choices, time, [factor if k == place else rest for k in range(len(choices))])
+        factors = [factor if k == place else rest for k in range(len(choices))]
+        return problem.enough(base & _holds(problem, problem.blocks[block], choices, times[block], factors))
 
     return largest_where(holds, _most(problem, choices[place]), 1e-12)
 
@@ -65,11 +72,11 @@ def common_safety_factor(problem: DesignProblem, route: Route, times: Sequence[f
         return None
 
     def holds(factor: Floats) -> NDArray[np.bool_]:
-        good = np.full(factor.shape, True)
+        good = np.full((len(problem.lots), len(factor)), True)
         for block, picked, time in zip(problem.blocks, route, times, strict=True):
             if picked:
                 good &= _holds(problem, block, picked, time, [factor] * len(picked))
-        return good
+        return problem.enough(good)
 
     return largest_where(holds, min(_most(problem, choice) for choice in choices), 1e-12)
 
@@ -89,11 +96,14 @@ def limiting(full: DesignProblem, problem: DesignProblem, route: Route, block: i
     places = smaller[everything.options.area[smaller] == everything.options.area[smaller].max()]
     trial = Choice(choice.stage, everything, int(places[0]))
     choices = tuple(trial if k == place else c for k, c in enumerate(route[block]))
-    bounds = [block_bounds(b, c, problem.volume) for b, c in zip(problem.blocks, route, strict=True)]
-    bounds[block] = block_bounds(problem.blocks[block], choices, problem.volume)
-    if share_time(problem, bounds) is not None:
+    if block_times(problem, (*route[:block], choices, *route[block + 1 :])) is not None:
         return "module-size"
-    limits = {key: value for key, value in bounds[block].limits.items() if key[0] in ("", choice.stage.name)}
+    # Held against the lots that the pick itself holds for.
+    lots = kept_lots(problem, route) if problem.may_fail else None
+    if lots is not None and not np.isfinite(trial.demand[lots]).all():
+        return everything.cap_reason
+    bounds = block_bounds(problem.blocks[block], choices, problem.volume, lots)
+    limits = {key: value for key, value in bounds.limits.items() if key[0] in ("", choice.stage.name)}
     return max(limits.items(), key=lambda item: (item[1], item[0]))[0][1]
 
 

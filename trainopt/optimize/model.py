@@ -6,6 +6,7 @@ from typing import Any
 
 import pyomo.core as pyo
 
+from trainopt.optimize import chance
 from trainopt.optimize import constraints as rows
 from trainopt.optimize.index import Index
 
@@ -13,7 +14,8 @@ from trainopt.optimize.index import Index
 def build_model(index: Index) -> Any:
     """The mixed-integer model of an indexed (and usually pruned) problem, as a Pyomo `ConcreteModel`.
 
-    Variables: `x[stage, medium, module, count]` binary, `t[block]` in h, `f[from, to]` where routes branch.
+    Variables: `x[stage, medium, module, count]` binary, `t[block]` in h, `f[from, to]` where routes branch, and on a
+    reliability basis `y[lot]` binary, by the places of the lots that may be spared.
     """
     problem = index.problem
     model = pyo.ConcreteModel(name="pressure_budget")
@@ -30,9 +32,12 @@ def build_model(index: Index) -> Any:
         model.route_start = pyo.Constraint(expr=rows.route_start(arcs))
         _add(model, "route_in", dict(rows.route_in(index, x, arcs)))
         _add(model, "route_out", dict(rows.route_out(index, x, arcs)))
-    _add(model, "pressure_budget", dict(rows.pressure_budget(index, x, t)))
-    _add(model, "differential_rating", dict(rows.differential_rating(index, x, t)))
-    _add(model, "inlet_rating", dict(rows.inlet_rating(index, x, t)))
+    if problem.may_fail:
+        _add_sampled(model, index, x, t)
+    else:
+        _add(model, "pressure_budget", dict(rows.pressure_budget(index, x, t)))
+        _add(model, "differential_rating", dict(rows.differential_rating(index, x, t)))
+        _add(model, "inlet_rating", dict(rows.inlet_rating(index, x, t)))
     _add(model, "flux_limit", dict(rows.flux_limit(index, x, t)))
     if problem.schedule == "sequential":
         model.batch_time = pyo.Constraint(expr=rows.batch_time(index, t))
@@ -42,6 +47,19 @@ def build_model(index: Index) -> Any:
         cost += [(problem.hour_rate, v) for v in t]
     model.objective = pyo.Objective(expr=rows.linear(cost))
     return model
+
+
+def _add_sampled(model: Any, index: Index, x: list[Any], t: list[Any]) -> None:
+    """The pressure rows of sampled lots, some of which may fail."""
+    relief = chance.Relief(index)
+    model.y = pyo.Var(relief.lots, within=pyo.Binary)
+    y = dict(model.y.items())
+    if len(y) > index.problem.may_fail:
+        model.spared_lots = pyo.Constraint(expr=chance.spared_lots(index, y))
+    _add(model, "untested", dict(chance.untested(index, x, y)))
+    _add(model, "sampled_budget", dict(chance.sampled_budget(index, x, t, y, relief)))
+    _add(model, "sampled_rating", dict(chance.sampled_rating(index, x, t, y)))
+    _add(model, "sampled_inlet", dict(chance.sampled_inlet(index, x, t, y, relief)))
 
 
 def _add(model: Any, name: str, table: dict[Any, rows.Row]) -> None:

@@ -4,36 +4,25 @@ from __future__ import annotations
 
 import math
 import time
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
+from trainopt.optimize.bounds import bounds, first_design, within
 from trainopt.optimize.index import SINK, SOURCE, Index, index_problem
-from trainopt.optimize.model import build_model
-from trainopt.optimize.solve import INFINITE, Answer, Matrix, Solver, compile_model
-from trainopt.optimize.times import Choice, Route, block_times, objective_of
+from trainopt.optimize.run import TIE, Cut, Name, Pick, Run, SolverOptions, route_of
+from trainopt.optimize.times import Route, block_times, objective_of
 from trainopt.train.problem import DesignProblem, Floats
 
-TIE = 1e-9
-"""Objectives closer than this, relative to their size, count as equal."""
-
-
-@dataclass(frozen=True)
-class SolverOptions:
-    """How HiGHS is run: `time_limit` in s over all solves (None: none); `ties` whether equal designs are told apart."""
-
-    time_limit: float | None = None
-    seed: int = 0
-    threads: int = 1
-    ties: bool = True
+__all__ = ["TIE", "Cut", "Found", "SolverOptions", "best_route", "fixed_order", "hopeless", "route_of", "searched"]
 
 
 @dataclass(frozen=True)
 class Found:
     """The best pick with its block times in h and the proof; `status` "optimal", "limit" or "infeasible".
 
-    `solves` counts HiGHS runs; `rows` and `columns` are the model's size.
+    `solves` counts HiGHS runs; `rows` and `columns` are the size of the model that proved the optimum.
     """
 
     status: str
@@ -46,15 +35,79 @@ class Found:
     columns: int
 
 
+NOTHING = Found("infeasible", None, None, math.inf, math.inf, 0, 0, 0)
+
+
 def best_route(problem: DesignProblem, options: SolverOptions | None = None) -> Found:
     """Solve a problem (pruned or not; the answer is the same) to proven optimality."""
     index = index_problem(problem)
-    if _hopeless(index):
-        return Found("infeasible", None, None, math.inf, math.inf, 0, 0, 0)
-    return _Search(index, options or SolverOptions()).run()
+    if hopeless(index):
+        return NOTHING
+    found = bounds(index)
+    ceiling, first = first_design(index, found)
+    few = index_problem(within(index, found.option, ceiling))
+    options = options or SolverOptions()
+    result = searched(few, options, dict(zip(index.names, fixed_order(index).tolist(), strict=True)))
+    if result.route is None and result.status == "limit" and first is not None:
+        # Stopped before the solver had any design: the one that set the ceiling is there.
+        return _found(few, "limit", first, block_times(few.problem, first), result.bound, result)
+    return result
 
 
-def _hopeless(index: Index) -> bool:
+def searched(index: Index, options: SolverOptions, order: Mapping[Name, float], cuts: Sequence[Cut] = ()) -> Found:
+    """The best pick of an index that `cuts` do not forbid; equal ones are told apart by spare, then by `order`."""
+    deadline = None if options.time_limit is None else time.monotonic() + options.time_limit
+    run = Run(index, options, deadline, cuts)
+    pick = run.solve()
+    size = run.size
+    found = Found(pick.answer.status, None, None, math.inf, pick.answer.bound, run.solves, *size)
+    if pick.route is None or pick.times is None:
+        return found
+    if pick.proven and options.ties:
+        best = objective_of(index.problem, pick.route, pick.times)
+        pick, solves = _told_apart(index, options, order, cuts, pick, best, deadline)
+        found = Found(*(found.status, None, None, math.inf, found.bound), found.solves + solves, *size)
+    return _found(index, found.status, pick.route, pick.times, found.bound, found)
+
+
+def _found(
+    index: Index, status: str, route: Route | None, times: tuple[float, ...] | None, bound: float, proof: Found
+) -> Found:
+    assert route is not None
+    assert times is not None
+    value = objective_of(index.problem, route, times)
+    # The bound is HiGHS's, in its tolerance; a proven optimum's bound is the optimum.
+    bound = value if status == "optimal" else bound
+    return Found(status, route, times, value, bound, proof.solves, proof.rows, proof.columns)
+
+
+def _told_apart(
+    index: Index,
+    options: SolverOptions,
+    order: Mapping[Name, float],
+    cuts: Sequence[Cut],
+    pick: Pick,
+    best: float,
+    deadline: float | None,
+) -> tuple[Pick, int]:
+    """Among designs as good as `best` the one with most spare, then the first in a fixed order; and the solves it took.
+
+    Few options can be part of such a design: a model of those alone is asked.
+    """
+    few = index_problem(within(index, bounds(index).option, best * (1.0 + math.copysign(2.0 * TIE, best))))
+    if few.plain and len(few.names) == len(few.stages):
+        return pick, 0
+    run = Run(few, options, deadline, cuts)
+    run.keep_objective(best)
+    places = run.ask_for_spare()
+    better = run.improve(pick, best)
+    if better is not pick:
+        run.keep_spare(better, places, order)
+        better = run.improve(better, best)
+    return better, run.solves
+
+
+def hopeless(index: Index) -> bool:
     """Whether some block has no time, a stage that must be used no option, or no route is allowed."""
     problem = index.problem
     for block in problem.blocks:
@@ -76,132 +129,6 @@ def _passable(index: Index) -> bool:
         reached |= heads
         onward.extend(heads)
     return SINK in reached
-
-
-class _Search:
-    """One run of the lexicographic search: its state is the solver and what it has counted."""
-
-    def __init__(self, index: Index, options: SolverOptions) -> None:
-        self.index = index
-        self.problem = index.problem
-        self.options = options
-        self.model = build_model(index)
-        self.matrix: Matrix = compile_model(self.model)
-        self.x = [self.matrix.column[id(v)] for v in self.model.x.values()]
-        self.t = {b: self.matrix.column.get(id(v)) for b, v in enumerate(self.model.t.values())}
-        self.deadline = None if options.time_limit is None else time.monotonic() + options.time_limit
-        self.solver = Solver(self.matrix, options.time_limit, options.seed, options.threads)
-        self.solves = 0
-
-    def run(self) -> Found:
-        answer, route, times = self._solve()
-        if route is None or times is None:
-            return self._found(answer.status, None, None, answer.bound)
-        bound = answer.bound
-        if answer.status == "optimal" and self.options.ties:
-            best = objective_of(self.problem, route, times)
-            self._keep_objective(best)
-            spare_rows = self._ask_for_spare()
-            route, times, proven = self._improve(route, times, best)
-            if proven and _may_tie(self.index):
-                self._keep_spare(route, spare_rows)
-                route, times, _ = self._improve(route, times, best)
-        return self._found(answer.status, route, times, bound)
-
-    def _found(self, status: str, route: Route | None, times: tuple[float, ...] | None, bound: float) -> Found:
-        value = math.inf if route is None or times is None else objective_of(self.problem, route, times)
-        rows, columns = self.matrix.A.shape
-        # The bound is HiGHS's, in its tolerance; a proven optimum's bound is the optimum.
-        return Found(status, route, times, value, value if status == "optimal" else bound, self.solves, rows, columns)
-
-    def _solve(self) -> tuple[Answer, Route | None, tuple[float, ...] | None]:
-        """Solve until HiGHS's pick also holds in closed form; a pick its tolerance let through is cut off."""
-        while True:
-            if self.deadline is not None:
-                self.solver.limit_time(max(self.deadline - time.monotonic(), 0.0))
-            answer = self.solver.run()
-            self.solves += 1
-            if answer.values is None:
-                return answer, None, None
-            places = [k for k, column in enumerate(self.x) if answer.values[column] > 0.5]
-            route = route_of(self.index, places)
-            times = block_times(self.problem, route)
-            if times is not None:
-                self.solver.start_from(answer.values)
-                return answer, route, times
-            self.solver.add_row(-INFINITE, len(places) - 1.0, [self.x[k] for k in places], [1.0] * len(places))
-
-    def _improve(self, route: Route, times: tuple[float, ...], best: float) -> tuple[Route, tuple[float, ...], bool]:
-        """The tie-break's pick if it is proven and no worse, else the one at hand."""
-        answer, other, other_times = self._solve()
-        if answer.status != "optimal" or other is None or other_times is None:
-            return route, times, False
-        if objective_of(self.problem, other, other_times) > best + 2.0 * TIE * max(1.0, abs(best)):
-            return route, times, False
-        return other, other_times, True
-
-    def _keep_objective(self, best: float) -> None:
-        """From now on no worse than the optimum."""
-        places = np.flatnonzero(self.matrix.cost)
-        scale = max(1.0, abs(best))
-        constant = 0.0
-        if self.problem.objective == "cost":
-            constant = self.problem.hour_rate * sum(block.setup for block in self.problem.blocks)
-        upper = (best - constant) / scale + TIE
-        self.solver.add_row(-INFINITE, upper, places.tolist(), (self.matrix.cost[places] / scale).tolist())
-
-    def _ask_for_spare(self) -> list[int]:
-        """min Σ_b d_b, d_b ≥ Σ D_s·x/(P_b − Pstatic_b) for every lot s: most spare pressure–time first."""
-        self.solver.set_costs(np.zeros(len(self.matrix.cost)))
-        places = []
-        for b, block in enumerate(self.problem.blocks):
-            place = self.solver.add_variable(0.0, INFINITE, cost=1.0)
-            places.append(place)
-            for s in self.index.lots(b):
-                columns = [place, *(self.x[k] for node in self.index.nodes_of(b) for k in node.options)]
-                spent = [d for node in self.index.nodes_of(b) for d in node.candidate.options.demand[s].tolist()]
-                self.solver.add_row(0.0, INFINITE, columns, [1.0, *(-d / block.head for d in spent)])
-        return places
-
-    def _keep_spare(self, route: Route, places: list[int]) -> None:
-        """From now on no less spare; then a fixed order of options, so that no equal design depends on the solver."""
-        spent = sum(
-            float(np.sum([c.demand for c in choices], axis=0).max()) / block.head
-            for block, choices in zip(self.problem.blocks, route, strict=True)
-            if choices
-        )
-        self.solver.add_row(-INFINITE, spent * (1.0 + TIE), places, [1.0] * len(places))
-        costs = np.zeros(len(self.matrix.cost))
-        costs[self.x] = fixed_order(self.index)
-        self.solver.set_costs(costs)
-        for place in places:
-            self.solver.set_cost(place, 0.0)
-
-
-def route_of(index: Index, places: Sequence[int]) -> Route:
-    """The pick that the options at `places` (of the flat list) make."""
-    blocks: list[list[Choice]] = [[] for _ in index.problem.blocks]
-    chosen = sorted(places)
-    for node in index.nodes:
-        for k in chosen:
-            if k in node.options:
-                blocks[node.block].append(Choice(node.spec, node.candidate, k - node.options.start))
-    return tuple(tuple(block) for block in blocks)
-
-
-def _may_tie(index: Index) -> bool:
-    """Whether two nodes hold options alike in weight and pressure–time, so that designs can tie in both."""
-    seen: set[tuple[float, ...]] = set()
-    for node in index.nodes:
-        options, head = node.candidate.options, index.problem.blocks[node.block].head
-        own = {
-            (round(w, 9), *(float(f"{d:.9e}") for d in column))
-            for w, column in zip(options.weight.tolist(), (options.demand / head).T.tolist(), strict=True)
-        }
-        if own & seen:
-            return True
-        seen |= own
-    return False
 
 
 def fixed_order(index: Index) -> Floats:

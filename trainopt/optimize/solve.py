@@ -21,6 +21,10 @@ from trainopt.errors import DefectError
 from trainopt.train.problem import Floats
 
 INFINITE = highspy.kHighsInf
+GAP = 0.0
+"""Relative and absolute gap at which a solve may end: none."""
+FEASIBILITY = 1e-9
+"""Tolerance on every row, in h."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -92,8 +96,8 @@ class Solver:
         with _quiet():
             self._highs: Any = highspy.Highs()  # type: ignore[no-untyped-call]
         options = {
-            "output_flag": False, "mip_rel_gap": 0.0, "mip_abs_gap": 0.0, "threads": threads, "random_seed": seed,
-            "mip_feasibility_tolerance": 1e-9, "primal_feasibility_tolerance": 1e-9,
+            "output_flag": False, "mip_rel_gap": GAP, "mip_abs_gap": GAP, "threads": threads, "random_seed": seed,
+            "mip_feasibility_tolerance": FEASIBILITY, "primal_feasibility_tolerance": FEASIBILITY,
         }  # fmt: skip
         if time_limit is not None:
             options["time_limit"] = time_limit
@@ -146,6 +150,12 @@ class Solver:
         if status in (codes.kTimeLimit, codes.kIterationLimit, codes.kSolutionLimit, codes.kInterrupt):
             return Answer("limit", values, info.objective_function_value if found else math.inf, _bound(info))
         raise DefectError(f"HiGHS ended with status {self._highs.modelStatusToString(status)}")
+
+
+def solver_version() -> str:
+    """Version of HiGHS."""
+    parts = (highspy.HIGHS_VERSION_MAJOR, highspy.HIGHS_VERSION_MINOR, highspy.HIGHS_VERSION_PATCH)
+    return ".".join(map(str, parts))
 
 
 def _bound(info: Any) -> float:

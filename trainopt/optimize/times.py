@@ -12,7 +12,9 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
+from trainopt.optimize.sparing import spare_lots
 from trainopt.train.problem import Block, Candidate, DesignProblem, Floats, Stage
 
 TIME_SLACK = 1e-9
@@ -57,10 +59,15 @@ class TimeBounds:
     limits: dict[tuple[str, str], float]
 
 
-def block_bounds(block: Block, choices: BlockChoice, volume: float) -> TimeBounds:
-    """Shortest and longest time of one block with its pick (model.md, section 4)."""
+Lots = NDArray[np.intp]
+
+
+def block_bounds(block: Block, choices: BlockChoice, volume: float, lots: Lots | None = None) -> TimeBounds:
+    """Shortest and longest time of one block with its pick (model.md, section 4), for these lots (None: all)."""
     line = block.line * volume
     demands = np.array([choice.demand for choice in choices])
+    if lots is not None and choices:
+        demands = demands[:, lots]
     limits = {("", "pump"): volume / block.max_flow}
     if choices:
         total = float(demands.sum(axis=0).max())
@@ -84,9 +91,66 @@ def _ratio(need: float, have: float) -> float:
     return need / have if have > 0.0 else math.inf
 
 
+def lot_times(block: Block, choices: BlockChoice, volume: float) -> Floats:
+    """The shortest time in h that each lot allows one block with its pick, shape (lots,); no pick: shape (1,)."""
+    line, least = block.line * volume, volume / block.max_flow
+    if not choices:
+        return np.array([max(least, _ratio(line, block.head) if line > 0.0 else 0.0)])
+    demands = np.array([choice.demand for choice in choices])
+    least = max(least, *(float(c.candidate.options.shortest_time[c.option]) for c in choices))
+    needed = np.maximum(_ratios(demands.sum(axis=0) + line, block.head), least)
+    for place, choice in enumerate(choices if block.operation == "constant-flow" else ()):
+        one = choice.candidate
+        if math.isfinite(one.differential_pressure):
+            needed = np.maximum(needed, demands[place] / one.differential_pressure)
+        if one.inlet_pressure < block.pressure:
+            downstream = demands[place:].sum(axis=0) + line
+            needed = np.maximum(needed, _ratios(downstream, one.inlet_pressure - block.static))
+    return np.asarray(needed)
+
+
+def _ratios(need: Floats, have: float) -> Floats:
+    return np.asarray(need / have) if have > 0.0 else np.full_like(need, math.inf)
+
+
+def holding_lots(problem: DesignProblem, route: Route, times: Sequence[float]) -> Lots:
+    """Places of the lots that hold every limit of a pick at these block times."""
+    holds = np.full(len(problem.lots), True)
+    for block, choices, time in zip(problem.blocks, route, times, strict=True):
+        holds &= lot_times(block, choices, problem.volume) <= time + TIME_SLACK * problem.time
+    return np.flatnonzero(holds)
+
+
+def kept_lots(problem: DesignProblem, route: Route) -> Lots | None:
+    """Places of the lots that a pick holds for, those spared that slow it most; None where too many must fail.
+
+    Spared are, of the lots that may fail, those without which the blocks' shortest times add up to least.
+    """
+    needed = np.array([
+        np.broadcast_to(lot_times(b, c, problem.volume), len(problem.lots))
+        for b, c in zip(problem.blocks, route, strict=True)
+    ])  # fmt: skip
+    slack = TIME_SLACK * problem.time
+    longest = [min(problem.longest_time(b), most) for b, most in zip(problem.blocks, _allowed(problem), strict=True)]
+    able = (needed <= np.array(longest)[:, None] + slack).all(axis=0)
+    left = problem.may_fail - int((~able).sum())
+    if left < 0:
+        return None
+    places = np.flatnonzero(able)
+    paid = problem.objective == "cost" and problem.hour_rate > 0.0
+    if paid or (problem.schedule == "sequential" and len(problem.blocks) > 1):
+        places = places[spare_lots(needed[:, places], left)]
+    return places
+
+
 def block_times(problem: DesignProblem, route: Route) -> tuple[float, ...] | None:
     """Block times in h of a pick, spare time shared out, or None where the pick meets not every limit."""
-    bounds = [block_bounds(b, c, problem.volume) for b, c in zip(problem.blocks, route, strict=True)]
+    lots = None
+    if problem.may_fail:
+        lots = kept_lots(problem, route)
+        if lots is None:
+            return None
+    bounds = [block_bounds(b, c, problem.volume, lots) for b, c in zip(problem.blocks, route, strict=True)]
     return share_time(problem, bounds)
 
 

@@ -11,7 +11,7 @@ from trainopt.curves.curve import Curve
 from trainopt.curves.medium import fit_curve
 from trainopt.errors import InputError
 from trainopt.files import Case, set_field
-from trainopt.optimize.design import design
+from trainopt.optimize.design import Prepared, design
 from trainopt.study.axis import Axis
 from trainopt.study.cells import Cells
 from trainopt.study.results import Change, EvenCell, SweepCell
@@ -140,7 +140,8 @@ class Plan:
         k = self.time_axis
         if k is not None:
             case = set_field(case, TIME, at[k])
-        return cell_of(design(case, self.objective), at)
+        curves = self._curves(case)
+        return cell_of(design(Prepared(curves, build_problem(case, curves, self.objective), (), {})), at)
 
     def picks_at(self, at: tuple[float, ...]) -> Picks:
         """What is bought at one point; empty where there is no design or the files do not allow the value."""
