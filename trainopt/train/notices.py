@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
 from trainopt.train.build import POOLED, lots_of, used_media
+from trainopt.train.flag_notices import flag_notices
 from trainopt.train.problem import Candidate, DesignProblem
 from trainopt.train.results import BlockDesign, Notice, ReliabilityResult
 from trainopt.train.sampling import root_covariance, sampler
@@ -89,9 +90,7 @@ def _medium_notices(
 ) -> Iterator[Notice]:
     """`fixed`: the lots are those that were run, not samples."""
     name = medium.medium
-    for flag in curve.flags:
-        rows = f" rows {flag.rows[0]} to {flag.rows[1]}:" if flag.rows else ""
-        yield Notice(flag.code, f"{name}, {flag.run}:{rows} {flag.text}" if flag.run else f"{name}: {flag.text}")
+    yield from flag_notices(name, curve.flags)
     if temperature is not None and curve.tested_temperature is not None:
         if abs(temperature - curve.tested_temperature) > 1e-9:
             yield Notice(
