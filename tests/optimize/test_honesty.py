@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from pathlib import Path
 
+import pytest
 from factory import block, flat, problem, stage
 
 import trainopt
@@ -46,3 +47,32 @@ def test_a_clean_train_at_constant_pressure_that_starts_too_fast_is_said() -> No
         one = block("b", stage("s", guard), pressure=2.0, operation="constant-pressure", max_flow=most)
         codes = [notice.code for notice in design(problem(one, volume=1000.0, time=5.0)).warnings]
         assert codes == ["starting-flow"] * said
+
+
+def test_a_block_that_is_not_used_is_said_with_the_time_that_it_takes() -> None:
+    needed = block("first", stage("s", flat("m", 0.01)), setup=0.25)
+    skipped = block("guard", stage("g", flat("n", 0.01), optional=True), setup=0.5, max_flow=1000.0)
+    found = design(problem(needed, skipped, volume=1000.0, time=5.0))
+    assert [b.block for b in found.blocks if not b.stages] == ["guard"]
+    (optimum, even) = [notice.text for notice in found.warnings if notice.code == "block-not-used"]
+    said = "no stage of this block is used, since all are optional; its setup of 0.5 h and"
+    # 1000 L pass at 1000 L/h at most; the even split halves what setups leave of 5 h.
+    assert found.blocks[1].time == pytest.approx(1.0)
+    assert optimum == f"guard: {said} its time of 1 h still count, which leaving the block out would save"
+    assert even == (
+        f"guard, even split: {said} its even share of the time of 2.125 h still count, "
+        "which leaving the block out would save"
+    )
+    assert found.even_split is not None
+    assert found.even_split.blocks[1].time == pytest.approx((5.0 - 0.75) / 2.0)
+
+
+def test_a_block_that_is_not_used_and_takes_nothing_is_said_too_and_one_that_is_used_is_not() -> None:
+    needed = block("first", stage("s", flat("m", 0.01)))
+    skipped = block("guard", stage("g", flat("n", 0.01), optional=True))
+    found = design(problem(needed, skipped, volume=1000.0, time=5.0))
+    texts = [notice.text for notice in found.warnings if notice.code == "block-not-used"]
+    assert texts[0] == "guard: no stage of this block is used, since all are optional; it takes no time"
+    assert len(texts) == 2
+    used = design(problem(needed, block("guard", stage("g", flat("n", 0.01))), volume=1000.0, time=5.0))
+    assert "block-not-used" not in [notice.code for notice in used.warnings]

@@ -21,7 +21,13 @@ from trainopt.optimize.reliability import Bought, reliability
 from trainopt.optimize.search import Found, SolverOptions, best_route
 from trainopt.optimize.solve import FEASIBILITY, GAP, solver_version
 from trainopt.train.build import build_problem, prune, used_media
-from trainopt.train.notices import case_notices, design_notices, reliability_notices, starting_flow_notices
+from trainopt.train.notices import (
+    case_notices,
+    design_notices,
+    reliability_notices,
+    starting_flow_notices,
+    unused_block_notices,
+)
 from trainopt.train.problem import DesignProblem
 from trainopt.train.results import Design, EvenSplit, Notice, Objective, Proof, Saving
 
@@ -119,6 +125,7 @@ def design(
         saving=_saving(area, cost.total, even),
         warnings=(
             *prepared.notices,
+            *unused_block_notices(blocks, even.blocks),
             *starting_flow_notices(picked.held.full, blocks),
             *(design_notices(picked.held.full, prepared.curves, blocks) if prepared.curves else ()),
         ),

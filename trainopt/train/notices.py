@@ -191,3 +191,21 @@ def starting_flow_notices(problem: DesignProblem, blocks: tuple[BlockDesign, ...
                     f"{s.stage}: the clean train starts at {flow / s.area:.4g} LMH, beyond its flux limit of "
                     f"{c.flux_limit:.4g} LMH: throttle the start",
                 )
+
+
+def unused_block_notices(blocks: tuple[BlockDesign, ...], even: tuple[BlockDesign, ...]) -> Iterator[Notice]:
+    """Blocks of the design and of the even split that do nothing and yet take their time."""
+    for rule, share, found in (("", "its time", blocks), (", even split", "its even share of the time", even)):
+        for block in found:
+            if block.stages:
+                continue
+            parts = [f"its setup of {block.setup:.4g} h"] if block.setup > 0.0 else []
+            parts += [f"{share} of {block.time:.4g} h"] if block.time > 0.0 else []
+            counted = (
+                f"{' and '.join(parts)} still count{'s' * (len(parts) == 1)}, which leaving the block out would save"
+            )
+            yield Notice(
+                "block-not-used",
+                f"{block.block}{rule}: no stage of this block is used, since all are optional; "
+                f"{counted if parts else 'it takes no time'}",
+            )
