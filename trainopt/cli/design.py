@@ -29,6 +29,12 @@ def design(
         float | None,
         typer.Option(min=0.0, metavar="S", help="Stop the search after so many seconds, with the best found."),
     ] = None,
+    alternatives: Annotated[
+        int, typer.Option(min=0, metavar="K", help="List the K best picks too, the design among them.")
+    ] = 0,
+    gap: Annotated[
+        float, typer.Option(min=0.0, metavar="PERCENT", help="How much worse than the design these may be.")
+    ] = 5.0,
     report: Annotated[
         Path | None,
         typer.Option(metavar="FILE", help="Write the design report too, as .html, .xlsx or .json."),
@@ -49,7 +55,12 @@ def design(
         if target is None:
             from trainopt.optimize import design as find_design
 
-            result, dossier = find_design(case, objective=kind, time_limit=time_limit, parts=json), None
+            result, dossier = (
+                find_design(
+                    case, kind, time_limit, parts=json, routes=True, alternatives=alternatives, gap=gap / 100.0
+                ),
+                None,
+            )
         else:
             from trainopt.report.gather import gather
 

@@ -33,13 +33,14 @@ def near_designs(problem: DesignProblem, best: Found, count: int, gap: float, op
     assert best.times is not None
     ceiling = best.objective + gap * abs(best.objective)
     index = index_problem(problem)
-    few = index_problem(within(index, bounds(index).option, ceiling))
+    known = bounds(index)
+    few = index_problem(within(index, known.option, ceiling))
     order = dict(zip(index.names, fixed_order(index).tolist(), strict=True))
     designs = [_near(problem, best.route, best.times, best.objective)]
     cuts = [_cut(best.route)]
     status = "optimal"
     while len(designs) < count:
-        found = searched(few, options, order, cuts)
+        found = searched(few, options, order, cuts, known)
         status = found.status
         if found.route is None or found.times is None or found.objective > ceiling + TIE * max(1.0, abs(ceiling)):
             break

@@ -24,6 +24,8 @@ from trainopt.train.problem import Candidate, DesignProblem, Floats, worst_but
 
 Places = NDArray[np.intp]
 _STEPS = 40
+_CLOSE = 1.02
+"""A price is found to within this factor: any gives a valid bound."""
 _LOTS = 64
 _TRIALS = 24
 
@@ -34,6 +36,7 @@ class _Priced:
     paid for; `hours` (lots, options), a large number where a lot fails; `allowed` T′ in h."""
 
     index: Index
+    lots: Places
     weight: Floats
     hours: Floats
     allowed: float
@@ -44,7 +47,7 @@ _FAILS = 1e12
 """Hours that stand for a demand without end, where infinity would make a product undefined."""
 
 
-def _priced(index: Index) -> _Priced:
+def _priced(index: Index, lots: Places | None = None) -> _Priced:
     problem = index.problem
     hours = np.concatenate(
         [node.candidate.options.demand / problem.blocks[node.block].head for node in index.nodes], axis=1
@@ -54,15 +57,16 @@ def _priced(index: Index) -> _Priced:
         allowed = process_time(problem) - line
     else:
         allowed = math.fsum(problem.longest_time(block) for block in problem.blocks) - line
-    if len(hours) > max(_LOTS, 4 * (problem.may_fail + 1)):
+    if lots is None:
         level = np.minimum(hours, _FAILS).sum(axis=1)
-        hours = hours[np.argsort(-level, kind="stable")[: max(_LOTS, 4 * (problem.may_fail + 1))]]
+        lots = np.argsort(-level, kind="stable")[: max(_LOTS, 4 * (problem.may_fail + 1))]
+    hours = hours[lots]
     hours = np.minimum(hours, _FAILS)
     weight, constant = np.broadcast_to(index.weight, hours.shape), 0.0
     if problem.objective == "cost" and problem.hour_rate > 0.0:
         weight = weight + problem.hour_rate * hours
         constant = problem.hour_rate * (line + math.fsum(block.setup for block in problem.blocks))
-    return _Priced(index, weight, hours, allowed, constant)
+    return _Priced(index, lots, weight, hours, allowed, constant)
 
 
 @dataclass(frozen=True, eq=False)
@@ -150,18 +154,18 @@ def _arc_paths(index: Index, value: Floats, best: Floats, hours: Floats, picks: 
 def _best_prices(priced: _Priced) -> Floats:
     """λ (lots,) near where each lot's bound is highest: where the cheapest route just takes the time allowed."""
     lots = len(priced.hours)
-    scale = float(priced.index.weight.max(initial=0.0)) / max(priced.allowed, 1e-9)
-    low, high = np.zeros(lots), np.full(lots, max(scale, 1e-12) * 1e-6)
+    scale = max(float(priced.index.weight.max(initial=0.0)) / max(priced.allowed, 1e-9), 1e-12)
+    low, high = np.zeros(lots), np.full(lots, scale)
     for _ in range(_STEPS):
         slow = _paths(priced, high).hours > priced.allowed
         if not slow.any():
             break
         low, high = np.where(slow, high, low), np.where(slow, high * 8.0, high)
     for _ in range(_STEPS):
-        middle = np.where(low > 0.0, np.sqrt(low * high), 0.5 * high)
+        middle = np.where(low > 0.0, np.sqrt(low * high), high / 64.0)
         slow = _paths(priced, middle).hours > priced.allowed
         low, high = np.where(slow, middle, low), np.where(slow, high, middle)
-        if (high <= low * (1.0 + 1e-4)).all():
+        if (high <= np.maximum(low * _CLOSE, scale * 1e-9)).all():
             break
     return high
 
@@ -169,33 +173,42 @@ def _best_prices(priced: _Priced) -> Floats:
 @dataclass(frozen=True, eq=False)
 class Bounds:
     """`option`: below the objective of every design with that option, shape (options,); `picks` promising ones, each
-    the flat options of the stages (−1: not used), the smaller first."""
+    the flat options of the stages (−1: not used), the smaller first; `lots` looked at, and their `prices` λ."""
 
     option: Floats
     picks: tuple[tuple[int, ...], ...]
+    lots: Places
+    prices: Floats
 
 
-def bounds(index: Index) -> Bounds:
-    """Bounds on every design with each option, and picks that may be good designs."""
+def bounds(index: Index, known: Bounds | None = None) -> Bounds:
+    """Bounds on every design with each option, and picks that may be good designs.
+
+    `known`: bounds of the same problem with more options, whose prices serve again (picks are not looked for then).
+    """
+    none = np.zeros(0, dtype=np.intp)
     if not index.nodes:
-        return Bounds(np.zeros(0), ())
-    priced, spared = _priced(index), index.problem.may_fail
+        return Bounds(np.zeros(0), (), none, np.zeros(0))
+    known = known if known is not None and len(known.lots) else None
+    priced, spared = _priced(index, None if known is None else known.lots), index.problem.may_fail
     if priced.allowed <= 0.0:
-        return Bounds(np.full(len(index.names), -math.inf), ())
-    prices = _best_prices(priced)
+        return Bounds(np.full(len(index.names), -math.inf), (), none, np.zeros(0))
+    prices = _best_prices(priced) if known is None else known.prices
     option = np.full(priced.weight.shape, -np.inf)
     for factor in (1.0, 0.5, 2.0, 0.0):
         found = _paths(priced, prices * factor)
         bound = found.through + (priced.constant - prices * factor * priced.allowed)[:, None]
         option = np.maximum(option, bound)
+    if known is not None:
+        return Bounds(worst_but(option, spared), (), priced.lots, prices)
     least = _paths(priced, prices).least - prices * priced.allowed
     # The lot that the others leave to decide: its cheapest routes at rising prices are ever larger designs.
     lot = int(np.argsort(-least, kind="stable")[min(spared, len(least) - 1)])
-    one = _Priced(index, priced.weight[[lot]], priced.hours[[lot]], priced.allowed, priced.constant)
+    one = _priced(index, priced.lots[[lot]])
     picks: dict[tuple[int, ...], None] = {}
     for factor in np.geomspace(0.7, 50.0, _TRIALS).tolist():
         picks[tuple(_paths(one, prices[[lot]] * factor).picks[0].tolist())] = None
-    return Bounds(worst_but(option, spared), tuple(picks))
+    return Bounds(worst_but(option, spared), tuple(picks), priced.lots, prices)
 
 
 def node_bounds(index: Index) -> tuple[dict[tuple[int, str], float], float]:

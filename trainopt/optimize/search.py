@@ -9,7 +9,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from trainopt.optimize.bounds import bounds, first_design, within
+from trainopt.optimize.bounds import Bounds, bounds, first_design, within
 from trainopt.optimize.index import SINK, SOURCE, Index, index_problem
 from trainopt.optimize.run import TIE, Cut, Name, Pick, Run, SolverOptions, route_of
 from trainopt.optimize.times import Route, block_times, objective_of
@@ -47,15 +47,24 @@ def best_route(problem: DesignProblem, options: SolverOptions | None = None) -> 
     ceiling, first = first_design(index, found)
     few = index_problem(within(index, found.option, ceiling))
     options = options or SolverOptions()
-    result = searched(few, options, dict(zip(index.names, fixed_order(index).tolist(), strict=True)))
+    result = searched(few, options, dict(zip(index.names, fixed_order(index).tolist(), strict=True)), (), found)
     if result.route is None and result.status == "limit" and first is not None:
         # Stopped before the solver had any design: the one that set the ceiling is there.
         return _found(few, "limit", first, block_times(few.problem, first), result.bound, result)
     return result
 
 
-def searched(index: Index, options: SolverOptions, order: Mapping[Name, float], cuts: Sequence[Cut] = ()) -> Found:
-    """The best pick of an index that `cuts` do not forbid; equal ones are told apart by spare, then by `order`."""
+def searched(
+    index: Index,
+    options: SolverOptions,
+    order: Mapping[Name, float],
+    cuts: Sequence[Cut] = (),
+    known: Bounds | None = None,
+) -> Found:
+    """The best pick of an index that `cuts` do not forbid; equal ones are told apart by spare, then by `order`.
+
+    `known`: bounds of the problem with more options.
+    """
     deadline = None if options.time_limit is None else time.monotonic() + options.time_limit
     run = Run(index, options, deadline, cuts)
     pick = run.solve()
@@ -65,7 +74,7 @@ def searched(index: Index, options: SolverOptions, order: Mapping[Name, float], 
         return found
     if pick.proven and options.ties:
         best = objective_of(index.problem, pick.route, pick.times)
-        pick, solves = _told_apart(index, options, order, cuts, pick, best, deadline)
+        pick, solves = _told_apart(index, options, order, cuts, pick, best, deadline, known)
         found = Found(*(found.status, None, None, math.inf, found.bound), found.solves + solves, *size)
     return _found(index, found.status, pick.route, pick.times, found.bound, found)
 
@@ -89,12 +98,13 @@ def _told_apart(
     pick: Pick,
     best: float,
     deadline: float | None,
+    known: Bounds | None,
 ) -> tuple[Pick, int]:
     """Among designs as good as `best` the one with most spare, then the first in a fixed order; and the solves it took.
 
     Few options can be part of such a design: a model of those alone is asked.
     """
-    few = index_problem(within(index, bounds(index).option, best * (1.0 + math.copysign(2.0 * TIE, best))))
+    few = index_problem(within(index, bounds(index, known).option, best * (1.0 + math.copysign(2.0 * TIE, best))))
     if few.plain and len(few.names) == len(few.stages):
         return pick, 0
     run = Run(few, options, deadline, cuts)

@@ -11,6 +11,7 @@ import math
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
+from trainopt.report.beside_json import beside_document
 from trainopt.version import __version__
 
 if TYPE_CHECKING:
@@ -50,6 +51,7 @@ def design_document(design: Design) -> Document:
     }
     if design.area_parts is not None:
         document["area_parts"] = _area_parts(design.area_parts)
+    document |= beside_document(design)
     if design.status == "infeasible":
         document["reasons"] = [{"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons]
     return document

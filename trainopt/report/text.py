@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
+from trainopt.report.beside_text import beside
 from trainopt.report.cautions import CAUTIONS
 from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
@@ -39,6 +40,8 @@ def design_text(design: Design, units: str = "bar", width: int = WIDTH, color: b
         _cost(page, design)
     if design.even_split is not None and design.blocks:
         _even_split(page, design, pressure)
+    if design.blocks:
+        beside(page, design, pressure)
     if design.warnings:
         page.heading("Warnings")
         page.items((text for _, text in grouped(design.warnings)), "yellow")
