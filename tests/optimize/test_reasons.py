@@ -143,6 +143,8 @@ def test_closed_forms_of_one_flat_stage() -> None:
     assert found["batch.time_h"] == pytest.approx(1.25, rel=INSIDE)
     assert found["b.pressure_bar"] == pytest.approx(2.5, rel=INSIDE)
     assert found["s.max_count"] == 50
+    assert {reason.module for reason in reasons(p) if "s.max_count" in reason.needs} == {"m-m"}
+    assert {reason.module for reason in reasons(p) if "s.max_count" not in reason.needs} == {None}
     assert found["safety_factor"] is None  # 0.8 would do, but a factor below 1 is none
     assert found["batch.volume_L"] == pytest.approx(800.0, rel=INSIDE)
     assert found["s.loading_limit_L_m2"] is None

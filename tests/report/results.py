@@ -105,6 +105,7 @@ def infeasible() -> Design:
                 "block 'clarification' would need 2.31 bar where 1.4 bar is allowed",
                 {"clarification.pressure_bar": 2.31, "batch.time_h": None},
             ),
+            Reason("stage 'primary' would need 25 × oat-coarse-09", {"primary.max_count": 25}, "oat-coarse-09"),
         ),
     )
 

@@ -93,7 +93,9 @@ def test_infeasible_design_adds_reasons_and_has_nulls_for_numbers() -> None:
     document = read(dumps(design_document(results.infeasible())))
     reasons = document.pop("reasons")
     assert list(document) == list(DESIGN)
-    assert_shape(reasons, [{"text": TEXT, "needs": {"*": MAYBE}}])
+    assert_shape(reasons[:1], [{"text": TEXT, "needs": {"*": MAYBE}}])
+    assert_shape(reasons[1:], [{"text": TEXT, "needs": {"*": MAYBE}, "module": TEXT}])
+    assert (reasons[1]["needs"], reasons[1]["module"]) == ({"primary.max_count": 25}, "oat-coarse-09")
     assert reasons[0]["needs"] == {"clarification.pressure_bar": 2.31, "batch.time_h": None}
     numbers = ("objective", "area_m2", "cost", "time_h", "cost_parts", "safety_factor", "saving")
     assert [document[key] for key in numbers] == [None] * len(numbers)

@@ -229,7 +229,7 @@ def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
         return Reason(text, {field: None})
     _, count, module_name = best
     text = f"stage '{stage}' would need {count} × {module_name} on offer (max_count), all else as it is"
-    return Reason(text, {field: count})
+    return Reason(text, {field: count}, module_name)
 
 
 def rounded(value: float, direction: int, digits: int = 4) -> str:

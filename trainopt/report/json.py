@@ -17,7 +17,17 @@ from trainopt.version import __version__
 if TYPE_CHECKING:
     from trainopt.curves.curve import Curve
     from trainopt.report.dossier import Dossier
-    from trainopt.train.results import AreaParts, BlockDesign, CostParts, Design, EvenSplit, Limits, Saving, StageDesign
+    from trainopt.train.results import (
+        AreaParts,
+        BlockDesign,
+        CostParts,
+        Design,
+        EvenSplit,
+        Limits,
+        Reason,
+        Saving,
+        StageDesign,
+    )
 
 Document = dict[str, Any]
 
@@ -53,8 +63,14 @@ def design_document(design: Design) -> Document:
         document["area_parts"] = _area_parts(design.area_parts)
     document |= beside_document(design)
     if design.status == "infeasible":
-        document["reasons"] = [{"text": reason.text, "needs": dict(reason.needs)} for reason in design.reasons]
+        document["reasons"] = [_reason(reason) for reason in design.reasons]
     return document
+
+
+def _reason(reason: Reason) -> Document:
+    """A reason; `module` only where it asks for a count of one."""
+    document: Document = {"text": reason.text, "needs": dict(reason.needs)}
+    return document if reason.module is None else {**document, "module": reason.module}
 
 
 def _cost_parts(parts: CostParts | None) -> Document | None:

@@ -86,6 +86,13 @@ class Pressure:
         return f"{self.number(bar)} {self.unit}"
 
 
+def needed(value: float | None, module: str | None = None) -> str:
+    """The value that a limit alone would need (None: none is enough); a count with the module that it is of."""
+    if value is None:
+        return "no value alone is enough"
+    return f"{value:.0f} × {module}" if module is not None else significant(value, 4)
+
+
 def plain(text: str) -> str:
     """User's text with everything replaced that a terminal would obey instead of show."""
     return "".join(letter if letter.isprintable() else "\N{REPLACEMENT CHARACTER}" for letter in text)

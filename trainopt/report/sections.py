@@ -16,6 +16,7 @@ from trainopt.report.numbers import (
     duration,
     fixed,
     limit_words,
+    needed,
     percent,
     significant,
     trimmed,
@@ -51,9 +52,7 @@ def _answer(dossier: Dossier) -> Section:
     )
     if not design.blocks:
         needs = tuple(
-            (name, "no value alone is enough" if value is None else significant(value, 4))
-            for reason in design.reasons
-            for name, value in reason.needs.items()
+            (name, needed(value, reason.module)) for reason in design.reasons for name, value in reason.needs.items()
         )
         table = Table("What would do, each change alone", (words("Field"), words("Value")), needs)
         return Section(

@@ -16,6 +16,7 @@ from trainopt.report.numbers import (
     fixed,
     limit_words,
     money,
+    needed,
     percent,
     significant,
     trimmed,
@@ -246,10 +247,7 @@ def _pick(stage: StageDesign | None) -> str:
 def _reasons(page: Page, design: Design) -> None:
     page.heading("What stands in the way")
     page.items(reason.text for reason in design.reasons)
-    needs = [(name, value) for reason in design.reasons for name, value in reason.needs.items()]
+    needs = [(name, needed(value, reason.module)) for reason in design.reasons for name, value in reason.needs.items()]
     if needs:
         page.heading("What would do, each change alone")
-        rows = [
-            (name, significant(value, 4) if value is not None else "no value alone is enough") for name, value in needs
-        ]
-        page.table(("Field", "Value"), rows)
+        page.table(("Field", "Value"), needs)

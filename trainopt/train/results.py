@@ -115,11 +115,12 @@ class Reason:
     """Why no design exists: a limit, and what single change to it alone would make one possible.
 
     `needs` maps a field with its unit ("batch.time_h", "clarification.pressure_bar", …) to the value that works,
-    or to None where no value of it alone does.
+    or to None where no value of it alone does. `module`: the module type that a count in `needs` is of.
     """
 
     text: str
     needs: Mapping[str, float | None]
+    module: str | None = None
 
 
 @dataclass(frozen=True)
