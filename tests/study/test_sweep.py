@@ -296,7 +296,7 @@ def test_the_document_is_the_contracts(harvest: trainopt.Case):
 def test_a_map_is_drawn_and_told(harvest: trainopt.Case):
     from trainopt.report.picture import picture_bytes
     from trainopt.report.study_figures import sweep_figure
-    from trainopt.report.study_text import sweep_text
+    from trainopt.report.study_sweep_text import sweep_text
 
     found: Sweep = trainopt.sweep(harvest, ["batch.volume=1000 L..4600 L/7", "batch.time=4 h..8 h/5"])
     text = sweep_text(found)

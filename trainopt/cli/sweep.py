@@ -77,7 +77,7 @@ def sweep(
 
         sys.stdout.write(sweep_csv(result))
     else:
-        from trainopt.report.study_text import sweep_text
+        from trainopt.report.study_sweep_text import sweep_text
 
         sys.stdout.write(sweep_text(result, width(), color()))
 
