@@ -11,7 +11,7 @@ import os
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, ClassVar
 
 import highspy
 import numpy as np
@@ -90,9 +90,13 @@ class Answer:
 
 
 class Solver:
-    """One HiGHS instance holding one matrix; single-threaded and seeded, gaps 0, silent."""
+    """One HiGHS instance holding one matrix; seeded, gaps 0, silent, on one thread unless told otherwise."""
+
+    _scheduled: ClassVar[int | None] = None
+    """Threads of the process's only scheduler, as an instance last asked for them."""
 
     def __init__(self, matrix: Matrix, time_limit: float | None = None, seed: int = 0, threads: int = 1) -> None:
+        self._threads = threads
         with _quiet():
             self._highs: Any = highspy.Highs()  # type: ignore[no-untyped-call]
         options = {
@@ -137,6 +141,10 @@ class Solver:
 
     def run(self) -> Answer:
         """Solve, and map the status once; an unexpected status is a defect."""
+        if Solver._scheduled != self._threads:
+            # HiGHS refuses to run on another number of threads than the process's scheduler was started with.
+            highspy.Highs.resetGlobalScheduler(True)
+            Solver._scheduled = self._threads
         self._highs.run()
         status = self._highs.getModelStatus()
         info = self._highs.getInfo()
