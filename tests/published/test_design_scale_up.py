@@ -1,8 +1,8 @@
 """A published scale-up at constant pressure, designed from a user's files: the modules to buy are the published ones.
 
-C. J. Geankoplis, Transport Processes and Unit Operations, Ex. 14.2-1 to 14.2-3 (read in a public copy): calcium carbonate
-slurry at 338 kPa on 0.0439 m2 of cloth obeys t = Kp/2·V² + B·V; 20 frames of 0.873 m2 put 3.37 m3 of filtrate through in
-269.7 s (printed; 269.6 s computed from the printed constants, and 296 s with 19 frames).
+C. J. Geankoplis, Transport Processes and Unit Operations, Ex. 14.2-1 to 14.2-3 (read in a public copy): calcium
+carbonate slurry at 338 kPa on 0.0439 m2 of cloth obeys t = Kp/2·V² + B·V; 20 frames of 0.873 m2 put 3.37 m3 of
+filtrate through in 269.7 s (printed; 269.6 s computed from the printed constants, and 296 s with 19 frames).
 """
 
 from __future__ import annotations
