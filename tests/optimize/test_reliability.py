@@ -19,9 +19,11 @@ import trainopt
 from trainopt.optimize.design import Prepared, prepare
 from trainopt.optimize.even_split import even_split
 from trainopt.optimize.reliability import Bought, measured, wilson
+from trainopt.optimize.restate import Move, restated
 from trainopt.optimize.search import SolverOptions, best_route
 from trainopt.optimize.sparing import spare_lots
 from trainopt.train.build import prune
+from trainopt.train.problem import DesignProblem
 
 ROOT = Path(__file__).parent.parent.parent
 Multipliers = dict[tuple[str, str], list[tuple[float, float]]]
@@ -129,6 +131,18 @@ def chosen(spec: Spec, stages: dict[str, dict[str, Any]]) -> Iterator[list[list[
         independent.options_of = original
 
 
+def assert_needs_are_exact(problem: DesignProblem, result: trainopt.Design) -> None:
+    """The time and the safety factor named work, and just short of them nothing does."""
+    needs = {name: value for reason in result.reasons for name, value in reason.needs.items()}
+    time = needs["batch.time_h"]
+    if time is not None:
+        assert trainopt.design(replace(problem, time=time)).status == "optimal"
+        assert trainopt.design(replace(problem, time=time * (1.0 - 1e-6))).status == "infeasible"
+    factor = needs["safety_factor"]
+    if factor is not None:
+        assert trainopt.design(restated(problem, Move(safety_factor=factor))).status == "optimal"
+
+
 @pytest.mark.parametrize("first", range(0, 60, 10))
 def test_the_sampled_optimum_equals_enumeration(first: int, tmp_path: Path) -> None:
     seen = set()
@@ -143,6 +157,7 @@ def test_the_sampled_optimum_equals_enumeration(first: int, tmp_path: Path) -> N
         seen.add(result.status)
         if math.isinf(expected):
             assert result.status == "infeasible", seed
+            assert_needs_are_exact(prepared.problem, result)
             continue
         assert result.objective is not None, (seed, expected)
         assert result.objective.value == pytest.approx(expected, rel=1e-9), seed

@@ -121,8 +121,9 @@ def _route_design(problem: DesignProblem, nodes: tuple[Node, ...], options: Solv
 
     def only(b: int, i: int, stage: Stage) -> Stage:
         medium = used.get((b, i))
-        # A stage that the route leaves out stays, with nothing on offer.
-        return replace(stage, candidates=tuple(c for c in stage.candidates if c.medium == medium))
+        # A stage that the route leaves out stays, with nothing on offer; one that it uses may not be left out.
+        candidates = tuple(c for c in stage.candidates if c.medium == medium)
+        return replace(stage, optional=medium is None, candidates=candidates)
 
     blocks = tuple(
         replace(block, stages=tuple(only(b, i, s) for i, s in enumerate(block.stages)))

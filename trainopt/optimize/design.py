@@ -135,7 +135,7 @@ def design(
     if full.reliability is not None:
         result = _with_reliability(prepared, result, found, even_pick)
     if parts:
-        result = replace(result, area_parts=area_parts(full, result))
+        result = replace(result, area_parts=area_parts(picked.held.full, result))
     if routes:
         result = replace(result, routes=route_designs(problem, found, options))
     if alternatives:

@@ -17,6 +17,7 @@ from trainopt.optimize.roots import largest_where
 from trainopt.train.options import demand
 from trainopt.train.problem import Floats
 
+_BOUNDLESS = 1e100
 _MANY = 24
 _CUTS = 100
 _POINTS = 100
@@ -49,11 +50,11 @@ class IdealStage:
 def loading_limit(curves: Sequence[LotCurve], operation: str, cap: float, rating_budget: float) -> float:
     """Highest design loading in L/m² inside `cap` at which every lot's D stays within the stage's own rating, bar·h."""
     finite = min(cap, *(curve.pole * (1.0 - 1e-9) for curve in curves))
-    if math.isinf(rating_budget):
-        return finite
+    # Far beyond any use an exponential leaves the range of numbers: that is a limit too.
+    room = min(rating_budget, _BOUNDLESS)
 
     def holds(loading: Floats) -> np.ndarray[tuple[int], np.dtype[np.bool_]]:
-        return np.asarray(demand(curves, operation, loading).max(axis=0) <= rating_budget)
+        return np.asarray(demand(curves, operation, loading).max(axis=0) <= room)
 
     return largest_where(holds, finite)
 

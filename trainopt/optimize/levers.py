@@ -13,8 +13,10 @@ from functools import cached_property
 
 import numpy as np
 
+from trainopt.curves.sampled import SampledCurves
 from trainopt.optimize.even_split import routes
 from trainopt.optimize.index import Index, Node
+from trainopt.optimize.sparing import spare_lots
 from trainopt.train.options import CAP_SLACK, demand
 from trainopt.train.problem import Block, Candidate, DesignProblem, Floats
 
@@ -80,48 +82,64 @@ class Levers:
         if loading > setting.cap[n] * (1.0 + CAP_SLACK):
             return None
         operation = self.problem.blocks[self.index.nodes[n].block].operation
-        spent = demand(candidate.curves, operation, np.array([loading]))[:, 0]
-        return spent if np.isfinite(spent).all() else None
+        curves = candidate.curves
+        if setting.cap[n] > candidate.loading_cap and isinstance(curves, SampledCurves):
+            # A loading limit in place of what was tested lets every lot go that far.
+            curves = replace(curves, known=math.inf)
+        spent = demand(curves, operation, np.array([loading]))[:, 0]
+        return spent if self.problem.enough(np.isfinite(spent)) else None
 
     def _route_possible(self, setting: Setting, route: tuple[int, ...], spent: Mapping[int, Floats | None]) -> bool:
-        total = 0.0
+        needed: list[Floats] = []
         for b, block in enumerate(self.problem.blocks):
             here = [n for n in route if self.index.nodes[n].block == b]
-            least = self._least_time(setting, b, block, here, spent)
+            least = self._least_times(setting, b, block, here, spent)
+            if least is None:
+                return False
             pump = ("pump", b) not in setting.lifted and block.min_flow > 0.0
             most = setting.volume / block.min_flow if pump else math.inf
-            if not least <= most * INSIDE:
-                return False
-            if self.problem.schedule == "sequential":
-                total += least + block.setup
-            else:
-                total = max(total, least + block.setup)
-        return math.isfinite(total) and total <= setting.time * INSIDE
+            needed.append(np.where(least <= most * INSIDE, least, np.inf))
+        return self._in_time(setting, np.array(needed))
 
-    def _least_time(
+    def _in_time(self, setting: Setting, needed: Floats) -> bool:
+        """Whether blocks that need these times in h, shape (blocks, lots), fit the time allowed for enough lots."""
+        setups = np.array([block.setup for block in self.problem.blocks])
+        allowed = setting.time * INSIDE
+        if self.problem.schedule != "sequential":
+            return bool(self.problem.enough((needed + setups[:, None] <= allowed).all(axis=0)))
+        able = np.isfinite(needed).all(axis=0)
+        left = self.problem.may_fail - int((~able).sum())
+        if left < 0:
+            return False
+        kept = needed[:, able]
+        if left:
+            kept = kept[:, spare_lots(kept, left)]
+        return float(kept.max(axis=1, initial=0.0).sum() + setups.sum()) <= allowed
+
+    def _least_times(
         self, setting: Setting, b: int, block: Block, here: list[int], spent: Mapping[int, Floats | None]
-    ) -> float:
-        """Shortest time of a block, h (model.md, section 4); infinite where it cannot run."""
-        least = 0.0 if ("pump", b) in setting.lifted else setting.volume / block.max_flow
+    ) -> Floats | None:
+        """Shortest time of a block for each lot, h (model.md, section 4); None where it cannot run."""
+        floor = 0.0 if ("pump", b) in setting.lifted else setting.volume / block.max_flow
         demands = [spent[n] for n in here]
         known = [d for d in demands if d is not None]
         if len(known) < len(demands):
-            return math.inf
+            return None
         line = block.line * setting.volume
-        total = (float(np.sum(known, axis=0).max()) if known else 0.0) + line
-        least = max(least, _ratio(total, setting.pressure[b] - block.static))
+        lots = np.zeros(len(self.problem.lots))
+        least = np.maximum(_ratios(np.sum([lots, *known], axis=0) + line, setting.pressure[b] - block.static), floor)
         for k, n in enumerate(here):
             one = self.index.nodes[n].candidate
-            least = max(least, _ratio(setting.volume, setting.area[n] * setting.flux[n]))
+            least = np.maximum(least, _ratio(setting.volume, setting.area[n] * setting.flux[n]))
             if ("rating", n) in setting.lifted:
                 continue
             if block.operation == "constant-flow":
-                downstream = float(np.sum(known[k:], axis=0).max()) + line
-                least = max(least, _ratio(float(known[k].max()), one.differential_pressure))
-                least = max(least, _ratio(downstream, one.inlet_pressure - block.static))
+                downstream = np.sum(known[k:], axis=0) + line
+                least = np.maximum(least, _ratios(known[k], one.differential_pressure))
+                least = np.maximum(least, _ratios(downstream, one.inlet_pressure - block.static))
             elif setting.pressure[b] > bearable(block, one) * (1.0 + 1e-9):
-                return math.inf
-        return least
+                return None
+        return np.asarray(least)
 
 
 def bearable(block: Block, candidate: Candidate) -> float:
@@ -133,6 +151,13 @@ def _ratio(need: float, have: float) -> float:
     if need <= 0.0:
         return 0.0
     return need / have if have > 0.0 else math.inf
+
+
+def _ratios(need: Floats, have: float) -> Floats:
+    """The same for every lot; no limit at all asks for no time, whatever the lot."""
+    if math.isinf(have) and have > 0.0:
+        return np.zeros_like(need)
+    return np.where(need <= 0.0, 0.0, need / have) if have > 0.0 else np.where(need <= 0.0, 0.0, np.inf)
 
 
 def all_candidates(problem: DesignProblem) -> Index:

@@ -14,7 +14,7 @@ from trainopt.optimize.design import design as find_design
 from trainopt.optimize.nearest import TIE, Better, Lever, Picks, nearest_better, solved
 from trainopt.optimize.reasons import rounded
 from trainopt.optimize.restate import Move, route_of_picks
-from trainopt.optimize.times import Route, block_bounds
+from trainopt.optimize.times import Route, block_bounds, kept_lots
 from trainopt.train.problem import Block, Candidate, DesignProblem, Stage
 from trainopt.train.results import BlockLimit, Design, Gain, Limits, LongerRun, Pick
 
@@ -41,20 +41,22 @@ def limits(problem: DesignProblem, design: Design, curves: Mapping[str, Curve] |
     """What limits a proven design of `problem` (with all its options), or None where there is none.
 
     `curves` gives the flux and temperature that the media were tested at; without them their flux limits stand in.
+    On a reliability basis only what binds is said: each gain would take hundreds of designs over all sampled lots.
     """
     route = route_of_picks(problem, design.picks)
     if route is None or design.objective is None or not design.blocks:
         return None
     return Limits(
         blocks=tuple(_block_limits(problem, design, route)),
-        gains=tuple(gains(problem, design)),
-        longer_runs=tuple(longer_runs(problem, design, curves or {})),
+        gains=() if problem.may_fail else tuple(gains(problem, design)),
+        longer_runs=() if problem.may_fail else tuple(longer_runs(problem, design, curves or {})),
     )
 
 
 def _block_limits(problem: DesignProblem, design: Design, route: Route) -> Iterator[BlockLimit]:
+    lots = kept_lots(problem, route) if problem.may_fail else None
     for block, choices, shown in zip(problem.blocks, route, design.blocks, strict=True):
-        needed = block_bounds(block, choices, problem.volume).limits
+        needed = block_bounds(block, choices, problem.volume, lots).limits
         (stage, name), time = max(needed.items(), key=lambda item: item[1])
         used = time / shown.time if shown.time > 0.0 else 0.0
         stages = {one.stage: one.limited_by for one in shown.stages}

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field, replace
 
 import numpy as np
 
+from trainopt.curves.sampled import SampledCurves
 from trainopt.optimize.times import Choice, Route
 from trainopt.train.options import Cap, inside_caps, take
 from trainopt.train.problem import Block, Candidate, DesignProblem, Options, Stage
@@ -68,6 +70,9 @@ def _candidate(
         flux_limit=move.flux.get(key, one.flux_limit),
         loading_cap=move.cap.get(key, one.loading_cap),
     )
+    if key in move.cap and isinstance(one.curves, SampledCurves):
+        # A loading limit in place of what was tested lets every lot go that far.
+        out = replace(out, curves=replace(one.curves, known=math.inf))
     return refilled(problem, block, out) if scaled or key in move.cap or key in move.flux else out
 
 
@@ -79,7 +84,8 @@ def refilled(problem: DesignProblem, block: Block, one: Candidate) -> Candidate:
     loading = problem.safety_factor * problem.volume / (one.scale_up * offer.area)
     empty = replace(offer, loading=loading, demand=np.zeros((0, len(offer))))
     cap = Cap(one.loading_cap, one.cap_reason)
-    options, dropped = inside_caps(empty, cap, one.curves, block.operation, one.flux_limit, problem.volume)
+    options, dropped = inside_caps(empty, cap, one.curves, block.operation, one.flux_limit, problem.volume,
+                                   problem.may_fail)  # fmt: skip
     return replace(one, options=options, dropped=dropped)
 
 
