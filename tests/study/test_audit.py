@@ -29,15 +29,15 @@ from trainopt.study.waste import most_waste
 ROOT = Path(__file__).parents[2]
 
 
-def two_stages(first: float, second: float) -> trainopt.Case:
-    """Two stages that do not foul, of these resistances, in fine modules."""
+def two_stages(first: float, second: float, tested: float = 1e6) -> trainopt.Case:
+    """Two stages that do not foul, of these resistances, in fine modules; `tested` L/m2."""
     media, modules = {}, {}
     for name, resistance in (("one", first), ("two", second)):
         media[name] = Medium.model_validate(
             {
                 "medium": name,
                 "curve": {"law": "cake", "parameters": {"R0": resistance, "k": 0.0},
-                          "tested": {"loading": 1e6, "flux": 1e6}},
+                          "tested": {"loading": tested, "flux": 1e6}},
                 "limits": {},
             }
         )  # fmt: skip
@@ -163,3 +163,48 @@ def test_hours_that_cost_are_told_as_time(harvest_cost: trainopt.Case):
     assert found.design.saving is not None
     assert found.design.saving.cost > 0.0
     assert "are enough" in found.verdict
+
+
+def test_the_verdict_names_the_change_that_gives_most_for_its_size():
+    case = trainopt.load_case(ROOT / "scenarios" / "redundant-guard.yaml")
+    found = audit_case(case)
+    limits = trainopt.what_limits(case)
+    assert limits is not None
+    assert limits.longer_runs == ()
+    best = max(limits.gains, key=lambda gain: gain.saves / (gain.needs / gain.now - 1.0))
+    assert best.field == "batch.time_h"
+    assert found.verdict.endswith(f"; of all limits, the change that gives most for its size: {best.text}.")
+    assert found.lever == "safety-factor"  # the largest part of the area stays the lever
+    # The change does what is said of it.
+    assert found.design.area is not None
+    moved = trainopt.design(set_field(case, "batch.time", best.needs * (1.0 + 1e-9)))
+    assert moved.area == pytest.approx(found.design.area - best.saves, abs=1e-9)
+    document = audit_document(trainopt.audit([ROOT / "scenarios" / "redundant-guard.yaml"]))
+    assert [gain["text"] for gain in document["cases"][0]["limits"]["gains"]] == [gain.text for gain in limits.gains]
+
+
+def test_where_no_part_of_the_area_is_large_the_best_change_is_the_lever():
+    found = audit_case(two_stages(0.05, 0.05))
+    assert found.lever == "pressure-or-time"
+    assert "here, and could waste at most 0 % with these curves and modules of any size; of all limits" in found.verdict
+    assert " saves 0.1 m2: 1 × m-" in found.verdict
+
+
+def test_a_longer_bench_run_is_the_change_where_the_loading_tested_holds():
+    found = audit_case(two_stages(0.005, 0.005, tested=20.0))
+    assert found.lever == "limits"
+    assert "look at a longer bench run or a higher rating; of all limits" in found.verdict
+    assert "for its size: run " in found.verdict
+    assert " (so far 20)" in found.verdict
+
+
+def test_large_trains_and_split_cases_are_not_asked_for_gains(harvest: trainopt.Case, monkeypatch: pytest.MonkeyPatch):
+    assert audit_case(harvest).limits is None  # the split is to blame
+    case = two_stages(0.05, 0.05)
+    small = audit_case(case)
+    monkeypatch.setattr("trainopt.study.audit.MOST_STAGES", 1)
+    large = audit_case(case)
+    assert small.limits is not None
+    assert large.limits is None
+    assert large.lever == "pressure-or-time"
+    assert "would save, for pressure is what limits" in large.verdict

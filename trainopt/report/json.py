@@ -230,7 +230,8 @@ def _area_parts(parts: AreaParts) -> list[Document]:
     return [{"name": part.name, "m2": part.area, "cost": part.cost} for part in parts.parts]
 
 
-def _limits(limits: Limits) -> Document:
+def limits_document(limits: Limits) -> Document:
+    """What limits a design, the gains of a little more of each limit, and what longer bench runs are worth."""
     return {
         "blocks": [
             {
@@ -297,7 +298,7 @@ def report_document(dossier: Dossier) -> Document:
             for stage in dossier.stage_curves
         ],
         "area_parts": None if dossier.area_parts is None else _area_parts(dossier.area_parts),
-        "limits": None if dossier.limits is None else _limits(dossier.limits),
+        "limits": None if dossier.limits is None else limits_document(dossier.limits),
         "volumes": [
             {"volume_L": point.volume, "objective": point.objective, "even_split": point.even_split}
             for point in dossier.volumes

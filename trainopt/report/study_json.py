@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
-from trainopt.report.json import Document, block_document, design_document
+from trainopt.report.json import Document, block_document, design_document, limits_document
 from trainopt.version import __version__
 
 if TYPE_CHECKING:
@@ -186,6 +186,7 @@ def _case(case: CaseAudit) -> Document:
         "file": case.file,
         "lever": case.lever,
         "verdict": case.verdict,
+        "limits": None if case.limits is None else limits_document(case.limits),
         "modules": {"optimum": case.modules[0], "even_split": case.modules[1]},
         "pressure_bar": [
             {"block": s.block, "stage": s.stage, "optimum": s.optimum, "even_split": s.even} for s in case.shifts

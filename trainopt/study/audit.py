@@ -1,8 +1,9 @@
 """The even split against the optimum, case by case: what it wastes here, the most it could waste, and the lever
 worth pulling.
 
-Where the split is not to blame, the decomposition of the installed area (where the design has one) or what
-limits its stages says what is.
+Where the split is not to blame, the decomposition of the installed area says what is, and what a little more of
+each limit would gain names the change that gives most for its size. Gains are asked for only in trains small enough
+that they take well under a second (`MOST_STAGES`); in others what limits the most area stands in.
 """
 
 from __future__ import annotations
@@ -13,13 +14,19 @@ from pathlib import Path
 
 from trainopt.errors import InputError, Problem
 from trainopt.files import Case, find_root, load_case
-from trainopt.optimize.design import design, prepare
+from trainopt.optimize.design import Prepared, design, prepare
+from trainopt.optimize.limits import limits
 from trainopt.optimize.restate import route_of_picks
 from trainopt.study.waste import Waste, most_waste
-from trainopt.train.results import BlockDesign, Design, EvenSplit, Pick, StageDesign
+from trainopt.train.problem import DesignProblem
+from trainopt.train.results import BlockDesign, Design, EvenSplit, Limits, Pick, Saving, StageDesign
 
 WORTH = 1.0
 """Percent of the objective from which a saving is worth a sentence of its own."""
+
+MOST_STAGES = 5
+"""Stages of a train up to which the gains of its limits are asked for: below a second on random trains, some 0.5 s on
+the demo's three stages; trains of six and more take up to ten."""
 
 
 @dataclass(frozen=True)
@@ -37,6 +44,7 @@ class CaseAudit:
     """One case: its design beside the even split, where the pressure went, the most a split could waste, the
     verdict.
 
+    `limits`: what a little more of each limit gains (None: the split is the lever, or the train is too large to ask).
     `lever` names what is worth changing: "split", "time", "pressure-or-time", "rating", "flux", "longer-bench-run",
     "turbidity", "smaller-modules", "limits", "lots", "safety-factor", "none", or "no-design". `modules` counts in the
     optimum and in the even split.
@@ -49,6 +57,7 @@ class CaseAudit:
     waste: Waste | None
     lever: str
     verdict: str
+    limits: Limits | None = None
 
 
 @dataclass(frozen=True)
@@ -106,7 +115,9 @@ def audit_case(case: Case, objective: str | None = None) -> CaseAudit:
         full = prepared.problem
         route = route_of_picks(full, result.picks)
         waste = None if route is None else most_waste(full, route)
-    lever, verdict = _verdict(result, waste)
+    fault = _split_at_fault(result)
+    found = None if fault is not None else _asked(prepared, result)
+    lever, verdict = fault or _other_fault(prepared.problem, result, waste, found)
     return CaseAudit(
         file=case.scenario.source.shown,
         design=result,
@@ -115,7 +126,16 @@ def audit_case(case: Case, objective: str | None = None) -> CaseAudit:
         waste=waste,
         lever=lever,
         verdict=verdict,
+        limits=found,
     )
+
+
+def _asked(prepared: Prepared, result: Design) -> Limits | None:
+    """What a little more of each limit gains, where that is told in well under a second."""
+    problem = prepared.problem
+    if problem.reliability is not None or sum(len(block.stages) for block in problem.blocks) > MOST_STAGES:
+        return None
+    return limits(problem, result, prepared.curves)
 
 
 def _count(blocks: Iterable[BlockDesign]) -> int:
@@ -131,33 +151,44 @@ def _shifts(result: Design) -> Iterable[Shift]:
             yield Shift(block.block, stage.stage, stage.pressure, None if other is None else other.pressure)
 
 
-def _verdict(result: Design, waste: Waste | None) -> tuple[str, str]:
-    """The lever worth pulling and a sentence that says so."""
+def _split_at_fault(result: Design) -> tuple[str, str] | None:
+    """The lever and a sentence that says so, where it is how pressure and time are split, or no design exists."""
     if not result.blocks:
         reason = result.reasons[0].text if result.reasons else "the search was stopped before it found one"
         return "no-design", f"No design meets every limit: {reason}."
     even, saving = result.even_split, result.saving
-    by_cost = result.objective is not None and result.objective.kind == "cost"
     if even is None or saving is None:
         return "split", f"The even split yields no design here, the optimum does: {_text(even.text if even else '')}."
-    percent = (saving.cost_percent or 0.0) if by_cost else saving.area_percent
-    amount = f"{saving.cost:,.0f} {result.currency}".rstrip() + " per batch" if by_cost else f"{saving.area:.3g} m²"
-    if percent >= WORTH and result.picks == picks_of(even):
+    percent, amount = _wasted(result, saving)
+    if percent < WORTH:
+        return None
+    if result.picks == picks_of(even):
         took, enough = f"{even.time or 0.0:.3g} h", f"{result.time or 0.0:.3g} h"
         return (
             "time",
             f"The even split buys the same modules, but takes {took} where {enough} are enough: "
             f"{amount} ({percent:.3g} %).",
         )
-    if percent >= WORTH:
-        return "split", f"The even split wastes {amount} ({percent:.3g} %){_moved(result)}."
-    lever, what = _other_lever(result)
+    return "split", f"The even split wastes {amount} ({percent:.3g} %){_moved(result)}."
+
+
+def _wasted(result: Design, saving: Saving) -> tuple[float, str]:
+    """What the even split wastes of what is made least: percent, and the amount in words."""
+    if result.objective is not None and result.objective.kind == "cost":
+        return saving.cost_percent or 0.0, f"{saving.cost:,.0f} {result.currency}".rstrip() + " per batch"
+    return saving.area_percent, f"{saving.area:.3g} m²"
+
+
+def _other_fault(problem: DesignProblem, result: Design, waste: Waste | None, found: Limits | None) -> tuple[str, str]:
+    """The lever and a sentence that says so, where the split is not to blame."""
+    assert result.saving is not None
+    percent, amount = _wasted(result, result.saving)
+    lever, what = _other_lever(problem, result, found)
     wasted = f"only {amount} ({percent:.2g} %)" if percent > 1e-6 else "nothing"
-    bound = (
-        f", and could waste at most {waste.percent:.2g} % with these curves and modules of any size"
-        if waste is not None
-        else ""
-    )
+    bound = ""
+    if waste is not None:
+        most = waste.percent if waste.percent > 1e-6 else 0.0
+        bound = f", and could waste at most {most:.2g} % with these curves and modules of any size"
     return lever, f"The even split wastes {wasted} here{bound}; {what}."
 
 
@@ -231,19 +262,70 @@ def _largest_part(result: Design) -> tuple[str, str] | None:
     return lever, f"{name} {verb} for {amount} of {'the cost' if by_cost else 'the area'}: look at {remedy}"
 
 
-def _other_lever(result: Design) -> tuple[str, str]:
-    """Where the split is not the lever: the largest part of the area that something else is to blame for, or
-    the limits."""
+def _other_lever(problem: DesignProblem, result: Design, found: Limits | None) -> tuple[str, str]:
+    """Where the split is not the lever: the largest part of the area that something else is to blame for, the change of
+    a limit that gives most for its size, or, where that was not asked, what limits the most area."""
     stages: list[StageDesign] = [stage for block in result.blocks for stage in block.stages]
     if not stages:
         return "none", "nothing filters in this design"
     part = _largest_part(result)
+    change = None if found is None else _best_change(problem, result, found)
+    if change is not None:
+        lever, text = change
+        said = f"of all limits, the change that gives most for its size: {text}"
+        return (lever, said) if part is None else (part[0], f"{part[1]}; {said}")
     if part is not None:
         return part
     area: dict[str, float] = {}
     for stage in stages:
         area[stage.limited_by] = area.get(stage.limited_by, 0.0) + stage.area
     most = max(area, key=lambda limit: (area[limit], limit))
+    if found is not None and most != "module-size":
+        return "none", "no limit moved alone would save anything"
     names = " and ".join(f"'{stage.stage}'" for stage in stages if stage.limited_by == most)
     lever, words = _LEVERS.get(most, ("none", "{stages} are held by " + most))
     return lever, words.format(stages=names)
+
+
+_FIELDS = {
+    "time_h": "pressure-or-time",
+    "pressure_bar": "pressure-or-time",
+    "differential_pressure_bar": "rating",
+    "inlet_pressure_bar": "rating",
+    "flux_limit_LMH": "flux",
+    "loading_limit_L_m2": "longer-bench-run",
+}
+"""The lever that a limit is, by the last part of its field."""
+
+
+def _best_change(problem: DesignProblem, result: Design, found: Limits) -> tuple[str, str] | None:
+    """Lever and words of the change of one limit, or of the longer bench run, that saves most per relative change."""
+    media = {stage.stage: stage.medium for block in result.blocks for stage in block.stages}
+    turbid = {
+        stage.name
+        for block in problem.blocks
+        for stage in block.stages
+        for one in stage.candidates
+        if one.cap_reason == "turbidity" and media.get(stage.name) == one.medium
+    }
+    runs = {run.medium for run in found.longer_runs}
+    changes: list[tuple[float, str, str]] = []
+    for gain in found.gains:
+        stage, _, field = gain.field.rpartition(".")
+        lever = _FIELDS.get(field, "limits")
+        if lever == "longer-bench-run" and media.get(stage) in runs:
+            continue  # told as the run to make
+        changes.append(
+            (
+                _rate(gain.saves, gain.now, gain.needs),
+                "turbidity" if lever == "longer-bench-run" and stage in turbid else lever,
+                gain.text,
+            )
+        )
+    changes += [(_rate(run.saves, run.tested, run.loading), "longer-bench-run", run.text) for run in found.longer_runs]
+    return max(changes)[1:] if changes else None
+
+
+def _rate(saves: float, now: float, needs: float) -> float:
+    """What is saved per relative change of a limit."""
+    return saves * now / max(abs(needs - now), 1e-9 * now) if now > 0.0 else 0.0
