@@ -9,15 +9,13 @@ from __future__ import annotations
 import itertools
 import math
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from pathlib import Path
 from random import Random
 from typing import Any
 
-import numpy as np
 import yaml
-
-INFINITE = math.inf
+from algebra import INFINITE, NAMES, WATER, demand
 
 
 @dataclass
@@ -37,7 +35,7 @@ class Spec:
     hour: float = 0.0
     flush: float = 0.0
     product: tuple[float, float, float] = (0.0, 0.0, 1.0)
-    notes: dict[str, Any] = field(default_factory=dict)
+    temperature: float | None = None
 
 
 # --- random trains ---
@@ -147,13 +145,21 @@ def _dump(path: Path, data: dict[str, Any]) -> None:
 
 def _medium_file(name: str, m: dict[str, Any]) -> dict[str, Any]:
     curve: dict[str, Any] = {"law": m["law"]}
-    if m["law"] == "quadratic":
-        units = ["bar/LMH", "bar/LMH/(L/m2)^1", "bar/LMH/(L/m2)^2"]
-        curve["coefficients"] = [f"{c!r} {unit}" for c, unit in zip(m["parameters"], units, strict=True)]
+    names = NAMES[m["law"]]
+    units = {"R0": "bar/LMH", "c0": "bar/LMH", "n": "", **{f"c{i}": f"bar/LMH/(L/m2)^{i}" for i in (1, 2, 3)}}
+    written = [
+        value if name == "n" else f"{value!r} {units.get(name, 'm2/L')}"
+        for name, value in zip(names, m["parameters"], strict=True)
+    ]
+    if names[0] == "c0":
+        curve["coefficients"] = written
     else:
-        curve["parameters"] = {"R0": f"{m['parameters'][0]!r} bar/LMH", "k": f"{m['parameters'][1]!r} m2/L"}
+        curve["parameters"] = dict(zip(names, written, strict=True))
     curve["tested"] = {"loading": f"{m['tested']} L/m2", "flux": f"{m['flux']} LMH"}
-    curve["lots"] = {lot: {"resistance": rho, "fouling": kappa} for lot, (rho, kappa) in m["lots"].items()}
+    if m.get("temperature") is not None:
+        curve["tested"]["temperature"] = f"{m['temperature']} degC"
+    if m["lots"]:
+        curve["lots"] = {lot: {"resistance": rho, "fouling": kappa} for lot, (rho, kappa) in m["lots"].items()}
     limits = {}
     if m["limit"] is not None:
         limits["loading"] = f"{m['limit']} L/m2"
@@ -161,6 +167,11 @@ def _medium_file(name: str, m: dict[str, Any]) -> dict[str, Any]:
         limits["differential_pressure"] = f"{m['dp']} bar"
     if m["inlet"] is not None:
         limits["inlet_pressure"] = f"{m['inlet']} bar"
+    if m.get("own_flux") is not None:
+        limits["flux"] = f"{m['own_flux']} LMH"
+    if m.get("turbid") is not None:
+        limits["turbidity"] = 8.0
+        curve["origin"] = {"turbidity": 8.0, "turbidity_loading": f"{m['turbid']} L/m2"}
     out: dict[str, Any] = {"medium": name, "curve": curve, "limits": limits, "scale_up": m["scale_up"]}
     if m["flush"] is not None:
         out["flush"] = {"volume": f"{m['flush']} L/m2", "flux": "600 LMH"}
@@ -174,6 +185,7 @@ def _scenario_file(spec: Spec) -> dict[str, Any]:
             {
                 "stage": s["stage"], "optional": s["optional"],
                 "media": [m if after is None else {"medium": m, "after": after} for m, after in s["media"]],
+                **{key: s[key] for key in ("fix", "count") if s.get(key) is not None},
             }
             for s in b["stages"]
         ]  # fmt: skip
@@ -187,8 +199,11 @@ def _scenario_file(spec: Spec) -> dict[str, Any]:
             one["pump"] = {k: f"{v} L/h" for k, v in (("min_flow", low), ("max_flow", high)) if v is not None}
         blocks.append(one)
     titer, value, recovered = spec.product
+    batch = {"volume": f"{spec.volume} L", "time": f"{spec.time} h"}
+    if spec.temperature is not None:
+        batch["temperature"] = f"{spec.temperature} degC"
     return {
-        "scenario": "random", "batch": {"volume": f"{spec.volume} L", "time": f"{spec.time} h"},
+        "scenario": "random", "batch": batch,
         "objective": spec.objective, "safety_factor": spec.safety_factor, "basis": spec.basis,
         "schedule": spec.schedule,
         "blocks": blocks,
@@ -200,39 +215,24 @@ def _scenario_file(spec: Spec) -> dict[str, Any]:
 # --- the algebra again ---
 
 
-def resistance(m: dict[str, Any], lot: tuple[float, float], loading: float) -> float:
-    """R_s(l) of one lot, bar/LMH; infinite past the pole."""
-    rho, kappa = lot
-    x = kappa * loading
-    p = m["parameters"]
-    if m["law"] == "quadratic":
-        return rho * (p[0] + p[1] * x + p[2] * x * x)
-    k = p[1] * x
-    if m["law"] == "cake":
-        return rho * p[0] * (1 + k)
-    if m["law"] == "intermediate":
-        return rho * p[0] * math.exp(k)
-    if m["law"] == "standard":
-        return rho * p[0] * (1 - k / 2) ** -2 if k < 2 else INFINITE
-    return rho * p[0] / (1 - k) if k < 1 else INFINITE
+def multipliers(spec: Spec, medium: str) -> list[tuple[float, float]]:
+    """(ρ, κ) of one medium for every lot of the basis, viscosity in ρ; a lot not run on it is its worst."""
+    m = spec.media[medium]
+    known = m["lots"]
+    test = m.get("temperature")
+    thick = WATER[spec.temperature] / WATER[test] if spec.temperature is not None and test is not None else 1.0
+    names = lot_names(spec)
+    if not names or not known:
+        return [(thick, 1.0)] * max(len(names), 1)
+    worst = (max(rho for rho, _ in known.values()), max(kappa for _, kappa in known.values()))
+    return [(thick * known.get(name, worst)[0], known.get(name, worst)[1]) for name in names]
 
 
-def demand(m: dict[str, Any], lot: tuple[float, float], loading: float, operation: str) -> float:
-    """D in bar·h: L times the highest R up to L, or the integral of R (Simpson on 2,000 intervals)."""
-    if operation == "constant-pressure":
-        if not math.isfinite(resistance(m, lot, loading)):
-            return INFINITE
-        l = np.linspace(0.0, loading, 2001)
-        values = np.array([resistance(m, lot, float(x)) for x in l])
-        return float(loading / 6000.0 * (values[0] + values[-1] + 4 * values[1:-1:2].sum() + 2 * values[2:-1:2].sum()))
-    # A convex parabola or a monotone law is highest at an end of the range.
-    return loading * max(resistance(m, lot, 0.0), resistance(m, lot, loading))
-
-
-def lots_of(spec: Spec) -> list[tuple[float, float]]:
-    """(ρ, κ) of every lot of the basis; all media of a random train know the same lots."""
-    used = {m for b in spec.blocks for s in b["stages"] for m, _ in s["media"]}
-    return [(1.0, 1.0)] if spec.basis == "pooled" else list(spec.media[min(used)]["lots"].values())
+def lot_names(spec: Spec) -> list[str]:
+    """Lots run on any medium that some stage may use; none on the pooled basis."""
+    if spec.basis == "pooled":
+        return []
+    return sorted({n for b in spec.blocks for s in b["stages"] for m, _ in s["media"] for n in spec.media[m]["lots"]})
 
 
 @dataclass(frozen=True)
@@ -253,11 +253,21 @@ class Option:
 def holder_cost(spec: Spec, module: str, count: int) -> float:
     """The cheapest holders for a count, per batch."""
     offers = [
-        math.ceil(count / h["slots"]) * h["price"] / h["batches"]
+        max(math.ceil(count / h["slots"]) - h.get("owned", 0), 0) * h["price"] / h["batches"]
         for h in spec.holders.values()
         if module in h["modules"]
     ]
     return min(offers, default=0.0)
+
+
+def counts_of(stage: dict[str, Any], module: str, most: int) -> range:
+    """Counts of a module that a stage may have, by the catalog and its own `fix` or `count`."""
+    fix, bounds = stage.get("fix"), stage.get("count")
+    if fix is not None:
+        if fix.get("module", module) != module:
+            return range(0)
+        return range(fix["count"], fix["count"] + 1) if "count" in fix else range(1, most + 1)
+    return range(1, most + 1) if bounds is None else range(bounds[0], min(bounds[1], most) + 1)
 
 
 def options_of(spec: Spec, block: dict[str, Any], stage: dict[str, Any]) -> list[Option]:
@@ -266,10 +276,11 @@ def options_of(spec: Spec, block: dict[str, Any], stage: dict[str, Any]) -> list
     titer, value, recovered = spec.product
     for medium, after in stage["media"]:
         m = spec.media[medium]
-        lots = lots_of(spec)
+        lots = multipliers(spec, medium)
         cap = m["limit"] if m["limit"] is not None else m["tested"] / max(kappa for _, kappa in lots)
+        cap = min(cap, m.get("turbid") or INFINITE)
         for module, entry in spec.modules.items():
-            for count in range(1, entry["max_count"] + 1) if entry["medium"] == medium else ():
+            for count in counts_of(stage, module, entry["max_count"]) if entry["medium"] == medium else ():
                 area = entry["area"] * count
                 loading = spec.safety_factor * spec.volume / (m["scale_up"] * area)
                 if loading > cap * (1 + 1e-12):
@@ -281,7 +292,7 @@ def options_of(spec: Spec, block: dict[str, Any], stage: dict[str, Any]) -> list
                     entry["price"] * count + holder_cost(spec, module, count) + (m["flush"] or 0.0) * area * spec.flush
                     + (1 - recovered) * titer * value * entry["hold_up"] * count
                 )  # fmt: skip
-                tau = spec.volume / (area * m["flux"])
+                tau = spec.volume / (area * (m.get("own_flux") or m["flux"]))
                 upstream = tuple(after) if after else None
                 out.append(Option(medium, upstream, module, count, area, cost, tau, spent, loading))
     return out
@@ -292,7 +303,7 @@ def least_time(spec: Spec, block: dict[str, Any], picks: list[Option]) -> float:
     line, static, volume = block["line"], block["static"], spec.volume
     low, high = block["pump"] or (None, None)
     least = volume / high if high else 0.0
-    for s in range(len(lots_of(spec))):
+    for s in range(max(len(lot_names(spec)), 1)):
         total = sum(p.demand[s] for p in picks) + line * volume
         least = max(least, total / (block["pressure"] - static))
         if block["operation"] == "constant-flow":
