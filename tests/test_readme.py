@@ -33,7 +33,7 @@ def test_the_first_two_commands_are_complete_one_liners() -> None:
     assert "\n" not in test
     assert design.startswith("python3 -m venv .venv && .venv/bin/pip install")
     assert "trainopt design scenarios/" in design
-    assert "[test]" in test
+    assert "[test,bench]" in test
     assert ".venv/bin/pytest" in test
 
 
