@@ -332,7 +332,8 @@ class Flush(Entry):
 
 
 class Variability(Entry):
-    """Spread between modules and media lots: log-normal with mean 1 (default: estimated from three or more lots)."""
+    """Spread between modules and media lots: log-normal with mean 1, drawn for each stage by itself (default: what
+    three or more lots show; none with fewer)."""
 
     resistance: Spread | None = None
     """Coefficient of variation of the resistance."""
@@ -356,7 +357,7 @@ class Medium(Entry):
     flush: Flush | None = None
     """The flush before use."""
     variability: Variability | None = None
-    """Spread between modules and media lots, for a reliability basis (not used yet)."""
+    """Spread between modules and media lots, for a reliability basis and the chance of finishing in a rating."""
 
     _source: Source = PrivateAttr(default=Source(Path(), "(built in Python)", ""))
 

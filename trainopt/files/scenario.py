@@ -220,8 +220,8 @@ class Scenario(Entry):
     safety_factor: Annotated[float, Number(Range(least=1.0), "1.5")] = 1.0
     """Derating of every area (common practice for clarification: 1.5 to 1.6)."""
     basis: Basis = "worst-lot"
-    """Which lots a design must hold for: pooled or worst-lot. A mapping {reliability: 0.95, samples: 400, seed: 1} is
-    read but cannot be designed for yet."""
+    """Which lots a design must hold for: pooled, worst-lot, or a mapping {reliability: 0.95, samples: 400, seed: 1}:
+    all but a share of sampled lots."""
     schedule: Annotated[Literal["sequential", "side-by-side"], Choice(SCHEDULES)] = "sequential"
     """Whether blocks run one after the other or side by side."""
     blocks: tuple[BlockSpec, ...]
@@ -229,7 +229,7 @@ class Scenario(Entry):
     costs: Costs = Costs()
     """What a batch costs beside modules and holders."""
     feed_variability: FeedVariability | None = None
-    """Spread from batch to batch, for a reliability basis (not used yet)."""
+    """Spread from batch to batch, for a reliability basis and the chance of finishing in a rating."""
     installed: dict[str, Installed] | None = None
     """What stands in each stage today, for rating and simulation."""
 

@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from trainopt.study.rate import BatchRating, LotRating, Rating
     from trainopt.study.results import Change, Sweep, SweepCell
     from trainopt.study.simulate import BlockCourse, LotCourse, Simulation
-    from trainopt.train.results import Pick
+    from trainopt.train.results import Chance, Pick
 
 
 def sweep_document(sweep: Sweep) -> Document:
@@ -91,10 +91,18 @@ def rate_document(rating: Rating) -> Document:
         "blocks": [block_document(block) for block in rating.blocks],
         "lots": [_lot(rating, lot) for lot in rating.lots],
         "batches": [_batch(batch) for batch in rating.batches],
+        "chance_of_finishing": chance_document(rating.chance, rating.chance_lots),
         "warnings": [{"code": notice.code, "text": notice.text} for notice in rating.warnings],
         "trainopt": __version__,
         "inputs": dict(rating.inputs),
     }
+
+
+def chance_document(chance: Chance | None, lots: int) -> Document | None:
+    """A share of sampled lots with its 95 % Wilson interval; null where no variability is known."""
+    if chance is None:
+        return None
+    return {"share": chance.share, "interval": [chance.low, chance.high], "lots": lots}
 
 
 def _lot(rating: Rating, lot: LotRating) -> Document:
@@ -114,6 +122,7 @@ def _batch(batch: BatchRating) -> Document:
         "shortest_time_h": batch.shortest_time,
         "safety_factor": batch.safety_factor,
         "limited_by": batch.limited_by,
+        "chance_of_finishing": None if batch.chance is None else batch.chance.share,
     }
 
 

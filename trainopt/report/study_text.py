@@ -7,7 +7,9 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from trainopt.report.beside_text import share
 from trainopt.report.cautions import CAUTIONS
+from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
     NONE,
     Pressure,
@@ -49,6 +51,34 @@ def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: boo
         f"Largest common safety factor for {trimmed(rating.volume)} L: {fixed(rating.safety_factor, 2)}"
         f" (all figures here are with areas divided by {trimmed(rating.derated_by)})."
     )
+    if rating.chance is not None:
+        page.line(_chance(rating))
+    if rating.lots:
+        _rated_lots(page, rating, pressure)
+    if rating.blocks:
+        if rating.lots:
+            page.line(f"  Pressure at the pump at the end of {trimmed(rating.volume)} L, in the time allowed.")
+        _rated_stages(page, rating, pressure)
+    if rating.batches:
+        _rated_batches(page, rating)
+    if rating.warnings:
+        page.heading("Warnings")
+        page.items((text for _, text in grouped(rating.warnings)), "yellow")
+    page.heading("Cautions")
+    page.items(CAUTIONS)
+    return page.render(width, color)
+
+
+def _chance(rating: Rating) -> str:
+    assert rating.chance is not None
+    one = rating.chance
+    return (
+        f"Chance of finishing in time, with what is known to vary: {share(one.share)} ({share(one.low)} to "
+        f"{share(one.high)} with 95 % confidence, {rating.chance_lots} sampled lots)."
+    )
+
+
+def _rated_lots(page: Page, rating: Rating, pressure: Pressure) -> None:
     page.heading("By lot")
     names = [f"{name}\n{pressure.unit}" for name in rating.block_names]
     page.table(
@@ -63,31 +93,25 @@ def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: boo
             for lot in rating.lots
         ],
     )
-    if rating.blocks:
-        page.line(f"  Pressure at the pump at the end of {trimmed(rating.volume)} L, in the time allowed.")
-        _rated_stages(page, rating, pressure)
-    if rating.batches:
-        page.heading("Batches")
-        page.table(
-            ("Batch\nL", "Limited by", "Goes through", "Shortest time\nh", "Safety\nfactor"),
-            [
-                (
-                    trimmed(b.volume),
-                    limit_text(b.limited_by),
-                    "yes" if b.passes else "no",
-                    fixed(b.shortest_time, 2),
-                    fixed(b.safety_factor, 2),
-                )
-                for b in rating.batches
-            ],
-            2,
-        )
-    if rating.warnings:
-        page.heading("Warnings")
-        page.items((notice.text for notice in rating.warnings), "yellow")
-    page.heading("Cautions")
-    page.items(CAUTIONS)
-    return page.render(width, color)
+
+
+def _rated_batches(page: Page, rating: Rating) -> None:
+    page.heading("Batches")
+    page.table(
+        ("Batch\nL", "Limited by", "Goes through", "Shortest time\nh", "Safety\nfactor", "Chance"),
+        [
+            (
+                trimmed(b.volume),
+                limit_text(b.limited_by),
+                "yes" if b.passes else "no",
+                fixed(b.shortest_time, 2),
+                fixed(b.safety_factor, 2),
+                share(None if b.chance is None else b.chance.share),
+            )
+            for b in rating.batches
+        ],
+        2,
+    )
 
 
 def limit_text(limit: str) -> str:

@@ -7,13 +7,13 @@ The volume is an array throughout, so that the largest batch is found in a few c
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
 
-from trainopt.curves.curve import Curve
+from trainopt.curves.curve import Curve, LotCurve
 from trainopt.errors import InputError
 from trainopt.files import BlockSpec, Case
 from trainopt.optimize.times import Choice, Route
@@ -41,10 +41,18 @@ class Train:
     def for_lot(self, lot: int) -> Train:
         """The same train with one lot alone."""
         route = tuple(
-            tuple(replace(c, candidate=replace(c.candidate, curves=(c.candidate.curves[lot],))) for c in block)
+            tuple(replace(c, candidate=replace(c.candidate, curves=c.candidate.curves[lot : lot + 1])) for c in block)
             for block in self.route
         )
         return replace(self, problem=replace(self.problem, lots=(self.problem.lots[lot],)), route=route)
+
+    def with_curves(self, curves: Callable[[Candidate], Sequence[LotCurve]], lots: tuple[str, ...]) -> Train:
+        """The same train with other lots, all of which count by themselves."""
+        route = tuple(
+            tuple(replace(c, candidate=replace(c.candidate, curves=curves(c.candidate))) for c in block)
+            for block in self.route
+        )
+        return replace(self, problem=replace(self.problem, lots=lots, reliability=None), route=route)
 
     def loading(self, choice: Choice, volume: Floats, factor: float | Floats = 1.0) -> Floats:
         """Design loading in L/m² at each volume, at `factor` times the train's own derating."""
@@ -58,15 +66,20 @@ class Train:
             for choice in choices:
                 loading = self.loading(choice, volume, factor)
                 good &= loading <= choice.candidate.loading_cap * (1.0 + CAP_SLACK)
-                good &= np.isfinite(demand(choice.candidate.curves, block.operation, loading)).all(axis=0)
+                finite = np.isfinite(demand(choice.candidate.curves, block.operation, loading))
+                good &= self.problem.enough(finite)
         return good
 
     def needs(self, b: int, volume: Floats, factor: float | Floats = 1.0) -> dict[tuple[str, str], Floats]:
-        """How long one block takes at least by each of its limits, h; keys as in `optimize.times.block_bounds`."""
+        """How long one block takes at least by each of its limits, h; keys as in `optimize.times.block_bounds`.
+
+        Each for the worst lot, on a reliability basis after those that may fail.
+        """
+        worst = self.problem.worst
         block, choices = self.problem.blocks[b], self.route[b]
         line = block.line * volume
         demands = [demand(c.candidate.curves, block.operation, self.loading(c, volume, factor)) for c in choices]
-        total = np.sum(demands, axis=0).max(axis=0) if demands else np.zeros(np.shape(volume))
+        total = worst(np.sum(demands, axis=0)) if demands else np.zeros(np.shape(volume))
         limits = {("", "pump"): volume / block.max_flow, ("", "pressure"): _ratio(total + line, block.head)}
         for place, choice in enumerate(choices):
             one, name = choice.candidate, choice.stage.name
@@ -74,9 +87,9 @@ class Train:
             limits[name, "flux"] = volume / (area * one.flux_limit)
             if block.operation != "constant-flow":
                 continue
-            limits[name, "differential-pressure"] = demands[place].max(axis=0) / one.differential_pressure
+            limits[name, "differential-pressure"] = worst(demands[place]) / one.differential_pressure
             if one.inlet_pressure < block.pressure:
-                downstream = np.sum(demands[place:], axis=0).max(axis=0)
+                downstream = worst(np.sum(demands[place:], axis=0))
                 limits[name, "inlet-pressure"] = _ratio(downstream + line, one.inlet_pressure - block.static)
         return limits
 
@@ -92,8 +105,43 @@ class Train:
         spent = times + setups
         return np.asarray(spent.sum(axis=0) if self.problem.schedule == "sequential" else spent.max(axis=0))
 
+    def lot_times(self, volume: Floats, factor: float | Floats = 1.0) -> Floats:
+        """Shortest time of each block for each lot, h, shape (blocks, lots, n); infinite where a lot fails."""
+        return np.array([self._lot_times(b, volume, factor) for b in range(len(self.problem.blocks))])
+
+    def _lot_times(self, b: int, volume: Floats, factor: float | Floats) -> Floats:
+        block, choices = self.problem.blocks[b], self.route[b]
+        line = block.line * volume
+        demands = [demand(c.candidate.curves, block.operation, self.loading(c, volume, factor)) for c in choices]
+        total = np.sum(demands, axis=0) if demands else np.zeros((len(self.problem.lots), len(volume)))
+        needed = np.maximum(_ratio(total + line, block.head), volume / block.max_flow)
+        for place, choice in enumerate(choices):
+            one = choice.candidate
+            needed = np.maximum(needed, volume / (float(one.options.area[choice.option]) * one.flux_limit))
+            if block.operation != "constant-flow":
+                continue
+            if math.isfinite(one.differential_pressure):
+                needed = np.maximum(needed, demands[place] / one.differential_pressure)
+            if one.inlet_pressure < block.pressure:
+                downstream = np.sum(demands[place:], axis=0) + line
+                needed = np.maximum(needed, _ratio(downstream, one.inlet_pressure - block.static))
+        return np.where(needed * block.min_flow <= volume * (1.0 + 1e-12), needed, np.inf)
+
+    def lots_passing(self, volume: Floats, factor: float | Floats = 1.0) -> Bools:
+        """Whether each volume goes through for each lot by itself in the time allowed, shape (lots, n)."""
+        times = self.lot_times(volume, factor)
+        setups = np.array([block.setup for block in self.problem.blocks])[:, None, None]
+        spent = times + setups
+        total = spent.sum(axis=0) if self.problem.schedule == "sequential" else spent.max(axis=0)
+        return np.asarray(total <= self.problem.time * (1.0 + 1e-12))
+
     def passes(self, volume: Floats, factor: float | Floats = 1.0) -> Bools:
-        """Whether each volume goes through in the time allowed with every limit met."""
+        """Whether each volume goes through in the time allowed with every limit met.
+
+        On a reliability basis: for enough lots, each in its own time.
+        """
+        if self.problem.may_fail:
+            return self.inside_caps(volume, factor) & self.problem.enough(self.lots_passing(volume, factor))
         with np.errstate(invalid="ignore"):
             times = self.shortest(volume, factor)
         slowest = np.array([[b.min_flow] for b in self.problem.blocks])

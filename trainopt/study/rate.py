@@ -13,15 +13,19 @@ import numpy as np
 
 from trainopt.curves.curve import Curve
 from trainopt.errors import InputError
-from trainopt.files import Case
+from trainopt.files import Case, ReliabilityBasis
 from trainopt.optimize.describe import Picked, describe
 from trainopt.optimize.design import design, fit_curves
+from trainopt.optimize.reliability import wilson
 from trainopt.optimize.roots import largest_where
-from trainopt.optimize.times import block_bounds, share_time
+from trainopt.optimize.times import block_bounds, kept_lots, share_time
 from trainopt.study.installed import Train, fixed_train, installed_picks
 from trainopt.train.notices import case_notices
-from trainopt.train.results import BlockDesign, Notice, Pick
+from trainopt.train.results import BlockDesign, Chance, Notice, Pick
+from trainopt.train.sampling import FRESH, FRESH_TIMES
 
+FRESH_LOTS = 4000
+"""Sampled lots that a chance is measured with at least."""
 TIGHT = 1e-6
 """A limit used to within this part of itself is the one that holds."""
 
@@ -47,6 +51,7 @@ class BatchRating:
     shortest_time: float | None
     limited_by: str
     safety_factor: float | None
+    chance: Chance | None = None
 
 
 @dataclass(frozen=True)
@@ -58,6 +63,8 @@ class Rating:
     which the batch still goes through (None: with none); `derated_by` what all areas were divided by;
     `limited_by` what holds the largest batch; `forbidden_by` what forbids the
     scenario's batch at any time ("" where nothing does). `blocks` as in a design, in the time allowed.
+    `chance`: the share of sampled lots with which the batch goes through in that time, each in its own time (None where
+    no variability is known). On a reliability basis the train passes where enough lots do, and no lot is rated alone.
     """
 
     scenario: str
@@ -75,6 +82,8 @@ class Rating:
     batches: tuple[BatchRating, ...]
     block_names: tuple[str, ...] = ()
     forbidden_by: str = ""
+    chance: Chance | None = None
+    chance_lots: int = 0
     warnings: tuple[Notice, ...] = ()
     inputs: Mapping[str, str] = field(default_factory=dict)
 
@@ -96,7 +105,7 @@ def rate(
     bought, own = train_of(case, designed, objective)
     factor = own if safety_factor is None else safety_factor
     train = fixed_train(case, curves, bought, factor)
-    return rate_train(case, curves, train, volumes)
+    return rate_train(case, curves, train, volumes, sampled_train(case, curves, bought, factor))
 
 
 def train_of(case: Case, designed: bool, objective: str | None = None) -> tuple[dict[str, tuple[str, int]], float]:
@@ -110,8 +119,14 @@ def train_of(case: Case, designed: bool, objective: str | None = None) -> tuple[
     return {pick.stage: (pick.module, pick.count) for pick in result.picks}, case.scenario.safety_factor
 
 
-def rate_train(case: Case, curves: Mapping[str, Curve], train: Train, volumes: Sequence[float] = ()) -> Rating:
-    """Rate a fixed train at the scenario's batch and at each of `volumes`."""
+def rate_train(
+    case: Case,
+    curves: Mapping[str, Curve],
+    train: Train,
+    volumes: Sequence[float] = (),
+    sampled: Train | None = None,
+) -> Rating:
+    """Rate a fixed train at the scenario's batch and at each of `volumes`; `sampled` is the same with sampled lots."""
     problem = train.problem
     volume = problem.volume
     largest, shortest = largest_volume(train), shortest_time(train, volume)
@@ -129,13 +144,43 @@ def rate_train(case: Case, curves: Mapping[str, Curve], train: Train, volumes: S
         limited_by=limit_at(train, largest),
         picks=train.picks,
         blocks=() if times is None else _blocks(train, volume, times),
-        lots=tuple(_lot(train, lot, times) for lot in range(len(problem.lots))),
-        batches=tuple(_batch(train, v) for v in volumes),
+        lots=() if problem.may_fail else tuple(_lot(train, lot, times) for lot in range(len(problem.lots))),
+        batches=tuple(_batch(train, v, sampled) for v in volumes),
         block_names=tuple(block.name for block in problem.blocks),
         forbidden_by="" if shortest is not None else limit_at(train, volume),
-        warnings=tuple(case_notices(case, curves)),
+        chance=None if sampled is None else chance_of_finishing(sampled, volume),
+        chance_lots=0 if sampled is None else len(sampled.problem.lots),
+        warnings=tuple(
+            # Only where the areas are in fact divided by it does the safety factor stand on top of the samples.
+            notice
+            for notice in case_notices(case, curves)
+            if notice.code != "two-margins" or problem.safety_factor > 1.0
+        ),
         inputs=case.inputs(),
     )
+
+
+def sampled_train(
+    case: Case, curves: Mapping[str, Curve], bought: Mapping[str, tuple[str, int]], factor: float
+) -> Train | None:
+    """The train with lots sampled apart from any it was designed for; None where nothing is known to vary."""
+    basis = case.scenario.basis
+    given = ReliabilityBasis(reliability=0.5, samples=1) if isinstance(basis, str) else basis
+    lots = max(FRESH_LOTS, FRESH_TIMES * given.samples)
+    few = case.scenario.model_copy(update={"basis": given.model_copy(update={"samples": 1})})
+    few.__pydantic_private__ = case.scenario.__pydantic_private__
+    train = fixed_train(replace(case, scenario=few), curves, bought, factor)
+    samplers = [choice.candidate.sampler for choices in train.route for choice in choices]
+    if not any(one is not None and one.varies for one in samplers):
+        return None
+    return train.with_curves(lambda one: one.sampler.curves(lots, FRESH) if one.sampler is not None else one.curves,
+                             tuple(f"sample {k}" for k in range(1, lots + 1)))  # fmt: skip
+
+
+def chance_of_finishing(sampled: Train, volume: float) -> Chance:
+    """The share of sampled lots with which `volume` L go through, each in its own time."""
+    passing = sampled.lots_passing(np.array([volume]))[:, 0]
+    return wilson(int(passing.sum()), len(passing))
 
 
 def largest_volume(train: Train) -> float:
@@ -157,6 +202,10 @@ def shortest_time(train: Train, volume: float) -> float | None:
         return None
     times = train.shortest(v)
     total = float(train.total(times)[0])
+    if train.problem.may_fail:
+        own = train.total(np.moveaxis(train.lot_times(v), 1, 2)[:, 0, :])
+        slowest = float(train.problem.worst(own[:, None])[0])
+        return slowest if math.isfinite(slowest) else None
     held = any(
         float(t) * b.min_flow > volume * (1.0 + 1e-12) for t, b in zip(times[:, 0], train.problem.blocks, strict=True)
     )
@@ -203,7 +252,8 @@ def times_at(train: Train, volume: float) -> tuple[float, ...] | None:
     time allowed in proportion to what each block needs. None where a stage is past its pole or no time is
     left."""
     problem, route = train.at(volume)
-    bounds = [block_bounds(b, c, volume) for b, c in zip(problem.blocks, route, strict=True)]
+    lots = kept_lots(problem, route) if problem.may_fail else None
+    bounds = [block_bounds(b, c, volume, lots) for b, c in zip(problem.blocks, route, strict=True)]
     shared = share_time(replace(problem, objective="area"), bounds)
     if shared is not None:
         return shared
@@ -263,11 +313,12 @@ def _lot(train: Train, lot: int, times: tuple[float, ...] | None) -> LotRating:
     )
 
 
-def _batch(train: Train, volume: float) -> BatchRating:
+def _batch(train: Train, volume: float, sampled: Train | None) -> BatchRating:
     return BatchRating(
         volume=volume,
         passes=bool(train.passes(np.array([volume]))[0]),
         shortest_time=shortest_time(train, volume),
         limited_by=limit_at(train, volume),
         safety_factor=largest_derating(train, volume),
+        chance=None if sampled is None else chance_of_finishing(sampled, volume),
     )

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -11,6 +11,7 @@ import numpy as np
 from trainopt.curves.curve import Curve
 from trainopt.files import Case
 from trainopt.optimize.design import fit_curves
+from trainopt.optimize.holding import shown_lots
 from trainopt.study.installed import Train, fixed_train
 from trainopt.study.rate import times_at, train_of
 from trainopt.train import march
@@ -106,8 +107,9 @@ def simulate_train(
     """March `volume` L through a fixed train."""
     problem = train.problem
     times = times_at(train, volume) or even_times(train)
+    lots = _shown(train, volume, times)
     blocks = tuple(
-        _block(train, curves, b, mode or block.operation, volume, times[b], points)
+        _block(train, curves, b, mode or block.operation, volume, times[b], points, lots)
         for b, block in enumerate(problem.blocks)
         if train.route[b]
     )
@@ -123,6 +125,22 @@ def simulate_train(
         blocks=blocks,
         inputs=case.inputs(),
     )
+
+
+def _shown(train: Train, volume: float, times: tuple[float, ...]) -> list[int]:
+    """The lots to march: all, or of sampled ones the slowest that the train holds and some spread below it."""
+    count = len(train.problem.lots)
+    if not train.problem.may_fail:
+        return list(range(count))
+    problem, route = train.at(volume)
+    lots = shown_lots(problem, route, times)
+    spent = train.lot_times(np.array([volume]))[:, lots, 0].sum(axis=0)
+    order = lots[np.argsort(-spent, kind="stable")]
+    places = np.unique(np.linspace(0, len(order) - 1, min(_MARCHED, len(order))).astype(int))
+    return [int(order[place]) for place in places]
+
+
+_MARCHED = 6
 
 
 def even_times(train: Train) -> tuple[float, ...]:
@@ -147,7 +165,14 @@ def march_stages(train: Train, b: int, lot: int) -> list[MarchStage]:
 
 
 def _block(
-    train: Train, curves: Mapping[str, Curve], b: int, mode: str, volume: float, time: float, points: int
+    train: Train,
+    curves: Mapping[str, Curve],
+    b: int,
+    mode: str,
+    volume: float,
+    time: float,
+    points: int,
+    lots: Sequence[int],
 ) -> BlockCourse:
     block = train.problem.blocks[b]
     flow = volume / time
@@ -158,7 +183,7 @@ def _block(
         static=block.static,
         time=time,
         flow=None if mode == "constant-pressure" else flow,
-        lots=tuple(_lot(train, curves, b, lot, mode, volume, time, points) for lot in range(len(train.problem.lots))),
+        lots=tuple(_lot(train, curves, b, lot, mode, volume, time, points) for lot in lots),
     )
 
 
