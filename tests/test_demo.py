@@ -194,3 +194,15 @@ def test_the_demo_is_as_large_as_promised() -> None:
     assert {run.lot for run in runs} == {"a", "b", "c"}
     flags = {flag.code for medium in workspace.media.values() for flag in trainopt.fit_curve(medium).flags}
     assert "pump-slip" in flags
+
+
+def test_the_reliable_harvest_needs_less_than_the_blanket_factor(designs: dict[str, trainopt.Design]) -> None:
+    """19 of 20 batches against a factor of 1.5 for every one: the samples say what the factor is worth."""
+    reliable, blanket = trainopt.design(case("harvest-reliable")), designs["harvest"]
+    sure = reliable.reliability
+    assert sure is not None
+    assert reliable.area is not None
+    assert blanket.area is not None
+    assert 23.0 < reliable.area < 26.0 < blanket.area
+    assert sure.in_sample >= 0.95
+    assert sure.equivalent_safety_factor == pytest.approx(1.2, abs=0.05)

@@ -47,9 +47,15 @@ class Train:
         return replace(self, problem=replace(self.problem, lots=(self.problem.lots[lot],)), route=route)
 
     def with_curves(self, curves: Callable[[Candidate], Sequence[LotCurve]], lots: tuple[str, ...]) -> Train:
-        """The same train with other lots, all of which count by themselves."""
+        """The same train with other lots, each counted by itself; how far each may be loaded is in its curve."""
         route = tuple(
-            tuple(replace(c, candidate=replace(c.candidate, curves=curves(c.candidate))) for c in block)
+            tuple(
+                replace(
+                    c,
+                    candidate=replace(c.candidate, curves=curves(c.candidate), loading_cap=c.candidate.further_cap),
+                )
+                for c in block
+            )
             for block in self.route
         )
         return replace(self, problem=replace(self.problem, lots=lots, reliability=None), route=route)
@@ -133,7 +139,10 @@ class Train:
         setups = np.array([block.setup for block in self.problem.blocks])[:, None, None]
         spent = times + setups
         total = spent.sum(axis=0) if self.problem.schedule == "sequential" else spent.max(axis=0)
-        return np.asarray(total <= self.problem.time * (1.0 + 1e-12))
+        inside = np.full(np.shape(volume), True)
+        for choice in (choice for choices in self.route for choice in choices):
+            inside &= self.loading(choice, volume, factor) <= choice.candidate.loading_cap * (1.0 + CAP_SLACK)
+        return np.asarray((total <= self.problem.time * (1.0 + 1e-12)) & inside)
 
     def passes(self, volume: Floats, factor: float | Floats = 1.0) -> Bools:
         """Whether each volume goes through in the time allowed with every limit met.
