@@ -36,6 +36,16 @@ DESIGN = {
     "saving": {"area_m2": NUMBER, "area_percent": NUMBER, "cost": NUMBER, "cost_percent": MAYBE},
     "warnings": [{"code": TEXT, "text": TEXT}], "trainopt": TEXT, "inputs": {"*": TEXT},
 }  # fmt: skip
+ROUTES = {
+    "allowed": "whole",
+    "designs": [{"media": [[TEXT]], "status": TEXT, "objective": MAYBE, "area_m2": MAYBE, "cost": MAYBE,
+                 "picks": "list"}],
+}  # fmt: skip
+SOLVER = {
+    "name": TEXT, "version": TEXT, "modeler": TEXT, "modeler_version": TEXT, "seed": "whole", "threads": "whole",
+    "time_limit_s": MAYBE, "relative_gap": NUMBER, "feasibility_tolerance_h": NUMBER,
+    "solves": "whole", "rows": "whole", "columns": "whole",
+}  # fmt: skip
 AREA_PARTS = [{"name": TEXT, "m2": NUMBER, "cost": NUMBER}]
 CURVE = {
     "schema": TEXT, "medium": TEXT, "law": TEXT,
@@ -53,6 +63,7 @@ KINDS = {
     "text or null": lambda v: v is None or isinstance(v, str),
     NUMBER: lambda v: isinstance(v, int | float) and not isinstance(v, bool) and math.isfinite(v),
     MAYBE: lambda v: v is None or (isinstance(v, int | float) and math.isfinite(v)),
+    "list": lambda v: isinstance(v, list),
     "whole": lambda v: isinstance(v, int) and not isinstance(v, bool),
     "rows": lambda v: v is None or (len(v) == 2 and all(isinstance(row, int) for row in v)),
 }
