@@ -201,14 +201,18 @@ def bounds(index: Index, known: Bounds | None = None) -> Bounds:
         option = np.maximum(option, bound)
     if known is not None:
         return Bounds(worst_but(option, spared), (), priced.lots, prices)
-    least = _paths(priced, prices).least - prices * priced.allowed
-    # The lot that the others leave to decide: its cheapest routes at rising prices are ever larger designs.
-    lot = int(np.argsort(-least, kind="stable")[min(spared, len(least) - 1)])
-    one = _priced(index, priced.lots[[lot]])
+    return Bounds(worst_but(option, spared), _promising(priced, spared), priced.lots, prices)
+
+
+def _promising(priced: _Priced, spared: int) -> tuple[tuple[int, ...], ...]:
+    """Picks for a lot as bad in every option as the worst that must hold: its cheapest routes at rising prices."""
+    weight, hours = (worst_but(table, spared)[None, :] for table in (priced.weight, priced.hours))
+    one = replace(priced, lots=priced.lots[:1], weight=weight, hours=hours)
+    prices = _best_prices(one)
     picks: dict[tuple[int, ...], None] = {}
-    for factor in np.geomspace(0.7, 50.0, _TRIALS).tolist():
-        picks[tuple(_paths(one, prices[[lot]] * factor).picks[0].tolist())] = None
-    return Bounds(worst_but(option, spared), tuple(picks), priced.lots, prices)
+    for factor in [*np.geomspace(0.7, 3.0, _TRIALS).tolist(), *np.geomspace(4.0, 1e4, _TRIALS // 2).tolist()]:
+        picks[tuple(_paths(one, prices * factor).picks[0].tolist())] = None
+    return tuple(picks)
 
 
 def node_bounds(index: Index) -> tuple[dict[tuple[int, str], float], float]:
