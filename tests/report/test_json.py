@@ -4,14 +4,17 @@ from __future__ import annotations
 
 import json
 import math
+from pathlib import Path
 from typing import Any
 
 import numpy as np
 import pytest
 
+import trainopt
 from tests.report import results
 from trainopt.report.json import curve_document, design_document, dumps, finite
 
+ROOT = Path(__file__).parents[2]
 NUMBER, TEXT = "number", "text"
 MAYBE = "number or null"
 
@@ -37,9 +40,23 @@ DESIGN = {
     "warnings": [{"code": TEXT, "text": TEXT}], "trainopt": TEXT, "inputs": {"*": TEXT},
 }  # fmt: skip
 ROUTES = {
-    "allowed": "whole",
+    "allowed": "whole", "proven": "flag",
     "designs": [{"media": [[TEXT]], "status": TEXT, "objective": MAYBE, "area_m2": MAYBE, "cost": MAYBE,
                  "picks": "list"}],
+}  # fmt: skip
+RELIABILITY = {
+    "target": NUMBER, "in_sample": NUMBER, "fresh": NUMBER, "fresh_interval": [NUMBER], "samples": "whole",
+    "fresh_samples": "whole", "even_split_fresh": MAYBE, "even_split_interval": [NUMBER],
+    "equivalent_safety_factor": MAYBE,
+    "safety_factor_design": {"safety_factor": NUMBER, "area_m2": MAYBE, "cost": MAYBE, "fresh": MAYBE,
+                             "fresh_interval": [NUMBER]},
+    "seed": "whole",
+}  # fmt: skip
+ALTERNATIVES = {
+    "gap": NUMBER, "asked": "whole", "proven": "flag",
+    "designs": [{"objective": NUMBER, "area_m2": NUMBER, "cost": NUMBER, "picks": "list",
+                 "blocks": [{"block": TEXT, "time_h": NUMBER, "spare_bar": NUMBER}],
+                 "spare_time_h": NUMBER, "safety_factor": MAYBE}],
 }  # fmt: skip
 SOLVER = {
     "name": TEXT, "version": TEXT, "modeler": TEXT, "modeler_version": TEXT, "seed": "whole", "threads": "whole",
@@ -64,6 +81,7 @@ KINDS = {
     NUMBER: lambda v: isinstance(v, int | float) and not isinstance(v, bool) and math.isfinite(v),
     MAYBE: lambda v: v is None or (isinstance(v, int | float) and math.isfinite(v)),
     "list": lambda v: isinstance(v, list),
+    "flag": lambda v: isinstance(v, bool),
     "whole": lambda v: isinstance(v, int) and not isinstance(v, bool),
     "rows": lambda v: v is None or (len(v) == 2 and all(isinstance(row, int) for row in v)),
 }
@@ -139,3 +157,17 @@ def test_numpy_scalars_are_plain_numbers() -> None:
 def test_what_has_no_place_in_json_is_refused() -> None:
     with pytest.raises(TypeError, match="object"):
         finite({"x": object()})
+
+
+def test_a_reliable_design_and_its_alternatives_keep_their_shapes() -> None:
+    case = trainopt.load_case(ROOT / "scenarios" / "harvest-reliable.yaml")
+    document = json.loads(dumps(design_document(trainopt.design(case, alternatives=3, gap=0.1))))
+    assert_shape(document["reliability"], RELIABILITY)
+    assert_shape(document["alternatives"], ALTERNATIVES)
+    sure = document["reliability"]
+    assert sure["fresh_interval"][0] < sure["fresh"] < sure["fresh_interval"][1]
+    assert sure["in_sample"] >= sure["target"]
+    values = [one["objective"] for one in document["alternatives"]["designs"]]
+    assert values == sorted(values)
+    assert values[0] == document["objective"]["value"]
+    assert values[-1] <= values[0] * 1.1 * (1.0 + 1e-9)

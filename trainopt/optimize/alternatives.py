@@ -9,10 +9,10 @@ from dataclasses import replace
 from trainopt.optimize.bounds import bounds, node_bounds, within
 from trainopt.optimize.describe import Picked, cost_parts, total_area
 from trainopt.optimize.even_split import routes
-from trainopt.optimize.index import Index, Node, index_problem
+from trainopt.optimize.index import SINK, SOURCE, Index, Node, index_problem
 from trainopt.optimize.margins import common_safety_factor
 from trainopt.optimize.restate import picks_of
-from trainopt.optimize.search import TIE, Cut, Found, SolverOptions, best_route, fixed_order, searched
+from trainopt.optimize.search import TIE, Clock, Cut, Found, SolverOptions, best_route, fixed_order, searched
 from trainopt.optimize.times import Route, block_bounds
 from trainopt.train.build import prune
 from trainopt.train.problem import DesignProblem, Stage
@@ -38,9 +38,9 @@ def near_designs(problem: DesignProblem, best: Found, count: int, gap: float, op
     order = dict(zip(index.names, fixed_order(index).tolist(), strict=True))
     designs = [_near(problem, best.route, best.times, best.objective)]
     cuts = [_cut(best.route)]
-    status = "optimal"
+    status, clock = "optimal", Clock(options)
     while len(designs) < count:
-        found = searched(few, options, order, cuts, known)
+        found = searched(few, clock.left(), order, cuts, known)
         status = found.status
         if found.route is None or found.times is None or found.objective > ceiling + TIE * max(1.0, abs(ceiling)):
             break
@@ -84,18 +84,34 @@ def route_designs(problem: DesignProblem, best: Found, options: SolverOptions) -
     assert best.route is not None
     index = _all_nodes(problem)
     own = tuple((p.stage, p.medium) for p in picks_of(best.route))
+    allowed = _number_of_routes(index) - 1
+    if allowed > _TOO_MANY:
+        return RouteDesigns((), allowed, False)
     others = [r for r in _bounded(index) if _media(r[1]) != own]
-    if len(others) > _TOO_MANY:
-        return RouteDesigns((), len(others))
     others.sort(key=lambda r: (r[0], _media(r[1])))
+    clock = Clock(options)
     designs: list[RouteDesign] = []
     for bound, nodes in others:
         worst = designs[ROUTES - 1].objective if len(designs) >= ROUTES else None
         if len(designs) >= ROUTES and (worst is None or bound > worst):
             break
-        designs.append(_route_design(problem, nodes, options))
+        found = _route_design(problem, nodes, clock.left())
+        if found is None:
+            return RouteDesigns(tuple(designs[:ROUTES]), allowed, False)
+        designs.append(found)
         designs.sort(key=lambda d: (math.inf if d.objective is None else d.objective, d.media))
-    return RouteDesigns(tuple(designs[:ROUTES]), len(others))
+    return RouteDesigns(tuple(designs[:ROUTES]), allowed, True)
+
+
+def _number_of_routes(index: Index) -> int:
+    """How many routes the arcs allow, counted without going through them."""
+    onward: dict[int, int] = {SINK: 1}
+    heads: dict[int, list[int]] = {}
+    for tail, head in index.arcs:
+        heads.setdefault(tail, []).append(head)
+    for n in [*range(len(index.nodes) - 1, -1, -1), SOURCE]:
+        onward[n] = sum(onward.get(head, 0) for head in heads.get(n, []))
+    return onward[SOURCE]
 
 
 def _all_nodes(problem: DesignProblem) -> Index:
@@ -116,7 +132,8 @@ def _bounded(index: Index) -> Iterator[tuple[float, tuple[Node, ...]]]:
         yield math.fsum(parts) + constant if all(map(math.isfinite, parts)) else math.inf, nodes
 
 
-def _route_design(problem: DesignProblem, nodes: tuple[Node, ...], options: SolverOptions) -> RouteDesign:
+def _route_design(problem: DesignProblem, nodes: tuple[Node, ...], options: SolverOptions) -> RouteDesign | None:
+    """The best design of one route; None where a limit stopped the solver before it was proven."""
     used = {(node.block, node.stage): node.candidate.medium for node in nodes}
 
     def only(b: int, i: int, stage: Stage) -> Stage:
@@ -131,6 +148,8 @@ def _route_design(problem: DesignProblem, nodes: tuple[Node, ...], options: Solv
     )
     narrowed = prune(replace(problem, blocks=blocks))
     found = best_route(narrowed, options)
+    if found.status == "limit":
+        return None
     if found.route is None or found.times is None:
         return RouteDesign(_media(nodes), None, None, None, ())
     return RouteDesign(

@@ -18,7 +18,7 @@ from trainopt.optimize.margins import common_safety_factor
 from trainopt.optimize.reasons import reasons
 from trainopt.optimize.recheck import recheck
 from trainopt.optimize.reliability import Bought, reliability
-from trainopt.optimize.search import Found, SolverOptions, best_route
+from trainopt.optimize.search import Clock, Found, SolverOptions, best_route
 from trainopt.optimize.solve import FEASIBILITY, GAP, solver_version
 from trainopt.train.build import build_problem, prune, used_media
 from trainopt.train.notices import (
@@ -102,6 +102,7 @@ def design(
     full = prepared.problem
     problem = prune(full)
     options = solver or SolverOptions(time_limit=time_limit)
+    clock = Clock(options)
     found = best_route(problem, options)
     if found.route is None or found.times is None:
         return _no_design(prepared, found)
@@ -133,24 +134,26 @@ def design(
         proof=proof_of(found, options),
     )
     if full.reliability is not None:
-        result = _with_reliability(prepared, result, found, even_pick)
+        result = _with_reliability(prepared, result, found, even_pick, clock.left())
     if parts:
         result = replace(result, area_parts=area_parts(picked.held.full, result))
     if routes:
-        result = replace(result, routes=route_designs(problem, found, options))
+        result = replace(result, routes=route_designs(problem, found, clock.left()))
     if alternatives:
-        result = replace(result, alternatives=near_designs(full, found, alternatives, gap, options))
+        result = replace(result, alternatives=near_designs(full, found, alternatives, gap, clock.left()))
     return result
 
 
-def _with_reliability(prepared: Prepared, result: Design, found: Found, even: EvenPick) -> Design:
+def _with_reliability(
+    prepared: Prepared, result: Design, found: Found, even: EvenPick, options: SolverOptions
+) -> Design:
     """How sure the design is, and what to say where that falls short."""
     full = prepared.problem
     assert found.route is not None
     assert found.times is not None
     bought = Bought(found.route, found.times, full.safety_factor)
     compared = None if even.route is None else Bought(even.route, even.times, full.safety_factor)
-    sure = reliability(full, bought, compared, prepared.usual)
+    sure = reliability(full, bought, compared, prepared.usual, options)
     if sure is None:
         return result
     return replace(result, reliability=sure, warnings=(*result.warnings, *reliability_notices(sure)))

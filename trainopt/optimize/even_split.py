@@ -94,7 +94,7 @@ def even_split(problem: DesignProblem) -> EvenPick:
     sized: dict[tuple[int, int], int | None] = {}
     best: tuple[float, tuple[str, ...], Route] | None = None
     failure = "no allowed route through the stages has modules inside the loading caps"
-    for nodes in routes(index):
+    for nodes in _apart(problem, index, times, sized) or routes(index):
         route, text = _sized_route(problem, nodes, times, sized)
         if route is None:
             failure = text
@@ -103,6 +103,34 @@ def even_split(problem: DesignProblem) -> EvenPick:
         if best is None or key < best[:2]:
             best = (*key, route)
     return EvenPick(best[2], times) if best else EvenPick(None, times, failure)
+
+
+def _apart(
+    problem: DesignProblem, index: Index, times: tuple[float, ...], sized: dict[tuple[int, int], int | None]
+) -> list[tuple[Node, ...]]:
+    """The one route that is best where stages do not touch one another: each stage's best medium by itself.
+
+    Empty where a stage may be left out, a medium asks for another, an inlet rating may bind, or a stage has no medium.
+    """
+    binding = any(n.candidate.inlet_pressure < problem.blocks[n.block].pressure for n in index.nodes)
+    if not index.plain or binding:
+        return []
+    best: list[Node] = []
+    for place, (b, _) in enumerate(index.stages):
+        stages = len(problem.blocks[b].stages)
+        offers = []
+        for node in (node for node in index.nodes if node.place == place):
+            key = (node.options.start, stages)
+            if key not in sized:
+                share = problem.blocks[b].budget(times[b], problem.volume) / stages
+                sized[key] = sized_option(problem, node, share, times[b])
+            option = sized[key]
+            if option is not None:
+                offers.append((float(node.candidate.options.weight[option]), node.candidate.medium, node))
+        if not offers:
+            return []
+        best.append(min(offers, key=lambda offer: offer[:2])[2])
+    return [tuple(best)]
 
 
 def _sized_route(
@@ -141,6 +169,8 @@ def _too_small(block: Block, node: Node, share: float, time: float) -> str:
 
 def _rating_failure(problem: DesignProblem, block: Block, choices: tuple[Choice, ...], time: float) -> str:
     """What fails once all stages are sized: an inlet rating, counted from the downstream end."""
+    if all(choice.candidate.inlet_pressure >= block.pressure for choice in choices):
+        return ""
     lots = None
     if problem.may_fail and choices:
         lots = np.argsort(lot_times(block, choices, problem.volume), kind="stable")[: -problem.may_fail]

@@ -17,6 +17,7 @@ from trainopt.train.problem import DesignProblem
 from trainopt.train.results import Chance, ReliabilityResult, UsualDesign
 from trainopt.train.sampling import FRESH, FRESH_TIMES
 
+SOLVER = SolverOptions()
 _NORMAL_95 = 1.959963984540054
 """Two-sided 95 % point of the normal distribution."""
 
@@ -43,7 +44,11 @@ def wilson(successes: int, trials: int) -> Chance:
 
 
 def reliability(
-    problem: DesignProblem, bought: Bought, even: Bought | None, usual: DesignProblem | None
+    problem: DesignProblem,
+    bought: Bought,
+    even: Bought | None,
+    usual: DesignProblem | None,
+    options: SolverOptions = SOLVER,
 ) -> ReliabilityResult | None:
     """The reliability of a design, of the even split and of the safety-factor design, on the same fresh lots.
 
@@ -63,7 +68,7 @@ def reliability(
         samples=len(problem.lots),
         fresh_samples=lots,
         even_split=None if even is None else measured(problem, even, lots),
-        usual=None if usual is None else _usual(problem, usual, lots),
+        usual=None if usual is None else _usual(problem, usual, lots, options),
         equivalent_safety_factor=equivalent_safety_factor(problem, bought),
         seed=basis.seed,
     )
@@ -93,8 +98,8 @@ def _measured_choice(
     return Choice(choice.stage, replace(one, curves=curves, options=options), 0)
 
 
-def _usual(problem: DesignProblem, usual: DesignProblem, lots: int) -> UsualDesign:
-    found = best_route(prune(usual), SolverOptions())
+def _usual(problem: DesignProblem, usual: DesignProblem, lots: int, options: SolverOptions) -> UsualDesign:
+    found = best_route(prune(usual), options)
     if found.route is None or found.times is None:
         return UsualDesign(usual.safety_factor, None, None, None)
     draws = {(s.name, c.medium): c.sampler for b in problem.blocks for s in b.stages for c in s.candidates}

@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 import time
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -15,7 +15,32 @@ from trainopt.optimize.run import TIE, Cut, Name, Pick, Run, SolverOptions, rout
 from trainopt.optimize.times import Route, block_times, objective_of
 from trainopt.train.problem import DesignProblem, Floats
 
-__all__ = ["TIE", "Cut", "Found", "SolverOptions", "best_route", "fixed_order", "hopeless", "route_of", "searched"]
+__all__ = [
+    "TIE",
+    "Clock",
+    "Cut",
+    "Found",
+    "SolverOptions",
+    "best_route",
+    "fixed_order",
+    "hopeless",
+    "route_of",
+    "searched",
+]
+
+
+class Clock:
+    """Shares one time limit between several searches."""
+
+    def __init__(self, options: SolverOptions) -> None:
+        self.options = options
+        self.deadline = None if options.time_limit is None else time.monotonic() + options.time_limit
+
+    def left(self) -> SolverOptions:
+        """The options with what is left of the time."""
+        if self.deadline is None:
+            return self.options
+        return replace(self.options, time_limit=max(self.deadline - time.monotonic(), 0.0))
 
 
 @dataclass(frozen=True)

@@ -68,6 +68,7 @@ def reliability_document(sure: ReliabilityResult) -> Document:
 def _routes(routes: RouteDesigns) -> Document:
     return {
         "allowed": routes.allowed,
+        "proven": routes.proven,
         "designs": [
             {
                 "media": [list(pair) for pair in route.media],

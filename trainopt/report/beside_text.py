@@ -25,7 +25,7 @@ def beside(page: Page, design: Design, pressure: Pressure) -> None:
         left = design.routes.allowed - len(design.routes.designs)
         if left:
             page.gap()
-            page.line(f"{left} more allowed sequences of media are no better than these.")
+            page.line(_more_routes(left, design.routes.proven))
     if design.alternatives is not None:
         near = design.alternatives
         page.heading(f"The best picks within {share(near.gap)} of the design")
@@ -33,6 +33,12 @@ def beside(page: Page, design: Design, pressure: Pressure) -> None:
         if len(near.designs) < near.asked:
             page.gap()
             page.line(_no_more(len(near.designs), near.proven))
+
+
+def _more_routes(left: int, proven: bool) -> str:
+    if not proven:
+        return f"{left} more sequences of media are allowed; a limit stopped the search before all were looked at."
+    return f"{left} more allowed sequences of media are no better than these."
 
 
 def _no_more(found: int, proven: bool) -> str:

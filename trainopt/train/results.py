@@ -241,10 +241,14 @@ class RouteDesign:
 
 @dataclass(frozen=True)
 class RouteDesigns:
-    """The best designs of other allowed routes, best first, and how many other routes there are."""
+    """The best designs of other allowed routes, best first, and how many other routes there are.
+
+    `proven` False where the solver was stopped, or there are too many routes to go through.
+    """
 
     designs: tuple[RouteDesign, ...]
     allowed: int
+    proven: bool = True
 
 
 @dataclass(frozen=True)
