@@ -37,6 +37,20 @@ def random_workspace(seed: int, *, stages: int = 4, counts: int = 12) -> Spec:
     )  # fmt: skip
 
 
+def alike_workspace(seed: int) -> Spec:
+    """A random workspace where much is alike: few areas, prices by area, media with one curve; so designs tie."""
+    r = Random(seed)
+    spec = random_workspace(seed)
+    for module in spec.modules.values():
+        module["area"] = r.choice([1.0, 1.0, 2.0])
+        module.update(price=100.0 * module["area"], hold_up=module["area"])
+    for name, medium in spec.media.items():
+        if r.random() < 0.6:
+            spec.media[name] = {**spec.media["m0"], "dp": medium["dp"], "inlet": medium["inlet"]}
+    _bear_pressure(spec.blocks, spec.media)
+    return spec
+
+
 def _medium(r: Random) -> dict[str, Any]:
     law = r.choice(sorted(REACH))
     tested = round(r.uniform(150, 900), 1)
