@@ -18,6 +18,7 @@ from scipy.stats import binomtest
 import trainopt
 from trainopt.optimize.design import Prepared, prepare
 from trainopt.optimize.even_split import even_split
+from trainopt.optimize.limits import limits
 from trainopt.optimize.reliability import Bought, measured, wilson
 from trainopt.optimize.restate import Move, restated
 from trainopt.optimize.search import SolverOptions, best_route
@@ -272,3 +273,22 @@ def test_seed_and_threads_do_not_change_a_reliability_design(tmp_path: Path) -> 
     prepared = prepare(trainopt.load_case(path))
     picks = {trainopt.design(prepared, solver=SolverOptions(seed=seed)).picks for seed in range(4)}
     assert len(picks) == 1
+
+
+def test_what_a_little_more_gains_on_a_reliability_basis_is_exact(tmp_path: Path) -> None:
+    path = harvest(tmp_path, "{reliability: 0.9, samples: 40, seed: 1}", extra="feed_variability: {fouling: 0.15}\n")
+    prepared = prepare(trainopt.load_case(path))
+    result = trainopt.design(prepared)
+    found = limits(prepared.problem, result, prepared.curves)
+    assert found is not None
+    assert result.objective is not None
+    times = [gain for gain in found.gains if gain.field == "batch.time_h"]
+    assert times
+    for gain in times:
+        better = trainopt.design(replace(prepared.problem, time=gain.needs))
+        assert better.objective is not None
+        assert better.objective.value == pytest.approx(gain.objective)
+        assert gain.objective < result.objective.value
+        short = trainopt.design(replace(prepared.problem, time=gain.needs * (1.0 - 1e-5)))
+        assert short.objective is not None
+        assert short.objective.value == pytest.approx(result.objective.value)

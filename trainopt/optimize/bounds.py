@@ -205,14 +205,24 @@ def bounds(index: Index, known: Bounds | None = None) -> Bounds:
 
 
 def _promising(priced: _Priced, spared: int) -> tuple[tuple[int, ...], ...]:
-    """Picks for a lot as bad in every option as the worst that must hold: its cheapest routes at rising prices."""
-    weight, hours = (worst_but(table, spared)[None, :] for table in (priced.weight, priced.hours))
-    one = replace(priced, lots=priced.lots[:1], weight=weight, hours=hours)
-    prices = _best_prices(one)
+    """Picks for a lot as bad in every option as the worst that must hold: its cheapest routes at rising prices.
+
+    Where lots may fail, stages may each spare others: lots that are worse by more are tried too.
+    """
     picks: dict[tuple[int, ...], None] = {}
-    for factor in [*np.geomspace(0.7, 3.0, _TRIALS).tolist(), *np.geomspace(4.0, 1e4, _TRIALS // 2).tolist()]:
-        picks[tuple(_paths(one, prices * factor).picks[0].tolist())] = None
-    return tuple(picks)
+    stages = len(priced.index.stages)
+    for few in sorted({spared, spared // 2, spared // stages, spared // (2 * stages), 0}):
+        weight, hours = (worst_but(table, few)[None, :] for table in (priced.weight, priced.hours))
+        one = replace(priced, lots=priced.lots[:1], weight=weight, hours=hours)
+        prices = _best_prices(one)
+        for factor in [*np.geomspace(0.7, 3.0, _TRIALS).tolist(), *np.geomspace(4.0, 1e4, _TRIALS // 2).tolist()]:
+            picks[tuple(_paths(one, prices * factor).picks[0].tolist())] = None
+    weights = priced.index.weight
+
+    def total(pick: tuple[int, ...]) -> float:
+        return float(sum(weights[k] for k in pick if k >= 0))
+
+    return tuple(sorted(picks, key=lambda pick: (total(pick), pick)))
 
 
 def node_bounds(index: Index) -> tuple[dict[tuple[int, str], float], float]:
@@ -242,7 +252,7 @@ def first_design(index: Index, found: Bounds) -> tuple[float, Route | None]:
         if own < value:
             best, value = picks, own
             if index.problem.objective == "area":
-                break  # the picks that follow are larger
+                break  # the picks that follow weigh no less
     if best is None:
         return value, None
     better, value = _improved(index, list(best), value)

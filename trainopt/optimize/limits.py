@@ -7,6 +7,8 @@ from collections.abc import Iterator, Mapping
 from functools import partial
 from typing import TYPE_CHECKING
 
+import numpy as np
+
 from trainopt.curves.curve import Curve
 from trainopt.optimize.area_parts import pooled_curve
 from trainopt.optimize.design import Prepared, prepare
@@ -41,15 +43,14 @@ def limits(problem: DesignProblem, design: Design, curves: Mapping[str, Curve] |
     """What limits a proven design of `problem` (with all its options), or None where there is none.
 
     `curves` gives the flux and temperature that the media were tested at; without them their flux limits stand in.
-    On a reliability basis only what binds is said: each gain would take hundreds of designs over all sampled lots.
     """
     route = route_of_picks(problem, design.picks)
     if route is None or design.objective is None or not design.blocks:
         return None
     return Limits(
         blocks=tuple(_block_limits(problem, design, route)),
-        gains=() if problem.may_fail else tuple(gains(problem, design)),
-        longer_runs=() if problem.may_fail else tuple(longer_runs(problem, design, curves or {})),
+        gains=tuple(gains(problem, design)),
+        longer_runs=tuple(longer_runs(problem, design, curves or {})),
     )
 
 
@@ -191,7 +192,7 @@ def _longer_run(
 ) -> LongerRun:
     objective, picks = better
     area = {m.name: m.area for m in one.modules}
-    worst = max(c.fouling_factor for c in one.curves)
+    worst = float(problem.worst(np.array([curve.fouling_factor for curve in one.curves])))
     loading = max(
         worst * problem.safety_factor * problem.volume / (one.scale_up * area[p.module] * p.count)
         for p in picks if p.medium == one.medium
