@@ -105,7 +105,7 @@ def design(
     clock = Clock(options)
     found = best_route(problem, options)
     if found.route is None or found.times is None:
-        return _no_design(prepared, found)
+        return _no_design(prepared, found, options)
     picked = Picked(full, problem, found.route, found.times)
     recheck(picked.held.problem, picked.held.route, found.times)
     cost, area = cost_parts(problem, found.route, found.times), total_area(found.route)
@@ -198,7 +198,7 @@ def _even(full: DesignProblem) -> tuple[EvenSplit, EvenPick]:
     return result, pick
 
 
-def _no_design(prepared: Prepared, found: Found) -> Design:
+def _no_design(prepared: Prepared, found: Found, options: SolverOptions) -> Design:
     """No pick: proven impossible, or stopped before any was found."""
     full = prepared.problem
     status = "limit" if found.status == "limit" else "infeasible"
@@ -221,6 +221,7 @@ def _no_design(prepared: Prepared, found: Found) -> Design:
         warnings=prepared.notices,
         reasons=why,
         inputs=prepared.inputs,
+        proof=proof_of(found, options),
     )
 
 
