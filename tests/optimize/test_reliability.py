@@ -263,6 +263,9 @@ def test_what_is_missing_for_a_reliability_is_said(tmp_path: Path) -> None:
     path = harvest(tmp_path, "{reliability: 0.9, samples: 50}", factor="1.5")
     codes = {notice.code for notice in trainopt.design(trainopt.load_case(path)).warnings}
     assert "two-margins" in codes
+    few = harvest(tmp_path / "few", "{reliability: 0.95, samples: 10}")
+    notices = [n for n in trainopt.design(trainopt.load_case(few)).warnings if n.code == "few-samples"]
+    assert "20 samples and more would let one fail" in notices[0].text
     other = harvest(tmp_path / "other", "worst-lot", extra="feed_variability: {fouling: 0.1}\n")
     notices = [n for n in trainopt.design(trainopt.load_case(other)).warnings if n.code == "variability-not-used"]
     assert "the feed" in notices[0].text

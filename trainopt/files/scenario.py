@@ -173,7 +173,7 @@ class ReliabilityBasis(Entry):
 
     reliability: Annotated[float, Number(Range(above=0.0, below=1.0), "0.95")]
     """Share of batches that must finish in time and under pressure."""
-    samples: Annotated[int, Count(Range(least=1, most=1_000_000), "400")] = 400
+    samples: Annotated[int, Count(Range(least=1, most=20_000), "400")] = 400
     """Sampled lots the design is made for."""
     seed: Annotated[int, Count(Range(least=0), "1")] = 1
     """Seed of the samples."""

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator, Mapping
 from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
-from trainopt.train.build import POOLED, lots_of, used_media
+from trainopt.train.build import POOLED, lots_of, reliability_of, used_media
 from trainopt.train.flag_notices import flag_notices
 from trainopt.train.problem import Candidate, DesignProblem
 from trainopt.train.results import BlockDesign, Notice, ReliabilityResult
@@ -46,6 +47,13 @@ def _variability_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[No
             "two-margins",
             f"safety factor {scenario.safety_factor:g} derates the area on top of the reliability basis: both margins "
             "are held; safety_factor: 1 leaves the margin to the sampled lots",
+        )
+    basis = reliability_of(scenario.basis)
+    if basis.may_fail == 0:
+        yield Notice(
+            "few-samples",
+            f"with {scenario.basis.samples} samples a reliability of {basis.target:g} lets none of them fail: the "
+            f"design holds for all; {math.ceil((1.0 - 1e-9) / (1.0 - basis.target))} samples and more would let one fail",
         )
     samplers = [
         sampler(scenario, scenario.basis.seed, stage.stage, media[choice.medium], curves[choice.medium], 1.0)
