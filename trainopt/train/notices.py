@@ -49,11 +49,12 @@ def _variability_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[No
             "are held; safety_factor: 1 leaves the margin to the sampled lots",
         )
     basis = reliability_of(scenario.basis)
+    enough = math.ceil((1.0 - 1e-9) / (1.0 - basis.target))
     if basis.may_fail == 0:
         yield Notice(
             "few-samples",
             f"with {scenario.basis.samples} samples a reliability of {basis.target:g} lets none of them fail: the "
-            f"design holds for all; {math.ceil((1.0 - 1e-9) / (1.0 - basis.target))} samples and more would let one fail",
+            f"design holds for all; {enough} samples and more would let one fail",
         )
     samplers = [
         sampler(scenario, scenario.basis.seed, stage.stage, media[choice.medium], curves[choice.medium], 1.0)
