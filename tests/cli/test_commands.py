@@ -12,7 +12,7 @@ import pytest
 from typer.testing import CliRunner
 
 from tests.files.broken_cases import BROKEN, CASE_FILE, SOUND, Broken, write_workspace
-from tests.report.test_json import AREA_PARTS, CURVE, DESIGN, ROUTES, SOLVER, assert_shape, read
+from tests.report.test_json import AREA_PARTS, CURVE, DESIGN, LIMITS, ROUTES, SOLVER, assert_shape, read
 from trainopt.cli.program import program
 
 ROOT = Path(__file__).parents[2]
@@ -68,6 +68,7 @@ def test_design_as_json_is_one_document_and_nothing_else() -> None:
     assert_shape(document.pop("area_parts"), AREA_PARTS)
     assert_shape(document.pop("routes"), ROUTES)
     assert_shape(document.pop("solver"), SOLVER)
+    assert_shape(document.pop("limits"), LIMITS)
     assert_shape(document, DESIGN)
     assert document["inputs"][HARVEST].startswith("sha256:")
     assert any(name.endswith("rye-fine-c.csv") for name in document["inputs"])

@@ -15,6 +15,7 @@ from trainopt.optimize.limits import changes, gains, limits, longer_runs
 from trainopt.optimize.restate import Move, restated
 from trainopt.optimize.staircase import staircase
 from trainopt.train.build import prune
+from trainopt.train.limit_words import block_words, gain_words, longer_run_words
 from trainopt.train.problem import DesignProblem
 from trainopt.train.results import Design, Gain, Pick
 
@@ -26,6 +27,8 @@ def moved(p: DesignProblem, gain: Gain, value: float) -> DesignProblem:
     used = {pick.stage: pick.medium for pick in design(p).picks}
     if gain.field == "batch.time_h":
         return restated(p, Move(time=value))
+    if gain.field == "safety_factor":
+        return restated(p, Move(safety_factor=value))
     if limit == "pressure_bar":
         return restated(p, Move(pressure={place: value}))
     key = (place, used[place])
@@ -53,7 +56,8 @@ def test_gains_of_random_trains_are_exact() -> None:
         for gain in gains(p, solved(p)):
             kind = gain.field.rpartition(".")[2]
             kinds[kind] = kinds.get(kind, 0) + 1
-            assert gain.needs > gain.now, (seed, gain.field)
+            # More of every limit, less of the safety factor.
+            assert (gain.needs < gain.now) is (kind == "safety_factor"), (seed, gain.field)
             assert enumerated(moved(p, gain, gain.needs)) == pytest.approx(gain.objective, rel=1e-9), (seed, gain.field)
             assert gain.saves == pytest.approx(base - gain.objective, rel=1e-9, abs=1e-9), (seed, gain.field)
             just_below = gain.now + (gain.needs - gain.now) * (1.0 - 1e-4)
@@ -168,7 +172,8 @@ def test_what_limits_a_case() -> None:
     assert found is not None
     assert [one.block for one in found.blocks] == ["clarification", "guard"]
     assert {"batch.time_h", "clarification.pressure_bar"} <= {gain.field for gain in found.gains}
-    assert all(gain.saves > 0.0 and gain.needs > gain.now for gain in found.gains)
+    assert all(gain.saves > 0.0 for gain in found.gains)
+    assert all((gain.needs > gain.now) is (gain.field != "safety_factor") for gain in found.gains)
 
 
 def test_changes_in_words() -> None:
@@ -195,3 +200,22 @@ def test_demo_gains_agree_with_designs_of_changed_files(tmp_path: Path) -> None:
         result = trainopt.design(set_field(case, "batch.time", time))
         assert result.objective is not None
         assert result.objective.value == pytest.approx(gain.objective if better else base.objective.value, rel=1e-9)
+
+
+def test_sentences_speak_the_unit_asked_for() -> None:
+    prepared = prepare(trainopt.load_case(DEMO))
+    found = limits(prepared.problem, design(prepared), prepared.curves)
+    assert found is not None
+    for gain in found.gains:
+        assert gain_words(gain) == gain.text
+        if gain.unit == "bar":
+            more = (gain.needs - gain.now) * 14.5038  # psi in a bar, from memory
+            said = float(gain_words(gain, "psi").split(" psi more")[0])
+            assert more <= said <= more * 1.1
+    assert all("bar" not in block_words(block, "kPa") for block in found.blocks)
+    for run in found.longer_runs:
+        assert longer_run_words(run) == run.text
+        assert " kPa at" in longer_run_words(run, "kPa")
+    (factor,) = [gain for gain in found.gains if gain.field == "safety_factor"]
+    assert factor.text.startswith("a safety factor of 1.")
+    assert "in place of 1.5" in factor.text

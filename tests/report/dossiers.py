@@ -11,6 +11,7 @@ from trainopt.curves.curve import Curve
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.stage_figure import StageCurve
+from trainopt.train.limit_words import gain_words
 from trainopt.train.results import (
     AreaPart,
     AreaParts,
@@ -106,11 +107,13 @@ def _parts() -> AreaParts:
 def _limits(name: str = "secondary") -> Limits:
     picks = (Pick("primary", "oat-coarse", "oat-coarse-09", 12),)
     gain = Gain(
-        "clarification.pressure_bar", "bar", 1.4, 1.52, 33.3, 0.9, picks, f"0.12 bar more saves 0.9 m2 in {name}"
-    )
+        "clarification.pressure_bar", "bar", 1.4, 1.52, 33.3, 0.9, picks, "", "'clarification'",
+        f"1 × m fewer in {name}", "0.9 m2",
+    )  # fmt: skip
+    gain = replace(gain, text=gain_words(gain))
     run = LongerRun("rye-fine", 160.0, 210.0, 150.0, 1.93, 32.0, 2.2, picks, "run rye-fine to 210 L/m2")
     return Limits(
-        (BlockLimit("clarification", "pressure", "", 0.97, {"primary": "pressure"}, "leaves 0.04 bar unused"),),
+        (BlockLimit("clarification", "pressure", "", 0.97, {"primary": "pressure"}, "", 1.35, 0.04),),
         (gain,),
         (run,),
     )

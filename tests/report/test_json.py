@@ -26,6 +26,7 @@ STAGE = {
 }  # fmt: skip
 BLOCK = {
     "block": TEXT, "operation": TEXT, "time_h": NUMBER, "setup_h": NUMBER, "flow_L_per_h": NUMBER,
+    "starting_flow_L_per_h": MAYBE,
     "pressure_bar": dict.fromkeys(("limit", "static", "line", "stages", "spare"), NUMBER),
     "budget_bar_h": NUMBER, "demand_bar_h": NUMBER, "stages": [STAGE],
 }  # fmt: skip
@@ -44,6 +45,11 @@ ROUTES = {
     "designs": [{"media": [[TEXT]], "status": TEXT, "objective": MAYBE, "area_m2": MAYBE, "cost": MAYBE,
                  "picks": "list"}],
 }  # fmt: skip
+LIMITS = {
+    "blocks": [{"block": TEXT, "limited_by": TEXT, "stage": TEXT, "used": NUMBER, "stages": {"*": TEXT}, "text": TEXT}],
+}  # fmt: skip
+GAINS = [{"field": TEXT, "unit": TEXT, "now": NUMBER, "needs": NUMBER, "objective": NUMBER, "saves": NUMBER,
+          "picks": "list", "text": TEXT}]  # fmt: skip
 RELIABILITY = {
     "target": NUMBER, "in_sample": NUMBER, "fresh": NUMBER, "fresh_interval": [NUMBER], "samples": "whole",
     "fresh_samples": "whole", "even_split_fresh": MAYBE, "even_split_interval": [NUMBER],
@@ -161,7 +167,10 @@ def test_what_has_no_place_in_json_is_refused() -> None:
 
 def test_a_reliable_design_and_its_alternatives_keep_their_shapes() -> None:
     case = trainopt.load_case(ROOT / "scenarios" / "harvest-reliable.yaml")
-    document = json.loads(dumps(design_document(trainopt.design(case, alternatives=3, gap=0.1))))
+    document = json.loads(dumps(design_document(trainopt.design(case, alternatives=3, gap=0.1, limits=True))))
+    assert_shape(document["limits"].pop("gains"), GAINS)
+    document["limits"].pop("longer_runs")
+    assert_shape(document["limits"], LIMITS)
     assert_shape(document["reliability"], RELIABILITY)
     assert_shape(document["alternatives"], ALTERNATIVES)
     sure = document["reliability"]

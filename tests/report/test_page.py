@@ -193,9 +193,11 @@ def test_parts_add_up_and_gains_are_named() -> None:
     *rows, total = parts.tables[0].rows
     assert sum(row[1] for row in rows) == pytest.approx(total[1])  # type: ignore[misc, arg-type]
     text = words(tree_of("usual"))
-    assert "0.12 bar more saves 0.9 m2 in secondary" in text
+    assert "0.12 bar more for 'clarification' (1.52 bar) saves 0.9 m2: 1 × m fewer in secondary" in text
+    assert "'clarification' leaves 0.04 of 1.35 bar unused" in text
     assert "clarification: pressure" in text
     assert "12 × oat-coarse-09" in text
     psi = report_html(SHAPES["usual"], "psi")
-    assert "0.12 bar more" not in psi  # words in bar are left to the table, which has psi
+    assert "0.12 bar more" not in psi
+    assert "1.8 psi more for" in psi
     assert "22.0" in psi

@@ -35,6 +35,9 @@ def design(
     gap: Annotated[
         float, typer.Option(min=0.0, metavar="PERCENT", help="How much worse than the design these may be.")
     ] = 5.0,
+    limits: Annotated[
+        bool, typer.Option("--limits", help="Say what a little more of each limit would buy, and longer bench runs.")
+    ] = False,
     report: Annotated[
         Path | None,
         typer.Option(metavar="FILE", help="Write the design report too, as .html, .xlsx or .json."),
@@ -57,7 +60,14 @@ def design(
 
             result, dossier = (
                 find_design(
-                    case, kind, time_limit, parts=json, routes=True, alternatives=alternatives, gap=gap / 100.0
+                    case,
+                    kind,
+                    time_limit,
+                    parts=json,
+                    routes=True,
+                    alternatives=alternatives,
+                    gap=gap / 100.0,
+                    limits=limits,
                 ),
                 None,
             )

@@ -93,7 +93,22 @@ def _block(picked: Picked, b: int) -> BlockDesign:
                    None if ideal is None else ideal[place])
             for place in range(len(choices))
         ),
+        starting_flow=_starting_flow(problem, block, choices),
     )  # fmt: skip
+
+
+def _starting_flow(problem: DesignProblem, block: Block, choices: BlockChoice) -> float | None:
+    """(P − Pstatic)/(Σ R(0)/(φ·A) + r) in L/h at the installed areas, for the lot that flows fastest."""
+    if block.operation != "constant-pressure" or not choices:
+        return None
+    clean = [
+        sum(
+            c.candidate.curves[lot].resistance(0.0) / (float(c.candidate.options.area[c.option]) * c.candidate.scale_up)
+            for c in choices
+        )
+        for lot in range(len(problem.lots))
+    ]
+    return block.head / (min(clean) + block.line)
 
 
 def _end_pressures(

@@ -14,6 +14,7 @@ from trainopt.optimize.alternatives import near_designs, route_designs
 from trainopt.optimize.area_parts import area_parts
 from trainopt.optimize.describe import Picked, cost_parts, describe, total_area, total_time
 from trainopt.optimize.even_split import EvenPick, even_split
+from trainopt.optimize.limits import limits as what_binds
 from trainopt.optimize.margins import common_safety_factor
 from trainopt.optimize.reasons import reasons
 from trainopt.optimize.recheck import recheck
@@ -81,13 +82,15 @@ def design(
     routes: bool = False,
     alternatives: int = 0,
     gap: float = 0.05,
+    limits: bool = False,
 ) -> Design:
     """The least area or cost that meets every limit, proven, marched through its batch, beside the even split.
 
     `objective` ("area", "cost") overrides the scenario's, for a case only (`ValueError` else); `time_limit` in s.
     Asked for besides: `parts`, where the area goes; `routes`, the best designs with other media; `alternatives`, so
-    many of the best picks within the relative `gap`, the design included. Raises `InputError` for what is wrong in the
-    files and `DefectError` where the design fails its re-check.
+    many of the best picks within the relative `gap`, the design included; `limits`, what a little more of each limit
+    would gain. Raises `InputError` for what is wrong in the files and `DefectError` where the design fails its
+    re-check.
     """
     if objective is not None and isinstance(what, DesignProblem | Prepared):
         kind = what.objective if isinstance(what, DesignProblem) else what.problem.objective
@@ -135,6 +138,7 @@ def design(
     )
     if full.reliability is not None:
         result = _with_reliability(prepared, result, found, even_pick, clock.left())
+    result = replace(result, limits=what_binds(full, result, prepared.curves, search=limits))
     if parts:
         result = replace(result, area_parts=area_parts(picked.held.full, result))
     if routes:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Mapping
+from dataclasses import replace
 from functools import partial
 from typing import TYPE_CHECKING
 
@@ -11,23 +12,16 @@ import numpy as np
 
 from trainopt.curves.curve import Curve
 from trainopt.optimize.area_parts import pooled_curve
-from trainopt.optimize.design import Prepared, prepare
-from trainopt.optimize.design import design as find_design
 from trainopt.optimize.nearest import TIE, Better, Lever, Picks, nearest_better, solved
-from trainopt.optimize.reasons import rounded
 from trainopt.optimize.restate import Move, route_of_picks
 from trainopt.optimize.times import Route, block_bounds, kept_lots
+from trainopt.train.limit_words import block_words, gain_words, longer_run_words
 from trainopt.train.problem import Block, Candidate, DesignProblem, Stage
 from trainopt.train.results import BlockLimit, Design, Gain, Limits, LongerRun, Pick
 
 if TYPE_CHECKING:
     from trainopt.files import Case
-
-CAPS = {
-    "loading-tested": "the loading tested",
-    "loading-limit": "the loading limit",
-    "turbidity": "the turbidity limit",
-}
+    from trainopt.optimize.design import Prepared
 
 
 def what_limits(what: Case | Prepared, objective: str | None = None) -> Limits | None:
@@ -35,22 +29,30 @@ def what_limits(what: Case | Prepared, objective: str | None = None) -> Limits |
 
     None where no design exists (the design's `reasons` say why); raises what `design` raises.
     """
+    # A design says what binds by this module, which asks for designs only here.
+    from trainopt.optimize.design import Prepared, prepare
+    from trainopt.optimize.design import design as find_design
+
     prepared = what if isinstance(what, Prepared) else prepare(what, objective)
     return limits(prepared.problem, find_design(prepared), prepared.curves)
 
 
-def limits(problem: DesignProblem, design: Design, curves: Mapping[str, Curve] | None = None) -> Limits | None:
+def limits(
+    problem: DesignProblem, design: Design, curves: Mapping[str, Curve] | None = None, search: bool = True
+) -> Limits | None:
     """What limits a proven design of `problem` (with all its options), or None where there is none.
 
     `curves` gives the flux and temperature that the media were tested at; without them their flux limits stand in.
+    `search` False: only what binds, without asking for other designs.
     """
     route = route_of_picks(problem, design.picks)
     if route is None or design.objective is None or not design.blocks:
         return None
     return Limits(
         blocks=tuple(_block_limits(problem, design, route)),
-        gains=tuple(gains(problem, design)),
-        longer_runs=tuple(longer_runs(problem, design, curves or {})),
+        gains=tuple(gains(problem, design)) if search else (),
+        longer_runs=tuple(longer_runs(problem, design, curves or {})) if search else (),
+        searched=search,
     )
 
 
@@ -61,13 +63,8 @@ def _block_limits(problem: DesignProblem, design: Design, route: Route) -> Itera
         (stage, name), time = max(needed.items(), key=lambda item: item[1])
         used = time / shown.time if shown.time > 0.0 else 0.0
         stages = {one.stage: one.limited_by for one in shown.stages}
-        unused = shown.pressure.spare
-        held = [f"'{s}' by {CAPS[why]}" for s, why in stages.items() if why in CAPS]
-        text = f"'{block.name}' leaves {unused:.3g} of {block.head:.3g} bar unused" if unused > 0.0 else (
-            f"'{block.name}' uses all of its {block.head:.3g} bar")  # fmt: skip
-        if held:
-            text += "; held: " + ", ".join(held)
-        yield BlockLimit(block.name, name, stage, used, stages, text)
+        one = BlockLimit(block.name, name, stage, used, stages, "", block.head, shown.pressure.spare)
+        yield replace(one, text=block_words(one))
 
 
 def gains(problem: DesignProblem, design: Design) -> Iterator[Gain]:
@@ -83,11 +80,16 @@ def gains(problem: DesignProblem, design: Design) -> Iterator[Gain]:
         for lever in _levers(problem, design.picks)
         if (better := nearest_better(problem, lever, design.picks, base)) is not None
     ]
-    yield from sorted(found, key=lambda gain: (gain.needs / gain.now, gain.field))
+    yield from sorted(found, key=lambda gain: (max(gain.needs / gain.now, gain.now / gain.needs), gain.field))
 
 
 def _levers(problem: DesignProblem, picks: Picks) -> Iterator[Lever]:
     yield Lever("batch.time_h", "the batch", "h", problem.time, lambda v: Move(time=v))
+    factor = problem.safety_factor
+    if factor > 1.0:
+        # Lowered, never below 1: its divisor is what is raised.
+        lower = partial(_factor_divided, factor)
+        yield Lever("safety_factor", "a safety factor", "", 1.0, lower, factor, lambda v: factor / v)
     used = {pick.stage: pick.medium for pick in picks}
     for block in problem.blocks:
         most = math.inf if block.operation == "constant-flow" else _rating(block)
@@ -127,20 +129,19 @@ def _stage_levers(block: Block, stage: Stage, one: Candidate) -> Iterator[Lever]
         )  # fmt: skip
 
 
+def _factor_divided(factor: float, divisor: float) -> Move:
+    return Move(safety_factor=factor / divisor)
+
+
 def _pressure(block: str, value: float) -> Move:
     return Move(pressure={block: value})
 
 
 def _gain(problem: DesignProblem, lever: Lever, better: Better, base: float, before: Picks) -> Gain:
-    more, unit = better.needs - lever.now, lever.unit
-    if unit == "h" and more < 2.0:
-        more, unit = more * 60.0, "min"
-    saves = base - better.objective
-    text = (
-        f"{rounded(more, 1, 2)} {unit} more for {lever.what} ({rounded(better.needs, 1)} {lever.unit}) saves "
-        f"{_amount(problem, saves)}: {changes(before, better.picks)}"
-    )
-    return Gain(lever.field, lever.unit, lever.now, better.needs, better.objective, saves, better.picks, text)
+    now, needs, saves = lever.shown(lever.now), lever.shown(better.needs), base - better.objective
+    parts = (lever.what, changes(before, better.picks), _amount(problem, saves))
+    gain = Gain(lever.field, lever.unit, now, needs, better.objective, saves, better.picks, "", *parts)
+    return replace(gain, text=gain_words(gain))
 
 
 def _amount(problem: DesignProblem, saves: float) -> str:
@@ -200,8 +201,6 @@ def _longer_run(
     seen = pooled_curve(one) if curve is None else curve.lot_curve(None)
     flux = one.flux_limit if curve is None else curve.tested_flux
     pressure, tested = seen.resistance(loading) * flux, worst * one.loading_cap
-    text = (
-        f"run {one.medium} to {rounded(loading, 1)} L/m2 (so far {tested:.4g}), about {pressure:.2g} bar at "
-        f"{flux:.3g} LMH: up to {_amount(problem, base - objective)} less, if the fitted curve holds that far"
-    )
-    return LongerRun(one.medium, tested, loading, flux, pressure, objective, base - objective, picks, text)
+    saved = _amount(problem, base - objective)
+    run = LongerRun(one.medium, tested, loading, flux, pressure, objective, base - objective, picks, "", saved)
+    return replace(run, text=longer_run_words(run))

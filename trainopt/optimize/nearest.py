@@ -29,7 +29,8 @@ _STEP = 1.1
 
 @dataclass(frozen=True)
 class Lever:
-    """One limit that may be raised from `now` up to `most`: its field with the unit, and how to move it."""
+    """One limit that may be raised from `now` up to `most`: its field with the unit, how to move it, and the value
+    that a user knows it by where that is another."""
 
     field: str
     what: str
@@ -37,6 +38,7 @@ class Lever:
     now: float
     move: Callable[[float], Move]
     most: float = math.inf
+    shown: Callable[[float], float] = float
 
 
 @dataclass(frozen=True)

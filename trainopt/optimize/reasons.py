@@ -9,6 +9,7 @@ from dataclasses import dataclass, replace
 from functools import partial
 
 from trainopt.optimize.levers import Levers, Setting, bearable, moved, nearest
+from trainopt.train.limit_words import rounded
 from trainopt.train.problem import Block, DesignProblem, Stage
 from trainopt.train.results import Reason
 
@@ -230,11 +231,3 @@ def _counts(levers: Levers, stage: str, own: list[int]) -> Reason:
     _, count, module_name = best
     text = f"stage '{stage}' would need {count} × {module_name} on offer (max_count), all else as it is"
     return Reason(text, {field: count}, module_name)
-
-
-def rounded(value: float, direction: int, digits: int = 4) -> str:
-    """So many digits of a value above zero, rounded to the side that still works (+1 up, −1 down)."""
-    places = digits - 1 - math.floor(math.log10(abs(value)))
-    scaled = value * 10.0**places
-    whole = math.ceil(scaled * (1.0 - 5e-8) - 1e-7) if direction > 0 else math.floor(scaled * (1.0 + 5e-8) + 1e-7)
-    return f"{whole / 10.0**places:.{digits}g}"

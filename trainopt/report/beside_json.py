@@ -7,7 +7,18 @@ from typing import TYPE_CHECKING, Any
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
-    from trainopt.train.results import Alternatives, Chance, Design, Pick, Proof, ReliabilityResult, RouteDesigns
+    from trainopt.train.results import (
+        Alternatives,
+        Chance,
+        Design,
+        Gain,
+        Limits,
+        LongerRun,
+        Pick,
+        Proof,
+        ReliabilityResult,
+        RouteDesigns,
+    )
 
 Document = dict[str, Any]
 
@@ -15,6 +26,8 @@ Document = dict[str, Any]
 def beside_document(design: Design) -> Document:
     """The keys of what was asked for or applies; a design without them has none of them."""
     document: Document = {}
+    if design.limits is not None:
+        document["limits"] = limits_document(design.limits)
     if design.reliability is not None:
         document["reliability"] = reliability_document(design.reliability)
     if design.routes is not None:
@@ -120,4 +133,52 @@ def proof_document(proof: Proof) -> Document:
         "solves": proof.solves,
         "rows": proof.rows,
         "columns": proof.columns,
+    }
+
+
+def limits_document(limits: Limits) -> Document:
+    """What binds, and where it was asked for what a little more of each limit would gain."""
+    document: Document = {
+        "blocks": [
+            {
+                "block": block.block,
+                "limited_by": block.limited_by,
+                "stage": block.stage,
+                "used": block.used,
+                "stages": dict(block.stages),
+                "text": block.text,
+            }
+            for block in limits.blocks
+        ]
+    }
+    if limits.searched:
+        document["gains"] = [_gain(gain) for gain in limits.gains]
+        document["longer_runs"] = [_longer_run(run) for run in limits.longer_runs]
+    return document
+
+
+def _gain(gain: Gain) -> Document:
+    return {
+        "field": gain.field,
+        "unit": gain.unit,
+        "now": gain.now,
+        "needs": gain.needs,
+        "objective": gain.objective,
+        "saves": gain.saves,
+        "picks": picks_document(gain.picks),
+        "text": gain.text,
+    }
+
+
+def _longer_run(run: LongerRun) -> Document:
+    return {
+        "medium": run.medium,
+        "tested_L_m2": run.tested,
+        "loading_L_m2": run.loading,
+        "flux_LMH": run.flux,
+        "pressure_bar": run.pressure,
+        "objective": run.objective,
+        "saves": run.saves,
+        "picks": picks_document(run.picks),
+        "text": run.text,
     }

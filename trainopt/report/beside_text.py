@@ -6,14 +6,18 @@ from collections.abc import Iterator, Sequence
 from typing import TYPE_CHECKING
 
 from trainopt.report.numbers import NONE, Pressure, aligned, fixed, money, significant, trimmed
+from trainopt.train.limit_words import block_words, gain_words, longer_run_words
 
 if TYPE_CHECKING:
     from trainopt.report.tables import Page
-    from trainopt.train.results import Chance, Design, NearDesign, Pick, ReliabilityResult, RouteDesign
+    from trainopt.train.results import Chance, Design, Limits, NearDesign, Pick, ReliabilityResult, RouteDesign
 
 
 def beside(page: Page, design: Design, pressure: Pressure) -> None:
     """Add the sections that apply to the page."""
+    if design.limits is not None:
+        page.heading("What limits, and what more would buy" if design.limits.searched else "What limits")
+        page.items(limit_sentences(design.limits, pressure.unit))
     if design.reliability is not None:
         page.heading("Reliability, share of batches that finish inside every limit")
         page.table(("Design", "Area\nm²", "Fresh lots", "95 % interval"), reliability_rows(design), 1)
@@ -45,6 +49,19 @@ def _no_more(found: int, proven: bool) -> str:
     if not proven:
         return "A limit stopped the search: there may be more."
     return "There is no other within that gap." if found == 1 else "There are no more within that gap."
+
+
+def limit_sentences(limits: Limits, units: str) -> list[str]:
+    """What binds in each block, what a little more of each limit gains, what longer bench runs would be worth."""
+    texts = [block_words(block, units) for block in limits.blocks]
+    texts += [gain_words(gain, units) for gain in limits.gains]
+    texts += [longer_run_words(run, units) for run in limits.longer_runs]
+    if limits.searched and len(texts) == len(limits.blocks):
+        texts.append(NO_GAIN)
+    return texts
+
+
+NO_GAIN = "No single limit, moved a little, gives a better design."
 
 
 def share(value: float | None) -> str:

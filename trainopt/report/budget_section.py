@@ -37,6 +37,7 @@ def budget_section(dossier: Dossier, units: str) -> Section:
 
 def _budget_table(caption: str, blocks: tuple[BlockDesign, ...], units: str) -> Table:
     factor = PRESSURE_UNITS[units]
+    starts = any(block.starting_flow is not None for block in blocks)
     rows = tuple(
         (
             block.block,
@@ -45,6 +46,7 @@ def _budget_table(caption: str, blocks: tuple[BlockDesign, ...], units: str) -> 
             block.time,
             block.setup,
             block.flow,
+            *((block.starting_flow,) if starts else ()),
             block.pressure.limit * factor,
             block.pressure.static * factor,
             block.pressure.line * factor,
@@ -60,6 +62,7 @@ def _budget_table(caption: str, blocks: tuple[BlockDesign, ...], units: str) -> 
         Column("Time", "h"),
         Column("Setup", "h"),
         Column("Flow", "L/h", "significant"),
+        *((Column("Flow at start", "L/h", "significant"),) if starts else ()),
         pressure_column("Limit", units),
         pressure_column("Static", units),
         pressure_column("Line", units),

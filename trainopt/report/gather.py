@@ -13,7 +13,6 @@ import numpy as np
 
 from trainopt.curves.uncertainty import band
 from trainopt.optimize.design import Prepared, design, prepare
-from trainopt.optimize.limits import limits
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.numbers import limit_words, trimmed
@@ -36,7 +35,7 @@ LIBRARIES = ("highspy", "pyomo", "numpy", "scipy", "matplotlib")
 def gather(case: Case, objective: str | None = None, time_limit: float | None = None) -> Dossier:
     """Design the case and gather what its report shows; raises what `design` raises."""
     prepared = prepare(case, objective)
-    found = design(prepared, time_limit=time_limit, parts=True)
+    found = design(prepared, time_limit=time_limit, parts=True, limits=True)
     problem = prepared.problem
     options = {"Objective asked for": problem.objective}
     if time_limit is not None:
@@ -57,7 +56,7 @@ def gather(case: Case, objective: str | None = None, time_limit: float | None = 
         date=now(),
         volumes=tuple(_volumes(case, found)),
         area_parts=found.area_parts,
-        limits=limits(problem, found, prepared.curves),
+        limits=found.limits,
     )
 
 

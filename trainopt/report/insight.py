@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
+from trainopt.report.beside_text import NO_GAIN, limit_sentences
 from trainopt.report.content import Column, Kind, Picture, Section, Table, pressure_column, words
 from trainopt.report.numbers import PRESSURE_UNITS, fixed, limit_words, significant, trimmed
 from trainopt.report.parts_figure import parts_figure
@@ -70,18 +71,13 @@ def _limits(limits: Limits, dossier: Dossier, units: str) -> Section:
         tables.append(_gains(limits, unit, units))
     if limits.longer_runs:
         tables.append(_longer_runs(limits, unit, units))
-    texts = (
-        *(block.text for block in limits.blocks),
-        *(gain.text for gain in limits.gains),
-        *(run.text for run in limits.longer_runs),
-    )
-    nothing = "" if limits.gains or limits.longer_runs else "No single limit, moved a little, gives a better design."
+    nothing = "" if limits.gains or limits.longer_runs else NO_GAIN
     return Section(
         "limits",
         "What limits, and what more buys",
         (nothing,) if nothing else (),
         tables=tuple(tables),
-        items=texts if units == "bar" else (),  # their words give pressures in bar
+        items=tuple(text for text in limit_sentences(limits, units) if text != NO_GAIN),
     )
 
 

@@ -11,7 +11,7 @@ import math
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
-from trainopt.report.beside_json import beside_document
+from trainopt.report.beside_json import beside_document, limits_document
 from trainopt.version import __version__
 
 if TYPE_CHECKING:
@@ -23,7 +23,6 @@ if TYPE_CHECKING:
         CostParts,
         Design,
         EvenSplit,
-        Limits,
         Reason,
         Saving,
         StageDesign,
@@ -94,6 +93,7 @@ def block_document(block: BlockDesign) -> Document:
         "time_h": block.time,
         "setup_h": block.setup,
         "flow_L_per_h": block.flow,
+        "starting_flow_L_per_h": block.starting_flow,
         "pressure_bar": {
             "limit": pressure.limit,
             "static": pressure.static,
@@ -228,50 +228,6 @@ def _curve_document(curve: Curve) -> Document:
 def _area_parts(parts: AreaParts) -> list[Document]:
     """Parts that add up to the installed area in m² and to the cost per batch."""
     return [{"name": part.name, "m2": part.area, "cost": part.cost} for part in parts.parts]
-
-
-def limits_document(limits: Limits) -> Document:
-    """What limits a design, the gains of a little more of each limit, and what longer bench runs are worth."""
-    return {
-        "blocks": [
-            {
-                "block": block.block,
-                "limited_by": block.limited_by,
-                "stage": block.stage,
-                "used": block.used,
-                "stages": dict(block.stages),
-                "text": block.text,
-            }
-            for block in limits.blocks
-        ],
-        "gains": [
-            {
-                "field": gain.field,
-                "unit": gain.unit,
-                "now": gain.now,
-                "needs": gain.needs,
-                "objective": gain.objective,
-                "saves": gain.saves,
-                "picks": [[pick.stage, pick.medium, pick.module, pick.count] for pick in gain.picks],
-                "text": gain.text,
-            }
-            for gain in limits.gains
-        ],
-        "longer_runs": [
-            {
-                "medium": run.medium,
-                "tested_L_m2": run.tested,
-                "loading_L_m2": run.loading,
-                "flux_LMH": run.flux,
-                "pressure_bar": run.pressure,
-                "objective": run.objective,
-                "saves": run.saves,
-                "picks": [[pick.stage, pick.medium, pick.module, pick.count] for pick in run.picks],
-                "text": run.text,
-            }
-            for run in limits.longer_runs
-        ],
-    }
 
 
 def report_document(dossier: Dossier) -> Document:

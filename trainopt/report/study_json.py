@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
-from trainopt.report.json import Document, block_document, design_document, limits_document
+from trainopt.report.beside_json import limits_document
+from trainopt.report.json import Document, block_document, design_document
 from trainopt.version import __version__
 
 if TYPE_CHECKING:

@@ -150,10 +150,13 @@ def _blocks(page: Page, blocks: tuple[BlockDesign, ...], pressure: Pressure) -> 
             fixed(block.time, 2),
             fixed(block.setup, 2),
             significant(block.flow),
+            significant(block.starting_flow),
         )
         for block in blocks
     ]
-    page.table(("Block", "Operation", "Time\nh", "Setup\nh", "Flow\nL/h"), times, 2)
+    head = ("Block", "Operation", "Time\nh", "Setup\nh", "Flow\nL/h", "At start\nL/h")
+    kept = len(head) if any(block.starting_flow is not None for block in blocks) else len(head) - 1
+    page.table(head[:kept], [row[:kept] for row in times], 2)
     page.heading(f"Pressure of each block at the end of the batch, {pressure.unit}")
     pressures = [
         (

@@ -311,6 +311,8 @@ def _best_change(problem: DesignProblem, result: Design, found: Limits) -> tuple
     runs = {run.medium for run in found.longer_runs}
     changes: list[tuple[float, str, str]] = []
     for gain in found.gains:
+        if gain.field == "safety_factor":
+            continue  # a margin is no limit to shave; where it is the largest part, the verdict says so by itself
         stage, _, field = gain.field.rpartition(".")
         lever = _FIELDS.get(field, "limits")
         if lever == "longer-bench-run" and media.get(stage) in runs:

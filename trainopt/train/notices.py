@@ -178,15 +178,11 @@ def _candidate(problem: DesignProblem, stage: str, medium: str) -> Candidate:
 def starting_flow_notices(problem: DesignProblem, blocks: tuple[BlockDesign, ...]) -> Iterator[Notice]:
     """At constant pressure the flow is highest at the start: say where it is beyond pump or flux limit."""
     for block, found in zip(problem.blocks, blocks, strict=True):
-        if block.operation != "constant-pressure" or not found.stages:
+        flow = found.starting_flow
+        if flow is None:
             continue
         media = {(s.name, c.medium): c for s in block.stages for c in s.candidates}
         used = [(media[s.stage, s.medium], s) for s in found.stages]
-        resistances = [
-            sum(c.curves[lot].resistance(0.0) / (s.area * c.scale_up) for c, s in used) + block.line
-            for lot in range(len(problem.lots))
-        ]
-        flow = block.head / min(resistances)
         if flow > block.max_flow * (1.0 + 1e-9):
             yield Notice(
                 "starting-flow",

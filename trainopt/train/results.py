@@ -70,7 +70,11 @@ class BlockPressure:
 
 @dataclass(frozen=True)
 class BlockDesign:
-    """One block of a design: `time` and `setup` in h, `flow` in L/h, `budget` and `demand` in bar·h."""
+    """One block of a design: `time` and `setup` in h, `flow` in L/h, `budget` and `demand` in bar·h.
+
+    `starting_flow` in L/h: at constant pressure the flow of the clean train, areas as installed, the lot that flows
+    fastest; None at constant flow.
+    """
 
     block: str
     operation: str
@@ -82,6 +86,7 @@ class BlockDesign:
     demand: float
     worst_lot: str
     stages: tuple[StageDesign, ...]
+    starting_flow: float | None = None
 
 
 @dataclass(frozen=True)
@@ -296,7 +301,7 @@ class Gain:
 
     `field` the limit with its unit ("batch.time_h", "clarification.pressure_bar", "secondary.loading_limit_L_m2", …),
     `now` and `needs` its values in `unit`; `objective` the better design's, `saves` how much less that is, `picks`
-    what it buys.
+    what it buys. `text` says so with pressures in bar; `what` limit, what it `buys` and what is `saved` are its parts.
     """
 
     field: str
@@ -307,6 +312,9 @@ class Gain:
     saves: float
     picks: tuple[Pick, ...]
     text: str
+    what: str = ""
+    buys: str = ""
+    saved: str = ""
 
 
 @dataclass(frozen=True)
@@ -327,12 +335,14 @@ class LongerRun:
     saves: float
     picks: tuple[Pick, ...]
     text: str
+    saved: str = ""
 
 
 @dataclass(frozen=True)
 class BlockLimit:
     """What binds in a block: `limited_by` the limit its time comes closest to ("pressure", "pump", "flux", …), at which
-    `stage` ("" for the block's own); `used` of 1 that limit is; `stages` maps each stage to its own binding limit."""
+    `stage` ("" for the block's own); `used` of 1 that limit is; `stages` maps each stage to its own binding limit. Of
+    the `head` bar that static head leaves, `spare` are not needed."""
 
     block: str
     limited_by: str
@@ -340,15 +350,21 @@ class BlockLimit:
     used: float
     stages: Mapping[str, str]
     text: str
+    head: float | None = None
+    spare: float | None = None
 
 
 @dataclass(frozen=True)
 class Limits:
-    """What limits a design and what a little more of each limit would gain, nearest changes first."""
+    """What limits a design and what a little more of each limit would gain, nearest changes first.
+
+    `searched` False where gains and longer runs were not asked for.
+    """
 
     blocks: tuple[BlockLimit, ...]
     gains: tuple[Gain, ...]
     longer_runs: tuple[LongerRun, ...]
+    searched: bool = True
 
 
 @dataclass(frozen=True)
@@ -359,7 +375,7 @@ class Design:
     None and `reasons` is filled). `area` m², `time` h (process time and setups), `cost` per batch.
     `safety_factor`: the largest common derating at the design's times that still meets every limit.
     `inputs` maps each file read to "sha256:…". `area_parts`, `routes` and `alternatives` are filled where they were
-    asked for, `reliability` on a reliability basis.
+    asked for, `reliability` on a reliability basis; `limits` says what binds, and what more would gain where asked for.
     """
 
     scenario: str
@@ -382,6 +398,7 @@ class Design:
     routes: RouteDesigns | None = None
     alternatives: Alternatives | None = None
     proof: Proof | None = None
+    limits: Limits | None = None
 
     @property
     def picks(self) -> tuple[Pick, ...]:
