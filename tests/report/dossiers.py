@@ -13,17 +13,26 @@ from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.stage_figure import StageCurve
 from trainopt.train.limit_words import gain_words
 from trainopt.train.results import (
+    Alternatives,
     AreaPart,
     AreaParts,
     BlockLimit,
+    Chance,
     Design,
     EvenSplit,
     Gain,
     Limits,
     LongerRun,
+    NearDesign,
     Notice,
     Pick,
+    Proof,
+    ReliabilityResult,
+    RouteDesign,
+    RouteDesigns,
     Saving,
+    SpareBlock,
+    UsualDesign,
 )
 
 LONG = "a-name-that-goes-on-" * 10
@@ -119,6 +128,24 @@ def _limits(name: str = "secondary") -> Limits:
     )
 
 
+def beside(design: Design, name: str = "oat-coarse") -> Design:
+    """The design with what stands beside it: near designs, other media, reliability, the proof."""
+    picks = tuple(Pick(s.stage, s.medium, s.module, s.count) for b in design.blocks for s in b.stages)
+    spare = tuple(SpareBlock(block.block, block.time, 0.03 * n) for n, block in enumerate(design.blocks))
+    near = tuple(NearDesign(32.4 + 0.3 * n, 32.4 + 0.3 * n, 36144.0, picks, spare, 0.1 * n, 1.5) for n in range(3))
+    media = tuple((s.stage, name) for b in design.blocks for s in b.stages)
+    routes = (RouteDesign(media, 34.8, 34.8, 40453.0, picks), RouteDesign(media[:1], None, None, None, ()))
+    sure = ReliabilityResult(
+        0.95, 0.955, Chance(0.9475, 0.94, 0.954), 400, 4000, Chance(0.91, 0.9, 0.92),
+        UsualDesign(1.5, 36.3, 40169.0, Chance(1.0, 0.999, 1.0)), 1.21, 1,
+    )  # fmt: skip
+    proof = Proof("HiGHS", "1.0", "Pyomo", "6.0", 0, 1, None, 0.0, 1e-9, 3, 21, 34)
+    return replace(
+        design, alternatives=Alternatives(0.05, 5, True, near), routes=RouteDesigns(routes, 9), reliability=sure,
+        proof=proof,
+    )  # fmt: skip
+
+
 def _six_stages() -> Design:
     stages = [results.stage(f"stage-{n}", count=c, pressure=0.2) for n, c in enumerate((40, 1, 2, 7, 16, 3))]
     return results.design(
@@ -166,12 +193,13 @@ def hostile() -> Design:
 
 
 def shapes() -> dict[str, Dossier]:
-    """Dossiers by name: usual, one stage, six stages, three blocks, no design, hostile names."""
+    """Dossiers by name: usual, one stage, six stages, three blocks, reliable, no design, hostile names."""
     return {
         "usual": replace(dossier(results.design()), area_parts=_parts(), limits=_limits()),
         "one-stage": dossier(_one_stage()),
         "six-stages": dossier(_six_stages()),
         "three-blocks": replace(dossier(_many_blocks()), schedule="side-by-side"),
+        "reliable": replace(dossier(beside(results.design())), sampled=400),
         "no-design": dossier(results.infeasible()),
-        "hostile": dossier(hostile(), results.curve(medium=HOSTILE[0], law="intermediate")),
+        "hostile": dossier(beside(hostile(), HOSTILE[0]), results.curve(medium=HOSTILE[0], law="intermediate")),
     }

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from typing import TYPE_CHECKING
 
 from trainopt.report.numbers import NONE, Pressure, aligned, fixed, money, significant, trimmed
@@ -76,16 +76,21 @@ def _interval(chance: Chance | None) -> str:
     return NONE if chance is None else f"{share(chance.low)} to {share(chance.high)}"
 
 
-def reliability_rows(design: Design) -> list[tuple[str, ...]]:
-    """The design, the even split and the safety-factor design with their shares on the same fresh lots."""
-    sure = design.reliability
+def share_rows(design: Design) -> list[tuple[str, float | None, Chance | None]]:
+    """The design, the even split and the safety-factor design: area in m² and share of the same fresh lots."""
+    sure, even = design.reliability, design.even_split
     assert sure is not None
-    even = design.even_split
     rows: list[tuple[str, float | None, Chance | None]] = [("this design", design.area, sure.fresh)]
     rows.append(("even split", None if even is None else even.area, sure.even_split))
     if sure.usual is not None:
         name = f"worst lot run, safety factor {trimmed(sure.usual.safety_factor)}"
         rows.append((name, sure.usual.area, sure.usual.fresh))
+    return rows
+
+
+def reliability_rows(design: Design) -> list[tuple[str, ...]]:
+    """The same as texts."""
+    rows = share_rows(design)
     areas = aligned([area for _, area, _ in rows])
     return [(name, area, share(chance.share if chance else None), _interval(chance))
             for (name, _, chance), area in zip(rows, areas, strict=True)]  # fmt: skip
@@ -104,7 +109,13 @@ def reliability_sentences(sure: ReliabilityResult) -> Iterator[str]:
         )
 
 
-def _bought(picks: Sequence[Pick]) -> str:
+def media_words(media: Iterable[tuple[str, str]]) -> str:
+    """(stage, medium) pairs as the media in flow order."""
+    return " → ".join(medium for _, medium in media) or "no stage"
+
+
+def bought(picks: Sequence[Pick]) -> str:
+    """What is bought, in one line."""
     return ", ".join(f"{pick.count} × {pick.module}" for pick in picks) or "no stage"
 
 
@@ -117,16 +128,14 @@ def route_rows(design: Design) -> list[tuple[str, ...]]:
     """One row a route, the design's own first."""
     assert design.routes is not None
     areas = aligned([design.area, *(route.area for route in design.routes.designs)])
-    own = " → ".join(dict.fromkeys(s.medium for b in design.blocks for s in b.stages))
-    rows: list[tuple[str, ...]] = [
-        (f"{own} (this design)", _bought(design.picks), areas[0], money(design.cost, ""), "")
-    ]
+    own = media_words((s.stage, s.medium) for b in design.blocks for s in b.stages)
+    rows: list[tuple[str, ...]] = [(f"{own} (this design)", bought(design.picks), areas[0], money(design.cost, ""), "")]
     for route, area in zip(design.routes.designs, areas[1:], strict=True):
-        media = " → ".join(medium for _, medium in route.media) or "no stage"
+        media = media_words(route.media)
         if route.objective is None:
             rows.append((media, "no design", NONE, NONE, ""))
         else:
-            rows.append((media, _bought(route.picks), area, money(route.cost, ""), _more(design, route)))
+            rows.append((media, bought(route.picks), area, money(route.cost, ""), _more(design, route)))
     return rows
 
 
@@ -150,7 +159,7 @@ def near_rows(design: Design, pressure: Pressure) -> list[tuple[str, ...]]:
     areas = aligned([one.area for one in designs])
     return [
         (
-            _bought(one.picks),
+            bought(one.picks),
             area,
             "" if one is designs[0] else _more(design, one),
             *(pressure.number(block.pressure) for block in one.blocks),

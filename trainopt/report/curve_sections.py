@@ -47,7 +47,17 @@ def curves_section(dossier: Dossier, units: str) -> Section | None:
         Table("Curves and what the design asks of them", columns, rows),
         parameter_table(_used_curves(dossier)),
     )
-    return Section("curves", "Curves of the stages", (), pictures, tables)
+    return Section("curves", "Curves of the stages", few_of_many(dossier), pictures, tables)
+
+
+def few_of_many(dossier: Dossier) -> tuple[str, ...]:
+    """That the lots shown are a few of the sampled ones, where they are."""
+    if not dossier.sampled:
+        return ()
+    return (
+        f"Of {dossier.sampled} sampled lots a few are shown that the design holds for: the worst of each block, and "
+        "some that ask for less.",
+    )
 
 
 def parameter_table(curves: Mapping[str, Curve]) -> Table:
@@ -128,4 +138,4 @@ def course_section(dossier: Dossier, units: str) -> Section | None:
         pressure_column("Limit", units),
     )
     table = Table("Pressure at the pump and flow, by lot", columns, rows)
-    return Section("course", "Pressure over the batch", (), (picture,), (table,))
+    return Section("course", "Pressure over the batch", few_of_many(dossier), (picture,), (table,))

@@ -29,7 +29,8 @@ class Dossier:
 
     `volume` L and `time_allowed` h of the batch, `safety_factor` asked for, `lots` the design holds for;
     `curves` by medium; `assumptions` in words; `versions` of program and libraries; `options` the design was
-    asked for with; `date` in ISO 8601. What has no entry was not computed and is not shown.
+    asked for with; `date` in ISO 8601. `sampled`: on a reliability basis the number of sampled lots, of which `lots`
+    are a few that the design holds for. What has no entry was not computed and is not shown.
     """
 
     design: Design
@@ -48,3 +49,4 @@ class Dossier:
     volumes: tuple[VolumePoint, ...] = ()
     area_parts: AreaParts | None = None
     limits: Limits | None = None
+    sampled: int = 0

@@ -13,6 +13,8 @@ import numpy as np
 
 from trainopt.curves.uncertainty import band
 from trainopt.optimize.design import Prepared, design, prepare
+from trainopt.optimize.holding import held, shown_lots
+from trainopt.optimize.restate import route_of_picks
 from trainopt.report.course_figure import Course
 from trainopt.report.dossier import Dossier, VolumePoint
 from trainopt.report.numbers import limit_words, trimmed
@@ -29,14 +31,21 @@ if TYPE_CHECKING:
     from trainopt.train.problem import Block, Candidate, DesignProblem
     from trainopt.train.results import BlockDesign, Design, StageDesign
 
+ALTERNATIVES, GAP = 5, 0.05
+"""Near designs that a report lists at most, and how much worse they may be."""
+SHOWN_LOTS = 4
+"""Sampled lots that a picture shows."""
 LIBRARIES = ("highspy", "pyomo", "numpy", "scipy", "matplotlib")
 
 
 def gather(case: Case, objective: str | None = None, time_limit: float | None = None) -> Dossier:
     """Design the case and gather what its report shows; raises what `design` raises."""
     prepared = prepare(case, objective)
-    found = design(prepared, time_limit=time_limit, parts=True, limits=True)
-    problem = prepared.problem
+    found = design(
+        prepared, time_limit=time_limit, parts=True, routes=True, alternatives=ALTERNATIVES, gap=GAP, limits=True
+    )
+    whole = prepared.problem
+    problem = few_lots(whole, found) if whole.reliability is not None else whole
     options = {"Objective asked for": problem.objective}
     if time_limit is not None:
         options["Time limit"] = f"{trimmed(time_limit)} s"
@@ -48,7 +57,7 @@ def gather(case: Case, objective: str | None = None, time_limit: float | None = 
         schedule=problem.schedule,
         lots=problem.lots,
         curves=prepared.curves,
-        stage_curves=tuple(_stage_curves(prepared, found)),
+        stage_curves=tuple(_stage_curves(prepared, problem, found)),
         courses=tuple(_courses(problem, found)),
         assumptions=tuple(_assumptions(case, prepared)),
         versions=versions(),
@@ -57,7 +66,26 @@ def gather(case: Case, objective: str | None = None, time_limit: float | None = 
         volumes=tuple(_volumes(case, found)),
         area_parts=found.area_parts,
         limits=found.limits,
+        sampled=len(whole.lots) if whole.reliability is not None else 0,
     )
+
+
+def few_lots(problem: DesignProblem, found: Design) -> DesignProblem:
+    """The problem with a few of its sampled lots: the worst of each block that the design holds for, and others spread
+    over those that ask for less."""
+    route = route_of_picks(problem, found.picks)
+    if route is None or not found.blocks:
+        return held(problem, np.arange(min(len(problem.lots), SHOWN_LOTS)))
+    times = tuple(block.time for block in found.blocks)
+    lots = shown_lots(problem, route, times)
+    spent = sum(
+        np.sum([choice.demand[lots] for choice in choices], axis=0) / block.head
+        for block, choices in zip(problem.blocks, route, strict=True) if choices
+    )  # fmt: skip
+    order = lots[np.argsort(-np.asarray(spent), kind="stable")]
+    spread = order[np.unique(np.linspace(0, len(order) - 1, min(SHOWN_LOTS, len(order))).astype(int))]
+    worst = [problem.lots.index(block.worst_lot) for block in found.blocks if block.worst_lot in problem.lots]
+    return held(problem, np.array(sorted({*spread.tolist(), *worst})))
 
 
 def now() -> str:
@@ -106,8 +134,7 @@ def _used(problem: DesignProblem, found: Design) -> Iterator[tuple[Block, BlockD
             yield block, shown, stage, next(c for c in place.candidates if c.medium == stage.medium)
 
 
-def _stage_curves(prepared: Prepared, found: Design) -> Iterator[StageCurve]:
-    problem = prepared.problem
+def _stage_curves(prepared: Prepared, problem: DesignProblem, found: Design) -> Iterator[StageCurve]:
     for _, shown, stage, candidate in _used(problem, found):
         yield StageCurve(
             stage=stage.stage,

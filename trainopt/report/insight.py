@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
+from trainopt.report.beside_sections import beside_sections
 from trainopt.report.beside_text import NO_GAIN, limit_sentences
 from trainopt.report.content import Column, Kind, Picture, Section, Table, pressure_column, words
 from trainopt.report.numbers import PRESSURE_UNITS, fixed, limit_words, significant, trimmed
@@ -17,11 +18,12 @@ if TYPE_CHECKING:
 
 
 def insight_sections(dossier: Dossier, units: str) -> Iterator[Section]:
-    """Where the area goes, what limits and what a little more would gain, what-if on batch volume."""
+    """Where the area goes, what limits and what a little more would gain, near designs, other media, other volumes."""
     if dossier.area_parts is not None:
         yield _parts(dossier, dossier.area_parts)
     if dossier.limits is not None:
         yield _limits(dossier.limits, dossier, units)
+    yield from beside_sections(dossier.design, units)
     if dossier.volumes:
         yield _volumes(dossier)
 

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from trainopt.report.beside_sections import reliability_section
 from trainopt.report.budget_section import budget_section
 from trainopt.report.cautions import CAUTIONS
 from trainopt.report.content import Column, Picture, Section, Table, pressure_column, used_stages, words
@@ -40,6 +41,8 @@ def sections(dossier: Dossier, units: str = "bar") -> tuple[Section, ...]:
             *insight_sections(dossier, units),
             _cost(dossier.design),
         ]
+        if dossier.design.reliability is not None:
+            found.append(reliability_section(dossier.design, dossier.design.reliability))
     found += [_assumptions(dossier), _cautions(dossier.design), _provenance(dossier)]
     return tuple(section for section in found if section is not None)
 
@@ -48,7 +51,7 @@ def _answer(dossier: Dossier) -> Section:
     design = dossier.design
     task = (
         f"{trimmed(dossier.volume)} L within {duration(dossier.time_allowed)}, safety factor "
-        f"{trimmed(dossier.safety_factor)}, for {_lots(dossier.lots)}."
+        f"{trimmed(dossier.safety_factor)}, for {_held_for(dossier)}."
     )
     if not design.blocks:
         needs = tuple(
@@ -70,6 +73,14 @@ def _answer(dossier: Dossier) -> Section:
             f"At these times all areas could be derated by {fixed(design.safety_factor, 2)} before a limit is met."
         )
     return Section("answer", "Answer", tuple(paragraphs), tables=(bill_table(design),))
+
+
+def _held_for(dossier: Dossier) -> str:
+    sure = dossier.design.reliability
+    if dossier.sampled:
+        asked = "" if sure is None else f"{percent(100.0 * sure.target)} of "
+        return f"{asked}{dossier.sampled} sampled lots"
+    return _lots(dossier.lots)
 
 
 def _lots(lots: tuple[str, ...]) -> str:
@@ -203,7 +214,15 @@ def _provenance(dossier: Dossier) -> Section:
             ("Lower bound", significant(objective.bound, 8)),
             ("Gap", f"{percent(100.0 * objective.gap)}; {dossier.design.status}"),
         )
-    facts = (("Date", dossier.date), *proof, *dossier.options.items())
+    solver = dossier.design.proof
+    run = () if solver is None else (
+        ("Solver", f"{solver.solver} {solver.solver_version}, by {solver.modeler} {solver.modeler_version}"),
+        ("Seed and threads", f"{solver.seed}, {solver.threads}"),
+        ("Gap allowed", significant(solver.relative_gap)),
+        ("Tolerance on a row", f"{significant(solver.feasibility_tolerance)} h"),
+        ("Runs; model", f"{solver.solves}; {solver.rows} rows, {solver.columns} columns"),
+    )  # fmt: skip
+    facts = (("Date", dossier.date), *proof, *run, *dossier.options.items())
     tables = [
         Table("Run", (words("What"), words("Value")), facts),
         Table("Program and libraries", (words("Name"), words("Version")), tuple(dossier.versions.items())),

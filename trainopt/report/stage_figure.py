@@ -88,7 +88,9 @@ def _readings(axes: Axes, curve: Curve, factor: float) -> None:
 def _curves(axes: Axes, stage: StageCurve, reach: float, factor: float) -> None:
     for index, (lot, curve) in enumerate(stage.lots):
         worst = lot == stage.worst_lot
-        end = min(reach, 0.999 * curve.pole)
+        # Beyond what was seen of the shape (κ·l) a curve says nothing, unless the design goes there.
+        seen = max(stage.curve.tested_loading / curve.fouling_factor, stage.design_loading)
+        end = min(reach, 0.999 * curve.pole, seen)
         l = np.linspace(0.0, end, 200)
         axes.plot(
             l,
