@@ -116,7 +116,7 @@ def media_words(media: Iterable[tuple[str, str]]) -> str:
 
 def bought(picks: Sequence[Pick]) -> str:
     """What is bought, in one line."""
-    return ", ".join(f"{pick.count} × {pick.module}" for pick in picks) or "no stage"
+    return ", ".join(f"{pick.count} × {pick.module}" for pick in picks) or "no module"
 
 
 def route_header(design: Design) -> tuple[str, ...]:

@@ -6,7 +6,7 @@ from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
 from trainopt.report.beside_sections import beside_sections
-from trainopt.report.beside_text import NO_GAIN, limit_sentences
+from trainopt.report.beside_text import NO_GAIN, bought, limit_sentences
 from trainopt.report.content import Column, Kind, Picture, Section, Table, pressure_column, words
 from trainopt.report.numbers import PRESSURE_UNITS, fixed, limit_words, significant, trimmed
 from trainopt.report.parts_figure import parts_figure
@@ -14,7 +14,7 @@ from trainopt.report.volume_figure import volume_figure
 
 if TYPE_CHECKING:
     from trainopt.report.dossier import Dossier
-    from trainopt.train.results import AreaParts, Limits, Pick
+    from trainopt.train.results import AreaParts, Limits
 
 
 def insight_sections(dossier: Dossier, units: str) -> Iterator[Section]:
@@ -91,7 +91,7 @@ def _gains(limits: Limits, unit: str, units: str) -> Table:
             _shown(gain.now, gain.unit, units),
             _shown(gain.needs, gain.unit, units),
             gain.saves,
-            _bought(gain.picks),
+            bought(gain.picks),
         )
         for gain in limits.gains
     )
@@ -115,7 +115,7 @@ def _longer_runs(limits: Limits, unit: str, units: str) -> Table:
             run.flux,
             _shown(run.pressure, "bar", units),
             run.saves,
-            _bought(run.picks),
+            bought(run.picks),
         )
         for run in limits.longer_runs
     )
@@ -140,10 +140,6 @@ def _limit_name(name: str, unit: str) -> str:
 
 def _shown(value: float, unit: str, units: str) -> float:
     return value * PRESSURE_UNITS[units] if unit == "bar" else value
-
-
-def _bought(picks: tuple[Pick, ...]) -> str:
-    return ", ".join(f"{pick.count} × {pick.module}" for pick in picks)
 
 
 def _volumes(dossier: Dossier) -> Section:

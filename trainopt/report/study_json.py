@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING
 
-from trainopt.report.beside_json import limits_document
+from trainopt.report.beside_json import limits_document, picks_document
 from trainopt.report.json import Document, block_document, design_document
 from trainopt.version import __version__
 
@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from trainopt.study.rate import BatchRating, LotRating, Rating
     from trainopt.study.results import Change, Sweep, SweepCell
     from trainopt.study.simulate import BlockCourse, LotCourse, Simulation
-    from trainopt.train.results import Chance, Pick
+    from trainopt.train.results import Chance
 
 
 def sweep_document(sweep: Sweep) -> Document:
@@ -48,7 +48,7 @@ def _cell(sweep: Sweep, cell: SweepCell) -> Document:
         "cost": cell.cost,
         "time_h": cell.time,
         "spare_bar": dict(zip(sweep.blocks, cell.spare, strict=False)),
-        "picks": picks(cell.picks),
+        "picks": picks_document(cell.picks),
         "even_split": None if even is None else {"status": even.status, "area_m2": even.area, "cost": even.cost},
         "reason": cell.reason or None,
     }
@@ -60,19 +60,14 @@ def _change(sweep: Sweep, change: Change) -> Document:
     return {
         "axis": change.axis,
         "between": [axis.shown(value) for value in change.between],
-        "from": picks(change.before),
-        "to": picks(change.after),
+        "from": picks_document(change.before),
+        "to": picks_document(change.after),
         "others": {other.field: other.shown(value) for other, value in zip(others, change.others, strict=True)},
     }
 
 
 def _shown(axes: Sequence[Axis], at: Sequence[float]) -> list[float]:
     return [axis.shown(value) for axis, value in zip(axes, at, strict=True)]
-
-
-def picks(bought: Sequence[Pick]) -> list[list[Any]]:
-    """Picks as [stage, medium, module, count]."""
-    return [[pick.stage, pick.medium, pick.module, pick.count] for pick in bought]
 
 
 def rate_document(rating: Rating) -> Document:
@@ -88,7 +83,7 @@ def rate_document(rating: Rating) -> Document:
         "safety_factor": rating.safety_factor,
         "derated_by": rating.derated_by,
         "limited_by": rating.limited_by,
-        "picks": picks(rating.picks),
+        "picks": picks_document(rating.picks),
         "blocks": [block_document(block) for block in rating.blocks],
         "lots": [_lot(rating, lot) for lot in rating.lots],
         "batches": [_batch(batch) for batch in rating.batches],
@@ -137,7 +132,7 @@ def simulate_document(simulation: Simulation) -> Document:
         "needed_h": simulation.needed,
         "over_run_h": simulation.over_run,
         "derated_by": simulation.derated_by,
-        "picks": picks(simulation.picks),
+        "picks": picks_document(simulation.picks),
         "blocks": [_block_course(block) for block in simulation.blocks],
         "trainopt": __version__,
         "inputs": dict(simulation.inputs),

@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from trainopt.report.beside_text import bought
 from trainopt.report.numbers import NONE, aligned, fixed, significant
-from trainopt.report.study_text import picks_text
 from trainopt.report.tables import WIDTH, Page
 
 if TYPE_CHECKING:
@@ -65,7 +65,7 @@ def _cells(page: Page, sweep: Sweep) -> None:
     rows = [
         (
             _value(axis, cell.at[0]),
-            picks_text(cell.picks) if cell.picks or cell.status == "optimal" else cell.status.replace("-", " "),
+            bought(cell.picks) if cell.picks or cell.status == "optimal" else cell.status.replace("-", " "),
             area,
             even,
             fixed(cell.cost, 0),
@@ -146,7 +146,7 @@ def _difference(before: Sequence[Pick], after: Sequence[Pick]) -> str:
     if not after:
         return "no design"
     old = {pick.stage: pick for pick in before}
-    return picks_text([pick for pick in after if old.get(pick.stage) != pick]) if before else picks_text(after)
+    return bought([pick for pick in after if old.get(pick.stage) != pick]) if before else bought(after)
 
 
 def _reasons(page: Page, sweep: Sweep) -> None:

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from trainopt.report.beside_text import share
+from trainopt.report.beside_text import bought, share
 from trainopt.report.cautions import CAUTIONS
 from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
@@ -24,17 +24,9 @@ from trainopt.report.numbers import (
 from trainopt.report.tables import WIDTH, Page
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
-
     from trainopt.study.audit import Audit, CaseAudit
     from trainopt.study.rate import Rating
     from trainopt.study.simulate import Simulation
-    from trainopt.train.results import Pick
-
-
-def picks_text(picks: Sequence[Pick]) -> str:
-    """What is bought, in one line."""
-    return ", ".join(f"{pick.count} × {pick.module}" for pick in picks) or "no module"
 
 
 def rate_text(rating: Rating, units: str = "bar", width: int = WIDTH, color: bool = False) -> str:
@@ -167,7 +159,7 @@ def simulate_text(simulation: Simulation, units: str = "bar", width: int = WIDTH
     page, pressure = Page(), Pressure(units)
     page.line(simulation.scenario, "bold")
     page.line(
-        f"{trimmed(simulation.volume)} L through {picks_text(simulation.picks)}, "
+        f"{trimmed(simulation.volume)} L through {bought(simulation.picks)}, "
         f"areas divided by {trimmed(simulation.derated_by)}."
     )
     if math.isinf(simulation.needed):
