@@ -159,6 +159,7 @@ WRONG_VALUE = [
     value(CASE_FILE, "basis: worst-lot", "basis: {reliability: 1.0}", "basis.reliability", "below 1"),
     value(CASE_FILE, "basis: worst-lot", "basis: {samples: 400}", "'reliability' is missing"),
     value(CASE_FILE, "basis: worst-lot", "basis: 0.95", "basis", "reliability"),
+    value(CASE_FILE, "basis: worst-lot", "basis: sure", "pooled, worst-lot, or a mapping with reliability"),
     value(CASE_FILE, "schedule: sequential", "schedule: parallel", "sequential, side-by-side"),
     value(CASE_FILE, "operation: constant-flow", "operation: no", "unknown 'no'"),
     value(CASE_FILE, "setup: 30 min", "setup: -30 min", "at least 0 h"),

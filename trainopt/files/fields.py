@@ -226,9 +226,10 @@ class Words(Rule):
 
 @dataclass(frozen=True)
 class Choice(Rule):
-    """One of a few words."""
+    """One of a few words; `other` says what else than a word may stand there."""
 
     words: tuple[str, ...]
+    other: str = ""
 
     def _expected(self) -> str:
         return f"one of {', '.join(self.words)}"
@@ -237,7 +238,10 @@ class Choice(Rule):
         if not isinstance(value, str):
             raise ValueError(f"{written(value)} is not one of its words; expected {self.expected}")
         if value not in self.words:
-            raise ValueError(f"unknown {written(value)}; {nearest(value, self.words)}")
+            offer = nearest(value, self.words)
+            if self.other and not offer.endswith("?"):
+                offer += f", or {self.other}"
+            raise ValueError(f"unknown {written(value)}; {offer}")
         return value
 
 

@@ -200,7 +200,7 @@ def _basis_kind(value: Any) -> str:
 
 
 Basis = Annotated[
-    Annotated[Literal["pooled", "worst-lot"], Choice(BASES), Tag("<words>")]
+    Annotated[Literal["pooled", "worst-lot"], Choice(BASES, "a mapping with reliability"), Tag("<words>")]
     | Annotated[ReliabilityBasis, Tag("<mapping>")],
     Discriminator(_basis_kind),
 ]
