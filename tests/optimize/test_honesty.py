@@ -5,10 +5,13 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from factory import block, flat, problem, stage
+from factory import block, flat, problem, random_problem, stage
 
 import trainopt
 from trainopt.optimize.design import design
+from trainopt.optimize.recheck import march_stages
+from trainopt.optimize.restate import route_of_picks
+from trainopt.train.march import constant_pressure
 
 ROOT = Path(__file__).parent.parent.parent
 
@@ -38,6 +41,24 @@ def test_a_hair_too_little_time_still_has_its_reasons(tmp_path: Path) -> None:
     # The least time is 10/3 h: the solver's tolerance and the closed form disagree only about its last digits.
     result = trainopt.design(demo(tmp_path, "time: 6 h", "time: 3.33333333 h"))
     assert result.status == "optimal" or result.reasons
+
+
+def test_the_starting_flow_is_that_of_the_march() -> None:
+    seen = 0
+    for seed in range(60):
+        found = design(p := random_problem(seed, most=4, pressure=True))
+        route = route_of_picks(p, found.picks)
+        for b, (one, shown) in enumerate(zip(p.blocks, found.blocks, strict=False)):
+            if one.operation != "constant-pressure" or route is None or not route[b]:
+                assert shown.starting_flow is None
+                continue
+            courses = [
+                constant_pressure(march_stages(route[b], lot, 1.0), p.volume, one.pressure, one.line, one.static)
+                for lot in range(len(p.lots))
+            ]
+            assert shown.starting_flow == pytest.approx(max(float(course.flow[0]) for course in courses))
+            seen += 1
+    assert seen > 10
 
 
 def test_a_clean_train_at_constant_pressure_that_starts_too_fast_is_said() -> None:

@@ -46,7 +46,8 @@ ROUTES = {
                  "picks": "list"}],
 }  # fmt: skip
 LIMITS = {
-    "blocks": [{"block": TEXT, "limited_by": TEXT, "stage": TEXT, "used": NUMBER, "stages": {"*": TEXT}, "text": TEXT}],
+    "blocks": [{"block": TEXT, "limited_by": TEXT, "stage": TEXT, "used": NUMBER, "head_bar": NUMBER,
+                "spare_bar": NUMBER, "stages": {"*": TEXT}, "text": TEXT}],
 }  # fmt: skip
 GAINS = [{"field": TEXT, "unit": TEXT, "now": NUMBER, "needs": NUMBER, "objective": NUMBER, "saves": NUMBER,
           "picks": "list", "text": TEXT}]  # fmt: skip

@@ -145,6 +145,8 @@ def limits_document(limits: Limits) -> Document:
                 "limited_by": block.limited_by,
                 "stage": block.stage,
                 "used": block.used,
+                "head_bar": block.head,
+                "spare_bar": block.spare,
                 "stages": dict(block.stages),
                 "text": block.text,
             }
