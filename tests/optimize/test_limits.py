@@ -32,6 +32,8 @@ def moved(p: DesignProblem, gain: Gain, value: float) -> DesignProblem:
     if limit == "pressure_bar":
         return restated(p, Move(pressure={place: value}))
     key = (place, used[place])
+    if limit == "max_count":
+        return restated(p, Move(count={(place, gain.what.split(" ")[0]): value}))
     return {
         "loading_limit_L_m2": lambda: restated(p, Move(cap={key: value})),
         "flux_limit_LMH": lambda: restated(p, Move(flux={key: value})),
@@ -61,6 +63,9 @@ def test_gains_of_random_trains_are_exact() -> None:
             assert enumerated(moved(p, gain, gain.needs)) == pytest.approx(gain.objective, rel=1e-9), (seed, gain.field)
             assert gain.saves == pytest.approx(base - gain.objective, rel=1e-9, abs=1e-9), (seed, gain.field)
             just_below = gain.now + (gain.needs - gain.now) * (1.0 - 1e-4)
+            if kind == "max_count":
+                assert gain.needs == round(gain.needs)
+                just_below = gain.needs - 1.0
             assert enumerated(moved(p, gain, just_below)) == pytest.approx(base, rel=1e-9), (seed, gain.field)
     assert len(kinds) >= 5, kinds
 

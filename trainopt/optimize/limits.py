@@ -99,12 +99,38 @@ def _levers(problem: DesignProblem, picks: Picks) -> Iterator[Lever]:
             for one in stage.candidates:
                 if used.get(stage.name) == one.medium:
                     yield from _stage_levers(block, stage, one)
+                    yield from _count_levers(problem, stage, one)
 
 
 def _rating(block: Block) -> float:
     """The most pressure that a constant-pressure block's media are rated for, bar."""
     rated = [min(c.differential_pressure + block.static, c.inlet_pressure) for s in block.stages for c in s.candidates]
     return min(rated, default=math.inf)
+
+
+def _count_levers(problem: DesignProblem, stage: Stage, one: Candidate) -> Iterator[Lever]:
+    """The highest count on offer of each module of a used medium; where cost counts, only of those without a holder."""
+    offer = one.on_offer
+    for size in one.modules if offer is not None else ():
+        assert offer is not None
+        held = any(h is not None for h, m in zip(offer.holders, offer.module, strict=True) if m == size.name)
+        if held and problem.objective == "cost":
+            continue
+        most = partial(_most_of, stage.name, size.name)
+        what = f"{size.name} in '{stage.name}'"
+        yield Lever(f"{stage.name}.max_count", what, "modules", size.high, most, _MORE * size.high, _whole)
+
+
+_MORE = 4.0
+"""How many times the modules on offer are asked about at most."""
+
+
+def _whole(count: float) -> float:
+    return float(round(count))
+
+
+def _most_of(stage: str, module: str, count: float) -> Move:
+    return Move(count={(stage, module): count})
 
 
 def _stage_levers(block: Block, stage: Stage, one: Candidate) -> Iterator[Lever]:

@@ -10,7 +10,7 @@ import numpy as np
 
 from trainopt.curves.sampled import SampledCurves
 from trainopt.optimize.times import Choice, Route
-from trainopt.train.options import Cap, inside_caps, take
+from trainopt.train.options import Cap, inside_caps, joined, take
 from trainopt.train.problem import Block, Candidate, DesignProblem, Options, Stage
 from trainopt.train.results import Pick
 
@@ -23,7 +23,8 @@ class Move:
     """What to move; what is not named stays.
 
     `time` h, `volume` L, `safety_factor`; by block name `pressure` in bar; by (stage, medium) the loading `cap` L/m²,
-    `flux` limit LMH, and the ratings `differential_pressure` and `inlet_pressure` in bar.
+    `flux` limit LMH, and the ratings `differential_pressure` and `inlet_pressure` in bar; by (stage, module) the
+    highest `count` on offer.
     """
 
     time: float | None = None
@@ -34,6 +35,7 @@ class Move:
     flux: Mapping[NodeKey, float] = field(default_factory=dict)
     differential_pressure: Mapping[NodeKey, float] = field(default_factory=dict)
     inlet_pressure: Mapping[NodeKey, float] = field(default_factory=dict)
+    count: Mapping[tuple[str, str], float] = field(default_factory=dict)
 
 
 def restated(problem: DesignProblem, move: Move) -> DesignProblem:
@@ -70,10 +72,40 @@ def _candidate(
         flux_limit=move.flux.get(key, one.flux_limit),
         loading_cap=move.cap.get(key, one.loading_cap),
     )
+    for (place, module), most in move.count.items():
+        if place == stage.name and one.on_offer is not None and module in one.on_offer.module:
+            return refilled(problem, block, replace(out, on_offer=more_of(one.on_offer, module, int(most + 1e-6))))
     if key in move.cap and isinstance(one.curves, SampledCurves):
         # A loading limit in place of what was tested lets every lot go that far.
         out = replace(out, curves=replace(one.curves, known=math.inf))
     return refilled(problem, block, out) if scaled or key in move.cap or key in move.flux else out
+
+
+def more_of(offer: Options, module: str, most: int) -> Options:
+    """What is on offer with higher counts of one module, up to `most`, each at the price of one more of it.
+
+    Holders are left out: where they cost something, their number is not known here.
+    """
+    own = np.array([place for place, name in enumerate(offer.module) if name == module])
+    last = int(own[np.argmax(offer.count[own])])
+    counts = np.arange(int(offer.count[last]) + 1, most + 1)
+    if not len(counts):
+        return offer
+    added = take(offer, np.full(len(counts), last))
+    scale = counts / offer.count[last]
+    added = replace(
+        added,
+        count=counts,
+        holders=(None,) * len(counts),
+        area=added.area * scale,
+        modules_cost=added.modules_cost * scale,
+        holders_cost=np.zeros(len(counts)),
+        flush_cost=added.flush_cost * scale,
+        product_cost=added.product_cost * scale,
+        weight=added.weight * scale,
+        loading=added.loading / scale,
+    )
+    return joined([offer, added])
 
 
 def refilled(problem: DesignProblem, block: Block, one: Candidate) -> Candidate:
