@@ -248,16 +248,55 @@ class Option:
     tau: float
     demand: tuple[float, ...]
     loading: float
+    holder: tuple[str, int] | None = None
 
 
-def holder_cost(spec: Spec, module: str, count: int) -> float:
-    """The cheapest holders for a count, per batch."""
+def holder_of(spec: Spec, module: str, count: int) -> tuple[str, int] | None:
+    """Name and number of the cheapest holders for a count, if no other stage used those that are owned."""
     offers = [
-        max(math.ceil(count / h["slots"]) - h.get("owned", 0), 0) * h["price"] / h["batches"]
-        for h in spec.holders.values()
+        (max(math.ceil(count / h["slots"]) - h.get("owned", 0), 0) * h["price"] / h["batches"],
+         math.ceil(count / h["slots"]), name)
+        for name, h in spec.holders.items()
         if module in h["modules"]
-    ]
-    return min(offers, default=0.0)
+    ]  # fmt: skip
+    if not offers:
+        return None
+    _, number, name = min(offers)
+    return name, number
+
+
+def shared_holders(spec: Spec) -> dict[str, dict[str, Any]]:
+    """The holders of which some are owned and that several stages may use."""
+    stages = [stage for block in spec.blocks for stage in block["stages"]]
+
+    def uses(stage: dict[str, Any], holder: dict[str, Any]) -> bool:
+        served = [m for m in holder["modules"] if spec.modules[m]["medium"] in dict(stage["media"])]
+        return any(len(counts_of(stage, m, spec.modules[m]["max_count"])) for m in served)
+
+    return {
+        name: h for name, h in spec.holders.items() if h.get("owned") and sum(uses(stage, h) for stage in stages) >= 2
+    }
+
+
+def holder_cost(spec: Spec, holder: tuple[str, int] | None, shared: dict[str, dict[str, Any]]) -> float:
+    """What a stage's holders cost per batch; of shared ones all, for what is owned is counted once over the train."""
+    if holder is None:
+        return 0.0
+    h = spec.holders[holder[0]]
+    free = 0 if holder[0] in shared else h.get("owned", 0)
+    return max(holder[1] - free, 0) * h["price"] / h["batches"]
+
+
+def shared_saving(spec: Spec, picks: list[Option]) -> float:
+    """What the shared holders that are owned save a train, one after the other as its stages use them up."""
+    saved = 0.0
+    for name, h in shared_holders(spec).items():
+        left = h["owned"]
+        for pick in picks:
+            if pick.holder is not None and pick.holder[0] == name:
+                free = min(left, pick.holder[1])
+                saved, left = saved + free * h["price"] / h["batches"], left - free
+    return saved
 
 
 def counts_of(stage: dict[str, Any], module: str, most: int) -> range:
@@ -274,6 +313,7 @@ def options_of(spec: Spec, block: dict[str, Any], stage: dict[str, Any]) -> list
     """Every option inside the caps, dominated or not."""
     out = []
     titer, value, recovered = spec.product
+    shared = shared_holders(spec)
     for medium, after in stage["media"]:
         m = spec.media[medium]
         lots = multipliers(spec, medium)
@@ -288,13 +328,14 @@ def options_of(spec: Spec, block: dict[str, Any], stage: dict[str, Any]) -> list
                 spent = tuple(demand(m, lot, loading, block["operation"]) for lot in lots)
                 if not all(map(math.isfinite, spent)):
                     continue
+                holder = holder_of(spec, module, count)
                 cost = (
-                    entry["price"] * count + holder_cost(spec, module, count) + (m["flush"] or 0.0) * area * spec.flush
+                    entry["price"] * count + holder_cost(spec, holder, shared) + (m["flush"] or 0.0) * area * spec.flush
                     + (1 - recovered) * titer * value * entry["hold_up"] * count
                 )  # fmt: skip
                 tau = spec.volume / (area * (m.get("own_flux") or m["flux"]))
                 upstream = tuple(after) if after else None
-                out.append(Option(medium, upstream, module, count, area, cost, tau, spent, loading))
+                out.append(Option(medium, upstream, module, count, area, cost, tau, spent, loading, holder))
     return out
 
 
@@ -351,7 +392,7 @@ def value_of(spec: Spec, blocks: list[list[Option]]) -> float:
     picks = [p for block in blocks for p in block]
     if spec.objective == "area":
         return sum(p.area for p in picks)
-    return sum(p.cost for p in picks) + spec.hour * sum(spent)
+    return sum(p.cost for p in picks) - shared_saving(spec, picks) + spec.hour * sum(spent)
 
 
 def best_value(spec: Spec) -> float:

@@ -12,7 +12,7 @@ from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
-from independent import INFINITE, Option, Spec, lot_names, options_of, value_of
+from independent import INFINITE, Option, Spec, lot_names, options_of, shared_holders, value_of
 from scipy.optimize import Bounds, LinearConstraint, milp
 from scipy.sparse import csr_array
 
@@ -21,7 +21,8 @@ Terms = dict[int, float]
 
 @dataclass
 class Plain:
-    """min Σ cost·v over binaries (one per option), then the blocks' times in h; rows least ≤ Σ value·v ≤ most."""
+    """min Σ cost·v; rows least ≤ Σ value·v ≤ most. Columns: binaries (one per option), the blocks' times in h, and for
+    cost the shared holders in use of those that are owned."""
 
     options: list[tuple[int, int, Option]]
     """Stage, block and option of each binary."""
@@ -72,7 +73,20 @@ def plain_model(spec: Spec) -> Plain | None:
     if spec.schedule == "sequential":
         setups = sum(block["setup"] for block in spec.blocks)
         model.add({n + b: 1.0 for b in range(blocks)}, -INFINITE, spec.time - setups)
+    if not area:
+        _share_holders(model, spec)
     return model
+
+
+def _share_holders(model: Plain, spec: Spec) -> None:
+    """r ≤ Σ number·x, 0 ≤ r ≤ owned, at minus the price per batch, for each shared holder."""
+    for name, h in shared_holders(spec).items():
+        r = len(model.cost)
+        model.cost.append(-h["price"] / h["batches"])
+        model.low.append(0.0)
+        model.high.append(float(h["owned"]))
+        numbers = [(k, o.holder) for k, (_, _, o) in enumerate(model.options)]
+        model.add({r: 1.0, **{k: -float(one[1]) for k, one in numbers if one and one[0] == name}}, -INFINITE, 0.0)
 
 
 def _of(model: Plain, place: int, medium: str | None = None) -> list[int]:

@@ -10,7 +10,7 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from independent import Option, Spec, best_value, options_of, value_of, write
+from independent import Option, Spec, best_value, options_of, shared_holders, value_of, write
 from plain import best_by, scipy_solve
 from workspaces import random_workspace
 
@@ -86,6 +86,7 @@ def features(spec: Spec) -> set[str]:
         "optional": any(s["optional"] for s in stages),
         "after": any(after for s in stages for _, after in s["media"]),
         "owned": any(h.get("owned") for h in spec.holders.values()),
+        "shared holders": bool(shared_holders(spec)),
         "lots missing": len({frozenset(m["lots"]) for m in media}) > 1 and spec.basis == "worst-lot",
         "scale-up": any(m["scale_up"] != 1.0 for m in media),
         "temperature": spec.temperature is not None

@@ -131,7 +131,7 @@ def _bear_pressure(blocks: list[dict[str, Any]], media: dict[str, dict[str, Any]
 
 
 def _holders(r: Random, modules: dict[str, Any], blocks: list[dict[str, Any]]) -> dict[str, Any]:
-    """Holders; some are owned already, where only one stage can use them."""
+    """Holders; some are owned already, by one stage that can use them or shared by several."""
     holders: dict[str, Any] = {}
     for k in range(r.randint(0, 5)):
         chosen = r.sample(sorted(modules), r.randint(1, 3))
@@ -141,6 +141,8 @@ def _holders(r: Random, modules: dict[str, Any], blocks: list[dict[str, Any]]) -
         }  # fmt: skip
         served = {modules[name]["medium"] for name in chosen}
         users = [s for b in blocks for s in b["stages"] if served & set(dict(s["media"]))]
-        if len(users) == 1 and r.random() < 0.7:
-            holders[f"h{k}"]["owned"] = r.randint(1, 3)
+        # Shared ones have a stream of their own: what is drawn next stays as it is.
+        own = r if len(users) == 1 else Random(f"{k} {holders[f'h{k}']['price']}")
+        if users and own.random() < (0.7 if len(users) == 1 else 0.4):
+            holders[f"h{k}"]["owned"] = own.randint(1, 3)
     return holders

@@ -4,7 +4,8 @@ Pressure rows of all blocks together ask Σ_i D_{i,s}/(P_b − Pstatic_b) ≤ T�
 that the lines leave. Priced at λ ≥ 0 per hour (Lagrange), the least Σ w·x + λ·(Σ D·x/head − T′) over the routes is
 below every design's objective, and so is the least over the routes through one option below that of every design with
 it. An option falls when this passes the objective of a design at hand. With k lots that may fail, one of any k + 1
-holds: the (k + 1)-th highest of the lots' bounds counts.
+holds: the (k + 1)-th highest of the lots' bounds counts. Holders that are owned and shared save a train at most what
+they could save each of its options alone: w is taken less that.
 """
 
 from __future__ import annotations
@@ -62,7 +63,7 @@ def _priced(index: Index, lots: Places | None = None) -> _Priced:
         lots = np.argsort(-level, kind="stable")[: max(_LOTS, 4 * (problem.may_fail + 1))]
     hours = hours[lots]
     hours = np.minimum(hours, _FAILS)
-    weight, constant = np.broadcast_to(index.weight, hours.shape), 0.0
+    weight, constant = np.broadcast_to(index.least_weight, hours.shape), 0.0
     if problem.objective == "cost" and problem.hour_rate > 0.0:
         weight = weight + problem.hour_rate * hours
         constant = problem.hour_rate * (line + math.fsum(block.setup for block in problem.blocks))
@@ -239,7 +240,7 @@ def node_bounds(index: Index) -> tuple[dict[tuple[int, str], float], float]:
     price = float(prices[lot])
     if index.problem.may_fail:
         price = 0.0  # no single lot need hold
-    value = priced.weight[lot] + price * priced.hours[lot] if not index.problem.may_fail else index.weight
+    value = priced.weight[lot] + price * priced.hours[lot] if not index.problem.may_fail else index.least_weight
     least = {(n.place, n.candidate.medium): float(value[n.options.start : n.options.stop].min()) for n in index.nodes}
     return least, priced.constant - price * priced.allowed
 

@@ -130,6 +130,27 @@ def batch_time(index: Index, t: Variables) -> Row:
     return None, linear([(1.0, v) for v in t]), problem.time - sum(block.setup for block in problem.blocks)
 
 
+def holder_uses(index: Index) -> dict[str, list[tuple[int, int]]]:
+    """Of every shared holder type that some option uses: the places of those options, and how many each uses."""
+    uses: dict[str, list[tuple[int, int]]] = {}
+    shared = {holder.name for holder in index.problem.owned}
+    for node in index.nodes:
+        for k, one in zip(node.options, node.candidate.options.holders, strict=True):
+            if one is not None and one[0] in shared:
+                uses.setdefault(one[0], []).append((k, one[1]))
+    return uses
+
+
+def owned_holders(index: Index, x: Variables, r: dict[str, Any]) -> Iterator[tuple[str, Row]]:
+    """r_h ≤ Σ number_{i,m,c,h}·x for every shared holder type h, with 0 ≤ r_h ≤ owned_h its bounds; for cost only.
+
+    r_h holders cost nothing: the objective counts −price_h·r_h, and its least makes r_h = min(owned_h, Σ number·x), for
+    every x a whole number.
+    """
+    for name, used in holder_uses(index).items():
+        yield name, (None, linear([(1.0, r[name]), *((-float(number), x[k]) for k, number in used)]), 0.0)
+
+
 def time_bounds(index: Index, b: int) -> tuple[float, float]:
     """V/Qmax_b ≤ t_b ≤ V/Qmin_b, and t_b + setup_b ≤ T, blocks side by side (in sequence: less all setups)."""
     block = index.problem.blocks[b]
@@ -148,6 +169,7 @@ def _spent_by_option(nodes: Sequence[Node], s: int, head: float) -> Iterator[tup
 
 
 __all__ = [
-    "SINK", "SOURCE", "Row", "Variables", "batch_time", "differential_rating", "flux_limit", "inlet_rating", "linear",
-    "one_option", "pressure_budget", "rated", "route_in", "route_out", "route_start", "time_bounds",
+    "SINK", "SOURCE", "Row", "Variables", "batch_time", "differential_rating", "flux_limit", "holder_uses",
+    "inlet_rating", "linear", "one_option", "owned_holders", "pressure_budget", "rated", "route_in", "route_out",
+    "route_start", "time_bounds",
 ]  # fmt: skip

@@ -12,6 +12,7 @@ import numpy as np
 from trainopt.optimize.holding import held, held_route, shown_lots
 from trainopt.optimize.ideal_split import IdealStage, ideal_areas, loading_limit
 from trainopt.optimize.margins import limiting, stage_safety_factor
+from trainopt.optimize.owned import credit, stage_credits
 from trainopt.optimize.recheck import flow_of, march_stages
 from trainopt.optimize.times import BlockChoice, Choice, Route
 from trainopt.train.march import end_pressures
@@ -39,7 +40,7 @@ class Picked:
 
 
 def cost_parts(problem: DesignProblem, route: Route, times: Sequence[float]) -> CostParts:
-    """Cost per batch by cause."""
+    """Cost per batch by cause; holders that are owned and shared count as far as they are not free."""
 
     def total(name: str) -> float:
         return math.fsum(float(getattr(c.candidate.options, name)[c.option]) for b in route for c in b)
@@ -47,7 +48,7 @@ def cost_parts(problem: DesignProblem, route: Route, times: Sequence[float]) -> 
     hours = math.fsum(t + block.setup for t, block in zip(times, problem.blocks, strict=True))
     return CostParts(
         modules=total("modules_cost"),
-        holders=total("holders_cost"),
+        holders=total("holders_cost") - credit(problem, route),
         flush=total("flush_cost"),
         product=total("product_cost"),
         hours=problem.hour_rate * hours,
@@ -146,7 +147,7 @@ def _stage(
         safety_factor=stage_safety_factor(problem, picked.route, picked.times, b, place),
         limited_by=limiting(picked.full, problem, picked.route, b, place),
         modules_cost=float(options.modules_cost[c]),
-        holders_cost=float(options.holders_cost[c]),
+        holders_cost=float(options.holders_cost[c]) - stage_credits(problem, picked.route)[b][place],
     )
 
 

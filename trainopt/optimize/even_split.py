@@ -1,6 +1,7 @@
 """The even split: pressure divided evenly over a block's stages, time evenly over the blocks (model.md, section 5).
 
-Each stage is then sized alone. It is the usual rule, and what a design is compared with.
+Each stage is then sized alone, as though no other used the holders that are there already; what they save is counted
+once, over the train. It is the usual rule, and what a design is compared with.
 """
 
 from __future__ import annotations
@@ -14,7 +15,7 @@ import numpy as np
 from trainopt.optimize.index import SINK, SOURCE, Index, Node, index_problem
 from trainopt.optimize.roots import largest_where
 from trainopt.optimize.times import Choice, Route, block_bounds, lot_times, objective_of
-from trainopt.train.options import CAP_SLACK, demand
+from trainopt.train.options import CAP_SLACK, cost_alone, demand, least_weight
 from trainopt.train.problem import Block, DesignProblem, Floats
 
 
@@ -52,7 +53,7 @@ def least_area(problem: DesignProblem, node: Node, budget: float, time: float) -
 
 
 def sized_option(problem: DesignProblem, node: Node, budget: float, time: float) -> int | None:
-    """The option of least objective with at least the recommended area; None where none is large enough."""
+    """The option of at least the recommended area with the least objective, the stage alone; None: none is so large."""
     options = node.candidate.options
     recommended = max(
         problem.safety_factor * least_area(problem, node, budget, time),
@@ -61,10 +62,11 @@ def sized_option(problem: DesignProblem, node: Node, budget: float, time: float)
     large = np.flatnonzero(options.area >= recommended * (1.0 - CAP_SLACK))
     if not len(large):
         return None
-    cost = options.modules_cost + options.holders_cost + options.flush_cost + options.product_cost
+    weight = least_weight(options, problem.owned, problem.objective)
+    cost = cost_alone(options, problem.owned)
     return min(
         large.tolist(),
-        key=lambda c: (options.weight[c], cost[c], -options.area[c], options.count[c], options.module[c]),
+        key=lambda c: (weight[c], cost[c], -options.area[c], options.count[c], options.module[c]),
     )
 
 

@@ -11,6 +11,7 @@ from functools import cached_property
 
 import numpy as np
 
+from trainopt.train.options import least_weight
 from trainopt.train.problem import Candidate, DesignProblem, Floats, Stage
 
 SOURCE, SINK = -1, -2
@@ -57,6 +58,12 @@ class Index:
     def weight(self) -> Floats:
         """w of every option."""
         return _joined([node.candidate.options.weight for node in self.nodes])
+
+    @cached_property
+    def least_weight(self) -> Floats:
+        """The least that every option can add to the objective: w, for cost less all that owned holders can save it."""
+        owned, objective = self.problem.owned, self.problem.objective
+        return _joined([least_weight(node.candidate.options, owned, objective) for node in self.nodes])
 
     def nodes_of(self, block: int) -> tuple[Node, ...]:
         """The nodes of a block in flow order."""

@@ -14,8 +14,9 @@ from trainopt.optimize.index import Index
 def build_model(index: Index) -> Any:
     """The mixed-integer model of an indexed (and usually pruned) problem, as a Pyomo `ConcreteModel`.
 
-    Variables: `x[stage, medium, module, count]` binary, `t[block]` in h, `f[from, to]` where routes branch, and on a
-    reliability basis `y[lot]` binary, by the places of the lots that may be spared.
+    Variables: `x[stage, medium, module, count]` binary, `t[block]` in h, `f[from, to]` where routes branch, for cost
+    `r[holder]` the owned holders in use where stages share them, and on a reliability basis `y[lot]` binary, by the
+    places of the lots that may be spared.
     """
     problem = index.problem
     model = pyo.ConcreteModel(name="pressure_budget")
@@ -45,6 +46,13 @@ def build_model(index: Index) -> Any:
     cost = [(float(w), v) for w, v in zip(index.weight.tolist(), x, strict=True)]
     if problem.objective == "cost" and problem.hour_rate > 0.0:
         cost += [(problem.hour_rate, v) for v in t]
+    uses = rows.holder_uses(index) if problem.shares_cost else {}
+    if uses:
+        shared = {holder.name: holder for holder in problem.owned if holder.name in uses}
+        model.r = pyo.Var(list(shared), bounds=lambda _, name: (0.0, shared[name].owned))
+        r = dict(model.r.items())
+        _add(model, "owned_holders", dict(rows.owned_holders(index, x, r)))
+        cost += [(-holder.price, r[name]) for name, holder in shared.items()]
     model.objective = pyo.Objective(expr=rows.linear(cost))
     return model
 

@@ -89,7 +89,12 @@ class Staircase:
 
 
 def staircase(problem: DesignProblem) -> Staircase:
-    """The staircase of a whole train (usually pruned before). Exact: a design falls only to one that is never worse."""
+    """The staircase of a whole train (usually pruned before). Exact: a design falls only to one that is never worse.
+
+    Raises `ValueError` where stages share holders that are owned and the objective is cost: weights do not add up then.
+    """
+    if problem.shares_cost:
+        raise ValueError("stages share owned holders; their costs do not add up")
     index = index_problem(problem)
     served = {node.place for node in index.nodes}
     if any(not stage.optional and place not in served for place, (_, stage) in enumerate(index.stages)):

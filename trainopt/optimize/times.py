@@ -14,6 +14,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from trainopt.optimize.owned import credit
 from trainopt.optimize.sparing import spare_lots
 from trainopt.train.problem import Block, Candidate, DesignProblem, Floats, Stage
 
@@ -218,9 +219,15 @@ def _leveled(pressure: list[float], least: list[float], most: list[float], total
 
 
 def objective_of(problem: DesignProblem, route: Route, times: Sequence[float]) -> float:
-    """What the objective counts: weights, and for cost the hours."""
-    total = math.fsum(choice.weight for choices in route for choice in choices)
+    """What the objective counts: weights, and for cost the hours, less what shared holders save."""
+    total = route_weight(problem, route)
     if problem.objective == "cost":
         hours = math.fsum(t + block.setup for t, block in zip(times, problem.blocks, strict=True))
         total += problem.hour_rate * hours
     return total
+
+
+def route_weight(problem: DesignProblem, route: Route) -> float:
+    """What the objective counts of a pick, hours left out: weights, for cost less what shared holders save."""
+    weights = (choice.weight for choices in route for choice in choices)
+    return math.fsum([*weights, -credit(problem, route)] if problem.shares_cost else weights)

@@ -1,7 +1,8 @@
 """One cell of a sweep after another: what `design` would pick, from tables that many cells share.
 
 Cells that differ in the batch time alone share one frontier and one table of the even split. Where the frontier
-would be too large, or the basis is one that it does not serve, each cell is picked by the solver itself.
+would be too large, does not serve the basis, or costs do not add up since stages share owned holders, each cell is
+picked by the solver itself.
 """
 
 from __future__ import annotations
@@ -15,9 +16,9 @@ import numpy as np
 from trainopt.optimize.describe import total_area, total_time
 from trainopt.optimize.recheck import recheck
 from trainopt.optimize.search import best_route
-from trainopt.optimize.times import Choice, Route, TimeBounds, block_bounds, share_time
+from trainopt.optimize.times import Route, TimeBounds, block_bounds, route_weight, share_time
 from trainopt.study.even import EvenTable, cost_of
-from trainopt.study.frontier import Frontier, TooManyLabelsError, frontier
+from trainopt.study.frontier import Frontier, SharedHoldersError, TooManyLabelsError, frontier
 from trainopt.study.results import SweepCell
 from trainopt.train.build import prune
 from trainopt.train.options import take
@@ -50,7 +51,7 @@ class Cells:
         self.frontier: Frontier | None
         try:
             self.frontier = frontier(prune(self.full))
-        except TooManyLabelsError:
+        except (TooManyLabelsError, SharedHoldersError):
             self.frontier = None
 
     @cached_property
@@ -133,16 +134,16 @@ def _fastest(full: DesignProblem) -> float:
         replace(b, stages=tuple(replace(s, candidates=tuple(map(largest, s.candidates))) for s in b.stages))
         for b in full.blocks
     )
-    return frontier(replace(full, blocks=blocks, time=math.inf)).shortest
+    # What holders cost has no say in the time.
+    return frontier(replace(full, blocks=blocks, time=math.inf, owned=())).shortest
 
 
 def _bought(problem: DesignProblem, route: Route) -> _Bought:
-    choices: list[Choice] = [choice for block in route for choice in block]
     return _Bought(
         route=route,
         bounds=tuple(block_bounds(b, c, problem.volume) for b, c in zip(problem.blocks, route, strict=True)),
         area=total_area(route),
-        cost=cost_of(choices),
+        cost=cost_of(problem, route),
         picks=tuple(
             Pick(
                 c.stage.name,
@@ -150,7 +151,8 @@ def _bought(problem: DesignProblem, route: Route) -> _Bought:
                 c.candidate.options.module[c.option],
                 int(c.candidate.options.count[c.option]),
             )
-            for c in choices
+            for block in route
+            for c in block
         ),
-        weight=math.fsum(c.weight for c in choices),
+        weight=route_weight(problem, route),
     )

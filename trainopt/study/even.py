@@ -16,9 +16,10 @@ from numpy.typing import NDArray
 
 from trainopt.optimize.even_split import even_times, routes
 from trainopt.optimize.index import Node, index_problem
-from trainopt.optimize.times import Choice, Route, block_bounds
+from trainopt.optimize.owned import credit
+from trainopt.optimize.times import Choice, Route, block_bounds, route_weight
 from trainopt.study.results import EvenCell
-from trainopt.train.options import CAP_SLACK
+from trainopt.train.options import CAP_SLACK, cost_alone, least_weight
 from trainopt.train.problem import DesignProblem, Floats
 
 
@@ -107,10 +108,10 @@ class EvenTable:
             limits = block_bounds(block, own, self.problem.volume).limits
             inlet.append(max((t for (_, what), t in limits.items() if what == "inlet-pressure"), default=0.0))
         return _Sized(
-            weight=math.fsum(c.weight for c in choices),
+            weight=route_weight(self.problem, route),
             media=tuple(c.candidate.medium for c in choices),
             area=math.fsum(float(c.candidate.options.area[c.option]) for c in choices),
-            cost=cost_of(choices),
+            cost=cost_of(self.problem, route),
             inlet=tuple(inlet),
         )
 
@@ -123,18 +124,20 @@ def _ladder(problem: DesignProblem, node: Node, stages: int) -> _Ladder:
     if block.operation == "constant-flow":
         needed = np.maximum(needed, worst / one.differential_pressure)
     needed = np.maximum(needed, options.shortest_time)
-    cost = options.modules_cost + options.holders_cost + options.flush_cost + options.product_cost
-    keys = zip(options.weight.tolist(), cost.tolist(), (-options.area).tolist(), options.count.tolist(), options.module,
+    weight, cost = least_weight(options, problem.owned, problem.objective), cost_alone(options, problem.owned)
+    keys = zip(weight.tolist(), cost.tolist(), (-options.area).tolist(), options.count.tolist(), options.module,
                strict=True)  # fmt: skip
     places = np.array([place for _, place in sorted((key, place) for place, key in enumerate(keys))], dtype=np.intp)
     return _Ladder(places, needed[places])
 
 
-def cost_of(choices: list[Choice]) -> float:
+def cost_of(problem: DesignProblem, route: Route) -> float:
     """Cost per batch of modules, holders, flush and product, hours left out."""
-    return math.fsum(
+    parts = (
         float(part[c.option])
-        for c in choices
+        for block in route
+        for c in block
         for o in (c.candidate.options,)
         for part in (o.modules_cost, o.holders_cost, o.flush_cost, o.product_cost)
     )
+    return math.fsum([*parts, -credit(problem, route)])

@@ -17,10 +17,18 @@ import numpy as np
 from trainopt.optimize.index import SINK, SOURCE, Index, Node, index_problem
 from trainopt.optimize.search import TIE, fixed_order, route_of
 from trainopt.optimize.times import TIME_SLACK, Route
-from trainopt.study.labels import Complete, Partial, TooManyLabelsError, pairs, thinned, thinned_partial
+from trainopt.study.labels import (
+    Complete,
+    Partial,
+    SharedHoldersError,
+    TooManyLabelsError,
+    pairs,
+    thinned,
+    thinned_partial,
+)
 from trainopt.train.problem import Block, DesignProblem, Floats
 
-__all__ = ["Frontier", "TooManyLabelsError", "frontier"]
+__all__ = ["Frontier", "SharedHoldersError", "TooManyLabelsError", "frontier"]
 
 Ends = tuple[int, int]
 """First and last used node of a block."""
@@ -59,8 +67,11 @@ class Frontier:
 def frontier(problem: DesignProblem) -> Frontier:
     """The frontier of a problem (pruned for its longest time), exact for every time up to the problem's own.
 
-    Raises `TooManyLabelsError` where the tables would not fit; the solver then serves each time by itself.
+    Raises `TooManyLabelsError` where the tables would not fit, and `SharedHoldersError` where the objective is cost and
+    stages share holders that are owned; the solver then serves each time by itself.
     """
+    if problem.shares_cost:
+        raise SharedHoldersError
     index = index_problem(problem)
     arcs = set(index.arcs)
     states: dict[int, Complete] = {SOURCE: _nothing()}

@@ -233,7 +233,8 @@ def _fixed(
     workspace = case.workspace
     medium = workspace.media[workspace.catalog.modules[module].medium]
     own: Candidate = next(c for c in stage.candidates if c.medium == medium.medium)
-    duty = Duty(problem.volume, problem.safety_factor, problem.objective, spec.operation)
+    shared = frozenset(holder.name for holder in problem.owned)
+    duty = Duty(problem.volume, problem.safety_factor, problem.objective, spec.operation, shared)
     options = module_options(
         medium, module, workspace.catalog, case.scenario.costs, duty, np.array([count], dtype=np.int64)
     )

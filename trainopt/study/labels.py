@@ -26,6 +26,10 @@ class TooManyLabelsError(Exception):
     """The tables of a problem would outgrow memory: pick by the solver instead."""
 
 
+class SharedHoldersError(Exception):
+    """Stages share owned holders, so that their costs do not add up label by label: pick by the solver instead."""
+
+
 @dataclass(frozen=True, eq=False)
 class Partial:
     """Picks of the last stages of a block: arrays of shape (n,), `demand` (n, lots), `picks` (n, stages used).

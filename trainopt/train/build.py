@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 from typing import TYPE_CHECKING
@@ -13,7 +14,7 @@ from numpy.typing import NDArray
 from trainopt.curves.curve import Curve, LotCurve
 from trainopt.curves.sampled import SampledCurves
 from trainopt.curves.viscosity import viscosity_ratio
-from trainopt.train.options import Cap, Duty, inside_caps, joined, module_options, take, undominated
+from trainopt.train.options import Cap, Duty, inside_caps, joined, module_options, price_per_batch, take, undominated
 from trainopt.train.problem import (
     Block,
     Candidate,
@@ -21,6 +22,7 @@ from trainopt.train.problem import (
     Dropped,
     ModuleSize,
     Options,
+    OwnedHolder,
     Reliability,
     Stage,
     worst_but,
@@ -57,7 +59,9 @@ def build_problem(case: Case, curves: Mapping[str, Curve], objective: str | None
     scenario = case.scenario
     kind = objective or scenario.objective
     lots = lots_of(case, curves)
-    blocks = tuple(_block(case, block, curves, lots, kind) for block in scenario.blocks)
+    owned = shared_holders(case)
+    shared = frozenset(holder.name for holder in owned)
+    blocks = tuple(_block(case, block, curves, lots, kind, shared) for block in scenario.blocks)
     return DesignProblem(
         title=scenario.scenario,
         volume=scenario.batch.volume,
@@ -70,6 +74,29 @@ def build_problem(case: Case, curves: Mapping[str, Curve], objective: str | None
         blocks=blocks,
         currency=case.workspace.catalog.currency,
         reliability=None if isinstance(scenario.basis, str) else reliability_of(scenario.basis),
+        owned=owned,
+    )
+
+
+def shared_holders(case: Case) -> tuple[OwnedHolder, ...]:
+    """Holder types of which some are owned and whose modules two or more stages may use, by name.
+
+    What only one stage can use is deducted in that stage's options.
+    """
+    catalog = case.workspace.catalog
+    users: Counter[str] = Counter()
+    for stage in (stage for block in case.scenario.blocks for stage in block.stages):
+        media = {choice.medium for choice in stage.media}
+        modules = {
+            name
+            for name, module in catalog.modules.items()
+            if module.medium in media and _counts(stage, name, module.max_count) is not None
+        }
+        users.update(name for name, holder in catalog.holders.items() if modules & set(holder.modules))
+    return tuple(
+        OwnedHolder(name, holder.owned, price_per_batch(holder))
+        for name, holder in sorted(catalog.holders.items())
+        if holder.owned > 0 and users[name] > 1
     )
 
 
@@ -80,9 +107,16 @@ def reliability_of(basis: ReliabilityBasis) -> Reliability:
     return Reliability(basis.reliability, may_fail, basis.seed)
 
 
-def _block(case: Case, spec: BlockSpec, curves: Mapping[str, Curve], lots: tuple[str, ...], objective: str) -> Block:
+def _block(
+    case: Case,
+    spec: BlockSpec,
+    curves: Mapping[str, Curve],
+    lots: tuple[str, ...],
+    objective: str,
+    shared: frozenset[str],
+) -> Block:
     scenario = case.scenario
-    duty = Duty(scenario.batch.volume, scenario.safety_factor, objective, spec.operation)
+    duty = Duty(scenario.batch.volume, scenario.safety_factor, objective, spec.operation, shared)
     pump = spec.pump
     return Block(
         name=spec.block,
@@ -237,7 +271,7 @@ def _pruned_block(problem: DesignProblem, block: Block) -> Block:
         slow = needed > longest * (1.0 + 1e-6)
         text = f"{int(slow.sum())} options alone take longer than the block has"
         one = _keep(one, np.flatnonzero(~slow), Dropped("too-slow", "", int(slow.sum()), None, text))
-        kept = undominated(one.options)
+        kept = undominated(one.options, problem.owned, problem.objective)
         gone = len(one.options) - len(kept)
         text = f"{gone} options cost more and are not larger than another"
         return _keep(one, kept, Dropped("dominated", "", gone, None, text))

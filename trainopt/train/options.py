@@ -5,7 +5,8 @@ model.md, section 3. Areas in m², loadings in L/m², costs per batch in the cat
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from bisect import bisect_right
+from collections.abc import Mapping, Sequence, Set
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -14,7 +15,7 @@ from numpy.typing import NDArray
 
 from trainopt.curves.curve import LotCurve
 from trainopt.curves.sampled import SampledCurves
-from trainopt.train.problem import Dropped, Floats, Options
+from trainopt.train.problem import Dropped, Floats, Options, OwnedHolder
 
 if TYPE_CHECKING:
     from trainopt.files import Catalog, Costs, Holder, Medium
@@ -25,12 +26,16 @@ CAP_SLACK = 1e-12
 
 @dataclass(frozen=True)
 class Duty:
-    """What a stage is sized for: volume L, safety factor F, and what the objective counts."""
+    """What a stage is sized for: volume L, safety factor F, and what the objective counts.
+
+    `shared`: holder types whose owned ones other stages may use as well.
+    """
 
     volume: float
     safety_factor: float
     objective: str
     operation: str
+    shared: Set[str] = frozenset()
 
 
 @dataclass(frozen=True)
@@ -46,9 +51,12 @@ class Cap:
 
 
 def cheapest_holder(
-    holders: Mapping[str, Holder], module: str, counts: NDArray[np.int64]
+    holders: Mapping[str, Holder], module: str, counts: NDArray[np.int64], shared: Set[str] = frozenset()
 ) -> tuple[tuple[tuple[str, int] | None, ...], Floats]:
-    """For each count the holder type and number that cost least per batch (ties: fewer, then by name), and the cost."""
+    """For each count the holder type and number that cost least per batch (ties: fewer, then by name), and the cost.
+
+    Those that are owned cost nothing; but the cost that is returned for a type in `shared` is that of all of them.
+    """
     usable = [(name, holder) for name, holder in sorted(holders.items()) if module in holder.modules]
     if not usable:
         return (None,) * len(counts), np.zeros(len(counts))
@@ -61,8 +69,37 @@ def cheapest_holder(
             offers.append((max(number - holder.owned, 0) * holder.price / holder.batches, number, name))
         cost, number, name = min(offers)
         chosen.append((name, number))
-        costs[index] = cost
+        costs[index] = number * price_per_batch(holders[name]) if name in shared else cost
     return tuple(chosen), costs
+
+
+def price_per_batch(holder: Holder) -> float:
+    """Price of one holder, spread over its batches."""
+    return holder.price / holder.batches
+
+
+def most_credit(options: Options, owned: Sequence[OwnedHolder]) -> Floats:
+    """price·min(owned, number) of each option's holders, per batch, shape (n,): all that the owned ones can save it.
+
+    Over a train they save Σ_h price_h·min(owned_h, Σ number_h), which is never more than the sum of its options' own.
+    """
+    known = {holder.name: holder for holder in owned}
+    credit = np.zeros(len(options))
+    for place, one in enumerate(options.holders) if known else ():
+        if one is not None and one[0] in known:
+            credit[place] = known[one[0]].price * min(known[one[0]].owned, one[1])
+    return credit
+
+
+def cost_alone(options: Options, owned: Sequence[OwnedHolder]) -> Floats:
+    """Cost of each option per batch, hours left out, in a train where no other stage uses the owned holders."""
+    cost = options.modules_cost + options.holders_cost + options.flush_cost + options.product_cost
+    return np.asarray(cost - most_credit(options, owned))
+
+
+def least_weight(options: Options, owned: Sequence[OwnedHolder], objective: str) -> Floats:
+    """The least that each option can add to the objective: its weight, for cost less all it can save."""
+    return options.weight - most_credit(options, owned) if owned and objective == "cost" else options.weight
 
 
 def demand(curves: Sequence[LotCurve], operation: str, loading: Floats) -> Floats:
@@ -80,7 +117,7 @@ def module_options(
     """The options of one module type, before any cap; `demand` is left empty."""
     entry = catalog.modules[module]
     area = np.asarray(counts * entry.area, dtype=np.float64)
-    holders, holders_cost = cheapest_holder(catalog.holders, module, counts)
+    holders, holders_cost = cheapest_holder(catalog.holders, module, counts, duty.shared)
     flush = medium.flush.volume if medium.flush is not None else 0.0
     product = costs.product
     lost = (1.0 - product.recovered) * product.titer * product.value if product is not None else 0.0
@@ -181,20 +218,31 @@ _CAP_WORDS = {
 }
 
 
-def undominated(options: Options) -> NDArray[np.intp]:
+def undominated(options: Options, owned: Sequence[OwnedHolder] = (), objective: str = "area") -> NDArray[np.intp]:
     """Places of the options that no other of the same medium beats, ordered by area.
 
     Within one medium D (every lot) and τ fall as area grows, so an option is beaten exactly by one of at least
     its area and at most its weight. Ties go to the lower cost, then the lower count, then the name.
+
+    For cost, with holders that are `owned` and shared over the train, an option is beaten only by one whose weight is
+    at most its own less all that the owned ones can save it. Exchange the two in any design: the option's weight w goes
+    and with it at most c = price·min(owned, number) of the train's savings (these grow by no more than c when the
+    option joins the others); the other's weight w' ≤ w − c comes, and savings do not fall by its joining. So the
+    design gets no dearer. One that beats an option that beats a third beats the third, so nothing is dropped in
+    favor of one that is itself dropped for good.
     """
-    cost = options.modules_cost + options.holders_cost + options.flush_cost + options.product_cost
+    cost, least = cost_alone(options, owned), least_weight(options, owned, objective).tolist()
     keys = zip(options.weight.tolist(), (-options.area).tolist(), cost.tolist(), options.count.tolist(), options.module,
                strict=True)  # fmt: skip
     order = [place for _, place in sorted((key, place) for place, key in enumerate(keys))]
+    weights = [float(options.weight[place]) for place in order]
     kept: list[int] = []
-    largest = 0.0
-    for place in order:
-        if options.area[place] > largest * (1.0 + CAP_SLACK):
+    largest = [0.0]  # among the kept of the first so many in order
+    for k, place in enumerate(order):
+        rivals = min(k, bisect_right(weights, least[place]))
+        keep = bool(options.area[place] > largest[rivals] * (1.0 + CAP_SLACK))
+        if keep:
             kept.append(place)
-            largest = options.area[place]
+        largest.append(max(largest[-1], float(options.area[place])) if keep else largest[-1])
+    kept.sort(key=lambda place: (options.area[place], options.module[place], options.count[place]))
     return np.array(kept, dtype=np.intp)

@@ -24,12 +24,25 @@ if TYPE_CHECKING:
 Floats = NDArray[np.float64]
 
 
+@dataclass(frozen=True)
+class OwnedHolder:
+    """A holder type of which so many are there already, free to whichever stages use them first.
+
+    `price` of one per batch, in the catalog's currency: what each owned one that is used saves.
+    """
+
+    name: str
+    owned: int
+    price: float
+
+
 @dataclass(frozen=True, eq=False)
 class Options:
     """The module counts a candidate can be bought in: arrays of shape (n,), `demand` of shape (lots, n).
 
     `area` m²; `modules_cost`, `holders_cost`, `flush_cost`, `product_cost` per batch in the catalog's
-    currency; `weight` what the objective counts (area, or the sum of the four costs); `shortest_time` τ in h;
+    currency (`holders_cost` of holders that the problem lists as `owned` is that of all of them); `weight` what the
+    objective counts (area, or the sum of the four costs); `shortest_time` τ in h;
     `loading` the design loading L (safety factor included) in L/m²; `demand` D in bar·h, per lot.
     """
 
@@ -161,7 +174,8 @@ class DesignProblem:
     """Everything a design is decided on: volume L, total time h, blocks in flow order, lots by name.
 
     With `reliability` the lots are samples, of which so many may break a pressure limit or go beyond what was tested;
-    without, every lot must hold.
+    without, every lot must hold. `owned` lists the holders that are there already and that several stages may use,
+    by name; no option's cost counts them as free.
     """
 
     title: str
@@ -175,6 +189,12 @@ class DesignProblem:
     blocks: tuple[Block, ...]
     currency: str
     reliability: Reliability | None = None
+    owned: tuple[OwnedHolder, ...] = ()
+
+    @property
+    def shares_cost(self) -> bool:
+        """Whether the objective counts shared holders, so that what a stage costs depends on the others."""
+        return bool(self.owned) and self.objective == "cost"
 
     @property
     def may_fail(self) -> int:
