@@ -40,8 +40,8 @@ def sharing_spec(seed: int) -> Spec:
     names = sorted(spec.modules)
     spec.holders = {
         f"h{k}": {
-            "modules": sorted(r.sample(names, r.randint(2, len(names)))), "slots": r.randint(1, 3),
-            "price": round(r.uniform(500, 4000), 2), "batches": r.randint(1, 5), "owned": r.choice([0, 1, 1, 2, 3, 5]),
+            "modules": sorted(r.sample(names, r.randint(2, len(names)))), "slots": r.randint(1, 2),
+            "price": round(r.uniform(500, 4000), 2), "batches": r.randint(1, 5), "owned": r.choice([0, 1, 1, 2, 2, 4]),
         }
         for k in range(r.randint(1, 3))
     }  # fmt: skip
@@ -81,7 +81,7 @@ def test_enough_trains_share_and_in_many_the_owned_run_out() -> None:
         stage_by_stage = sum(shared_saving(spec, [p]) for p in picks)
         scarce += shared_saving(spec, picks) < stage_by_stage * (1.0 - 1e-9)
     # These a count that each stage had to itself would have shown too cheap.
-    assert scarce >= 15
+    assert scarce >= 10
 
 
 @pytest.mark.parametrize("first", range(0, NUMBER, 20))

@@ -4,6 +4,7 @@ switched on."""
 from __future__ import annotations
 
 import math
+import random
 from dataclasses import replace
 from pathlib import Path
 
@@ -13,13 +14,14 @@ from hypothesis import strategies as st
 
 import trainopt
 from tests.study.trains import random_case
+from trainopt.files import Case
 from trainopt.optimize.design import even_design, prepare
 from trainopt.optimize.search import best_route
 from trainopt.optimize.times import block_times, objective_of
 from trainopt.study import labels
 from trainopt.study.cells import Cells
 from trainopt.study.even import EvenTable
-from trainopt.study.frontier import TooManyLabelsError, frontier
+from trainopt.study.frontier import SharedHoldersError, TooManyLabelsError, frontier
 from trainopt.train.build import prune
 
 
@@ -102,3 +104,45 @@ def test_a_cell_without_a_design_says_what_time_would_do():
     assert late.status == "infeasible"
     assert "takes at least" in late.reason
     assert float(late.reason.split()[5]) == pytest.approx(shortest, rel=1e-3)
+
+
+def sharing_case(seed: int) -> Case:
+    """A random case whose stages share racks, of which some are owned."""
+    case = random_case(seed, stages=2)
+    catalog, rng = case.workspace.catalog, random.Random(seed)
+    rack = catalog.holders["rack"].model_copy(
+        update={"modules": tuple(sorted(catalog.modules)), "owned": rng.randint(1, 6), "slots": rng.randint(1, 4)}
+    )
+    catalog = catalog.model_copy(update={"holders": {"rack": rack}})
+    return replace(case, workspace=replace(case.workspace, catalog=catalog))
+
+
+@pytest.mark.parametrize("objective", ["cost", "area"])
+def test_cells_equal_the_design_where_stages_share_owned_holders(objective: str):
+    seen = 0
+    for seed in range(30):
+        full = prepare(sharing_case(seed), objective).problem
+        if not full.owned:
+            continue
+        if objective == "cost":
+            with pytest.raises(SharedHoldersError):
+                frontier(prune(full))
+        cells = Cells(full, 1.3 * full.time)
+        for time in (0.8 * full.time, full.time, 1.3 * full.time):
+            cell = cells.cell((time,), time)
+            result = trainopt.design(replace(full, time=time))
+            assert cell.status == result.status, seed
+            if result.objective is None:
+                assert cell.reason
+                continue
+            assert cell.objective == pytest.approx(result.objective.value, rel=1e-9), seed
+            assert cell.picks == result.picks, seed
+            assert (cell.area, cell.cost) == pytest.approx((result.area, result.cost), rel=1e-9), seed
+            even = result.even_split
+            assert even is not None
+            assert cell.even_split.status == even.status
+            if even.cost is not None:
+                assert cell.even_split.area == pytest.approx(even.area, rel=1e-12), seed
+                assert cell.even_split.cost == pytest.approx(even.cost, rel=1e-12), seed
+            seen += 1
+    assert seen > 20

@@ -112,10 +112,11 @@ def _apart(
 ) -> list[tuple[Node, ...]]:
     """The one route that is best where stages do not touch one another: each stage's best medium by itself.
 
-    Empty where a stage may be left out, a medium asks for another, an inlet rating may bind, or a stage has no medium.
+    Empty where a stage may be left out, a medium asks for another, an inlet rating may bind, a stage has no medium, or
+    stages share owned holders that the objective counts.
     """
     binding = any(n.candidate.inlet_pressure < problem.blocks[n.block].pressure for n in index.nodes)
-    if not index.plain or binding:
+    if not index.plain or binding or problem.shares_cost:
         return []
     best: list[Node] = []
     for place, (b, _) in enumerate(index.stages):
