@@ -234,13 +234,14 @@ def node_bounds(index: Index) -> tuple[dict[tuple[int, str], float], float]:
     priced = _priced(index)
     if priced.allowed <= 0.0:
         return {(n.place, n.candidate.medium): 0.0 for n in index.nodes}, -math.inf
-    prices = _best_prices(priced)
-    bound = _paths(priced, prices).least - prices * priced.allowed
-    lot = int(np.argsort(-bound, kind="stable")[0])
-    price = float(prices[lot])
     if index.problem.may_fail:
-        price = 0.0  # no single lot need hold
-    value = priced.weight[lot] + price * priced.hours[lot] if not index.problem.may_fail else index.least_weight
+        # No single lot need hold: only what the options cost is sure.
+        value, price = index.least_weight, 0.0
+    else:
+        prices = _best_prices(priced)
+        lot = int(np.argmax(_paths(priced, prices).least - prices * priced.allowed))
+        price = float(prices[lot])
+        value = priced.weight[lot] + price * priced.hours[lot]
     least = {(n.place, n.candidate.medium): float(value[n.options.start : n.options.stop].min()) for n in index.nodes}
     return least, priced.constant - price * priced.allowed
 
