@@ -49,7 +49,8 @@ class Holder(Entry):
     batches: Annotated[int, Count(example="200")] = 1
     """Batches that its price is spread over."""
     owned: Annotated[int, Count(Range(least=0), "2")] = 0
-    """Holders that are there already and cost nothing: so many in the whole train, whichever stages use them."""
+    """Holders that are there already and cost nothing: so many in the whole train, whichever stages use them. Which
+    type a stage uses is chosen as though it alone could use those of each type."""
 
 
 class Catalog(Entry):
