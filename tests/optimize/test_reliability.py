@@ -285,6 +285,8 @@ def test_what_a_little_more_gains_on_a_reliability_basis_is_exact(tmp_path: Path
     found = limits(prepared.problem, result, prepared.curves)
     assert found is not None
     assert result.objective is not None
+    # A loading limit given in place of what was tested is another rule, not a little more of the same.
+    assert not any(gain.field.endswith("loading_limit_L_m2") for gain in found.gains)
     times = [gain for gain in found.gains if gain.field == "batch.time_h"]
     assert times
     for gain in times:

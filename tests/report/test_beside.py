@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from io import BytesIO
 from pathlib import Path
 from typing import Any
@@ -16,6 +17,8 @@ from tests.report.dossiers import shapes
 from trainopt.report.beside_text import share
 from trainopt.report.render import report_bytes
 from trainopt.report.sections import sections
+from trainopt.report.text import even_split_sentence
+from trainopt.train.results import Saving
 
 ROOT = Path(__file__).parents[2]
 DOSSIER = shapes()["reliable"]
@@ -81,3 +84,12 @@ def test_a_reliability_report_shows_a_few_lots_that_hold() -> None:
     assert worst <= set(dossier.lots)
     assert dossier.design.alternatives is not None
     assert [section.key for section in sections(dossier)].index("alternatives") > 0
+
+
+def test_an_even_split_that_is_smaller_but_fails_more_is_no_saving() -> None:
+    design = DOSSIER.design
+    smaller = replace(design, saving=Saving(-0.6, -5.1, -836.0, -6.3))
+    text = even_split_sentence(smaller)
+    assert "installs 0.6 m² (5.1 %) less, but" in text
+    assert "91.0 % of fresh lots finish with it, 94.8 % with this design" in text
+    assert "saves" in even_split_sentence(design)

@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 
 from trainopt.curves.curve import Curve
+from trainopt.curves.sampled import SampledCurves
 from trainopt.optimize.area_parts import pooled_curve
 from trainopt.optimize.nearest import TIE, Better, Lever, Picks, nearest_better, solved
 from trainopt.optimize.restate import Move, route_of_picks
@@ -137,7 +138,9 @@ def _stage_levers(block: Block, stage: Stage, one: Candidate) -> Iterator[Lever]
     """The limits of a used medium, without those that cannot bind whatever is picked."""
     key, what, options = (stage.name, one.medium), f"{one.medium} in '{stage.name}'", one.options
     cap, flux, rating, inlet = one.loading_cap, one.flux_limit, one.differential_pressure, one.inlet_pressure
-    if one.on_offer is None or len(options) < len(one.on_offer):
+    # Where a sampled lot fails beyond what was tested, a given limit would be another rule: longer runs are asked for.
+    fails_beyond = isinstance(one.curves, SampledCurves) and math.isfinite(one.curves.known)
+    if not fails_beyond and (one.on_offer is None or len(options) < len(one.on_offer)):
         yield Lever(f"{key[0]}.loading_limit_L_m2", f"loading of {what}", "L/m2", cap, lambda v: Move(cap={key: v}))
     if (options.shortest_time * block.head > options.demand.max(axis=0)).any():
         yield Lever(f"{key[0]}.flux_limit_LMH", f"flux of {what}", "LMH", flux, lambda v: Move(flux={key: v}))

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 from typing import TYPE_CHECKING
 
-from trainopt.report.beside_text import beside
+from trainopt.report.beside_text import beside, share
 from trainopt.report.cautions import CAUTIONS
 from trainopt.report.notices import grouped
 from trainopt.report.numbers import (
@@ -193,10 +193,28 @@ def even_split_sentence(design: Design) -> str:
     decisive = saving.cost if cost_counts else saving.area
     if abs(decisive) < 1e-9 * max(1.0, even.cost or 0.0 if cost_counts else even.area or 0.0):
         return "The even split costs nothing here: it is as good as the optimum."
+    if decisive < 0.0:
+        return _cheaper_but(design, cost_counts)
     area = f"{trimmed(saving.area)} m² ({percent(saving.area_percent)}) of area"
     cost = f"{money(saving.cost, design.currency)} ({percent(saving.cost_percent)}) per batch"
     first, second = (cost, area) if cost_counts else (area, cost)
     return f"Against the even split of pressure and time this saves {first} and {second}."
+
+
+def _cheaper_but(design: Design, cost_counts: bool) -> str:
+    """On a reliability basis the even split, each stage sized alone, can be smaller: it fails more often."""
+    saving, sure = design.saving, design.reliability
+    assert saving is not None
+    if cost_counts:
+        less = f"costs {money(-saving.cost, design.currency)} ({percent(-(saving.cost_percent or 0.0))}) less per batch"
+    else:
+        less = f"installs {trimmed(-saving.area)} m² ({percent(-saving.area_percent)}) less"
+    if sure is None or sure.even_split is None:
+        return f"The even split of pressure and time {less}, but does not hold as this design does."
+    return (
+        f"The even split of pressure and time {less}, but sizes each stage alone for its share: "
+        f"{share(sure.even_split.share)} of fresh lots finish with it, {share(sure.fresh.share)} with this design."
+    )
 
 
 def _even_split(page: Page, design: Design, pressure: Pressure) -> None:
