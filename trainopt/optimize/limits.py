@@ -8,13 +8,11 @@ from dataclasses import replace
 from functools import partial
 from typing import TYPE_CHECKING
 
-import numpy as np
-
 from trainopt.curves.curve import Curve
 from trainopt.curves.sampled import SampledCurves
 from trainopt.optimize.area_parts import pooled_curve
 from trainopt.optimize.nearest import TIE, Better, Lever, Picks, nearest_better, solved
-from trainopt.optimize.restate import Move, route_of_picks
+from trainopt.optimize.restate import Move, restated, route_of_picks
 from trainopt.optimize.times import Route, block_bounds, kept_lots
 from trainopt.train.limit_words import block_words, gain_words, longer_run_words
 from trainopt.train.problem import Block, Candidate, DesignProblem, Stage
@@ -213,23 +211,41 @@ def longer_runs(problem: DesignProblem, design: Design, curves: Mapping[str, Cur
         move = Move(cap={(stage, medium): one.further_cap for stage, one in held})
         better = solved(problem, move)
         if better is not None and better[0] < base - TIE * max(1.0, abs(base)):
-            found.append(_longer_run(problem, held[0][1], better, base, curves.get(medium)))
+            worst = _worst_fouling(restated(problem, move), medium, better[1], held[0][1])
+            found.append(_longer_run(problem, held[0][1], better, base, curves.get(medium), worst))
     yield from sorted(found, key=lambda run: (-run.saves, run.medium))
 
 
+def _worst_fouling(problem: DesignProblem, medium: str, picks: Picks, one: Candidate) -> float:
+    """The highest κ of the lots that a design holds for, with a medium wherever it uses it."""
+    route = route_of_picks(problem, picks)
+    lots = kept_lots(problem, route) if problem.may_fail and route is not None else None
+    if route is None or lots is None:
+        return max(curve.fouling_factor for curve in one.curves)
+    used = [c.candidate for choices in route for c in choices if c.candidate.medium == medium]
+    return max(float(candidate.curves[lot].fouling_factor) for candidate in used for lot in lots.tolist())
+
+
 def _longer_run(
-    problem: DesignProblem, one: Candidate, better: tuple[float, Picks], base: float, curve: Curve | None
+    problem: DesignProblem,
+    one: Candidate,
+    better: tuple[float, Picks],
+    base: float,
+    curve: Curve | None,
+    worst: float,
 ) -> LongerRun:
+    """`worst` is the highest κ of the lots that the better design holds for."""
     objective, picks = better
     area = {m.name: m.area for m in one.modules}
-    worst = float(problem.worst(np.array([curve.fouling_factor for curve in one.curves])))
+    sampled = one.curves if isinstance(one.curves, SampledCurves) else None
     loading = max(
         worst * problem.safety_factor * problem.volume / (one.scale_up * area[p.module] * p.count)
         for p in picks if p.medium == one.medium
     )  # fmt: skip
     seen = pooled_curve(one) if curve is None else curve.lot_curve(None)
     flux = one.flux_limit if curve is None else curve.tested_flux
-    pressure, tested = seen.resistance(loading) * flux, worst * one.loading_cap
+    pressure = seen.resistance(loading) * flux
+    tested = worst * one.loading_cap if sampled is None else sampled.known
     saved = _amount(problem, base - objective)
     run = LongerRun(one.medium, tested, loading, flux, pressure, objective, base - objective, picks, "", saved)
     return replace(run, text=longer_run_words(run))

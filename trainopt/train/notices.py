@@ -7,7 +7,7 @@ from collections.abc import Iterator, Mapping
 from typing import TYPE_CHECKING
 
 from trainopt.curves.curve import Curve
-from trainopt.train.build import POOLED, lots_of, reliability_of, used_media
+from trainopt.train.build import POOLED, lots_of, reliability_of, shared_holders, used_media
 from trainopt.train.flag_notices import flag_notices
 from trainopt.train.problem import Candidate, DesignProblem
 from trainopt.train.results import BlockDesign, Notice, ReliabilityResult
@@ -21,12 +21,29 @@ def case_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
     """Notices that follow from the files alone: what was assumed, what was not tested."""
     for problem in case.warnings:
         yield Notice("files", str(problem))
+    yield from _holder_notices(case)
     yield from _variability_notices(case, curves)
     temperature = case.scenario.batch.temperature
     lots = lots_of(case, curves)
     for name in used_media(case):
         curve, medium = curves[name], case.workspace.media[name]
         yield from _medium_notices(medium, curve, temperature, lots, isinstance(case.scenario.basis, str))
+
+
+def _holder_notices(case: Case) -> Iterator[Notice]:
+    """Where owned holders are shared, the type that a stage takes is chosen by a rule, not with the rest."""
+    holders, used = case.workspace.catalog.holders, set(used_media(case))
+    shared = {holder.name for holder in shared_holders(case)}
+    modules = {name for name, module in case.workspace.catalog.modules.items() if module.medium in used}
+    for name in sorted(shared):
+        rivals = {other for other, holder in holders.items()
+                  if other != name and modules & set(holder.modules) & set(holders[name].modules)}  # fmt: skip
+        if rivals:
+            yield Notice(
+                "owned-holder-choice",
+                f"{name}: each stage takes the holder type that is cheapest for it with all owned ones free; they are "
+                f"counted once over the train, but a mix with {', '.join(sorted(rivals))} could cost less",
+            )
 
 
 def _variability_notices(case: Case, curves: Mapping[str, Curve]) -> Iterator[Notice]:
