@@ -75,3 +75,4 @@ def test_audit_works_on_a_reliability_basis(harvest: trainopt.Case):
     case = varied(harvest, ReliabilityBasis(reliability=0.9, samples=40, seed=4))
     audited = audit_case(case)
     assert audited.verdict
+    assert audited.waste is None
