@@ -194,3 +194,12 @@ def test_a_file_that_is_none_is_wrong_input(arguments: tuple[str, ...]) -> None:
     assert status == 2
     assert out == ""
     assert arguments[1] in messages
+
+
+def test_a_report_beside_changes_nothing_that_is_printed(tmp_path: Path) -> None:
+    for extra in ((), ("--json",), ("--alternatives", "2", "--gap", "10")):
+        report = tmp_path / f"report{len(extra)}.html"
+        alone = process("design", "scenarios/redundant-guard.yaml", *extra)
+        beside = process("design", "scenarios/redundant-guard.yaml", *extra, "--report", str(report))
+        assert beside.stdout == alone.stdout
+        assert report.is_file()

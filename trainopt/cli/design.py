@@ -3,14 +3,18 @@
 from __future__ import annotations
 
 import sys
+from dataclasses import replace
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from trainopt.cli.options import REPORTS, ObjectiveKind, Units, output_file, write_report
 from trainopt.cli.status import Status
 from trainopt.cli.terminal import color, progress, width
+
+if TYPE_CHECKING:
+    from trainopt.train.results import Design
 
 STATUS = {"optimal": Status.DONE, "infeasible": Status.NO_DESIGN, "limit": Status.LIMIT}
 
@@ -72,10 +76,10 @@ def design(
                 None,
             )
         else:
-            from trainopt.report.gather import gather
+            from trainopt.report.gather import ALTERNATIVES, gather
 
-            dossier = gather(case, kind, time_limit)
-            result = dossier.design
+            dossier = gather(case, kind, time_limit, alternatives or ALTERNATIVES, gap / 100.0)
+            result = _asked_for(dossier.design, json, alternatives > 0, limits)
     if json:
         from trainopt.report.json import design_document, dumps
 
@@ -87,3 +91,14 @@ def design(
     if target is not None and dossier is not None:
         write_report(dossier, target, units.value, force)
     return STATUS[result.status]
+
+
+def _asked_for(result: Design, parts: bool, alternatives: bool, limits: bool) -> Design:
+    """The design as it is printed without a report, which works out more than was asked for."""
+    bare = None if result.limits is None else replace(result.limits, gains=(), longer_runs=(), searched=False)
+    return replace(
+        result,
+        area_parts=result.area_parts if parts else None,
+        alternatives=result.alternatives if alternatives else None,
+        limits=result.limits if limits else bare,
+    )

@@ -38,11 +38,18 @@ SHOWN_LOTS = 4
 LIBRARIES = ("highspy", "pyomo", "numpy", "scipy", "matplotlib")
 
 
-def gather(case: Case, objective: str | None = None, time_limit: float | None = None) -> Dossier:
-    """Design the case and gather what its report shows; raises what `design` raises."""
+def gather(
+    case: Case,
+    objective: str | None = None,
+    time_limit: float | None = None,
+    alternatives: int = ALTERNATIVES,
+    gap: float = GAP,
+) -> Dossier:
+    """Design the case and gather what its report shows, so many near designs within a gap too; raises what `design`
+    raises."""
     prepared = prepare(case, objective)
     found = design(
-        prepared, time_limit=time_limit, parts=True, routes=True, alternatives=ALTERNATIVES, gap=GAP, limits=True
+        prepared, time_limit=time_limit, parts=True, routes=True, alternatives=alternatives, gap=gap, limits=True
     )
     whole = prepared.problem
     problem = few_lots(whole, found) if whole.reliability is not None else whole
